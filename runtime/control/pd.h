@@ -1,0 +1,35 @@
+// PD torque of each joint. A template over the scalar; instantiated for double in pd.cpp.
+#pragma once
+
+#include <array>
+
+#include "pastern/v1/robot.pb.h"
+#include "runtime/types/body.h"
+
+namespace pastern::control {
+
+template <class S = double>
+struct Gains {
+  int joint_count{0};
+  std::array<S, safety::kMaxJoints> stiffness{};  ///< N m/rad
+  std::array<S, safety::kMaxJoints> damping{};    ///< N m s/rad
+};
+
+[[nodiscard]] Gains<double> gains_of(const v1::Robot& robot);  // a checked robot
+
+/// torque = stiffness * (target - angle) - damping * speed. No clamp here: the gate clamps.
+template <class S>
+[[nodiscard]] Torques<S> pd_torques(const Gains<S>& gains, const JointTarget<S>& target, const JointAngles<S>& angle,
+                                    const JointSpeeds<S>& speed) noexcept {
+  Torques<S> torque;
+  for (int j = 0; j < gains.joint_count; ++j) {
+    const auto i = static_cast<std::size_t>(j);
+    torque[j] = gains.stiffness[i] * (target.angle[j] - angle[j]) - gains.damping[i] * speed[j];
+  }
+  return torque;
+}
+
+extern template Torques<double> pd_torques(const Gains<double>&, const JointTarget<double>&, const JointAngles<double>&,
+                                           const JointSpeeds<double>&) noexcept;
+
+}  // namespace pastern::control

@@ -1,0 +1,106 @@
+// The durable record: SQLite, WAL, synchronous FULL. A walk is on disk before the next begins. Session thread only.
+// Schema: runtime/journal/schema.sql (documented there, versioned; a newer version is refused). Any SQLite tool opens it.
+#pragma once
+
+#include <cstdint>
+#include <memory>
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "pastern/v1/episode.pb.h"
+#include "pastern/v1/link.pb.h"
+#include "runtime/types/episode.h"
+
+namespace pastern::journal {
+
+/// A journal that failed to write stays failed: every later write returns the first failure's words.
+struct [[nodiscard]] Written {
+  bool ok{false};
+  std::string words;  ///< one line when not ok: what failed, where
+};
+
+struct SessionRow {
+  std::uint64_t session{0};
+  std::string plan_text;
+  std::string robot_sha256_hex;
+  std::string start_policy_sha256_hex;
+  std::string candidate_sha256_hex;  ///< offered candidate, or empty
+  bool ended{false};
+  std::string software;
+};
+
+struct FirstStart {
+  std::string robot_sha256_hex;
+  std::string who;
+  std::string when_utc;
+};
+
+struct Adoption {
+  std::string policy_sha256_hex;
+  std::string who;
+  std::string when_utc;
+  std::string words;
+};
+
+class Journal {
+ public:
+  /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, newer schema, not a journal,
+  /// damaged, locked by another process, disk full. `vfs` names an SQLite VFS (tests), empty for the default.
+  [[nodiscard]] static std::unique_ptr<Journal> open(const std::string& folder, std::string& error,
+                                                     const std::string& vfs = "", bool read_only = false);
+  ~Journal();
+
+  // Sessions.
+  [[nodiscard]] Written begin_session(SessionRow& row);  // fills row.session
+  [[nodiscard]] std::optional<SessionRow> last_session() const;
+  [[nodiscard]] Written end_session(std::uint64_t session, const v1::Verdict& verdict);
+
+  /// One transaction: the episode, the parameters it walked, and the simulated robot's carried state (may be empty).
+  /// The returned value is the proof that an operator wants; nothing when the write failed (words in `why`).
+  [[nodiscard]] std::optional<Committed<Evaluation>> commit(const v1::Episode& episode, const Parameters& parameters,
+                                                            const std::string& robot_state, std::string& why);
+  /// All finished walks of a session in order, as proofs, for replay. Void ones are included; the caller skips them.
+  struct Finished {
+    v1::Episode episode;
+    Committed<Evaluation> evaluation;
+  };
+  [[nodiscard]] std::vector<Finished> finished(std::uint64_t session) const;
+  [[nodiscard]] std::optional<Parameters> parameters(const std::string& sha256) const;
+  /// Carried state of the simulated robot after the last finished walk of any session; nothing when none.
+  [[nodiscard]] std::optional<std::string> robot_state() const;
+  /// Gate's thermal state and other small named values that survive a restart.
+  [[nodiscard]] Written put(const std::string& key, const std::string& value);
+  [[nodiscard]] std::optional<std::string> get(const std::string& key) const;
+
+  // Policies (file bytes by SHA-256 of the bytes) and what is current.
+  [[nodiscard]] Written store_policy(const std::string& bytes, const std::string& sha256_hex);
+  [[nodiscard]] std::optional<std::string> policy(const std::string& sha256_hex) const;
+  [[nodiscard]] Written adopt(const Adoption& adoption);
+  [[nodiscard]] std::vector<Adoption> adoptions() const;  // oldest first
+
+  // Operators' acts.
+  [[nodiscard]] Written confirm_first_start(const FirstStart& first);
+  [[nodiscard]] std::optional<FirstStart> first_start(const std::string& robot_sha256_hex) const;
+  /// Remembers a command's answer; `seen` gives it back when the id was there before (also after a restart).
+  [[nodiscard]] Written remember_command(const std::string& id, const std::string& answer_bytes);
+  [[nodiscard]] std::optional<std::string> command_answer(const std::string& id) const;
+  /// Telemetry that must be fetchable for ever (episodes, verdicts, notes), by sequence.
+  [[nodiscard]] Written store_telemetry(const v1::Telemetry& telemetry);
+  [[nodiscard]] std::vector<v1::Telemetry> telemetry(std::uint64_t from, std::uint64_t to) const;
+  [[nodiscard]] std::uint64_t last_sequence() const;
+  /// A line in the record: trips, releases, resumptions, with the robot's time.
+  [[nodiscard]] Written note(std::uint64_t session, const std::string& words);
+
+  /// SHA-256 over walks, returns, parameters, decisions of a session in order; not wall times, not resume marks.
+  [[nodiscard]] std::string digest(std::uint64_t session) const;
+  /// A consistent copy of the whole database as bytes (sqlite3_serialize).
+  [[nodiscard]] std::string snapshot() const;
+
+ private:
+  Journal();
+  struct Impl;
+  std::unique_ptr<Impl> impl_;
+};
+
+}  // namespace pastern::journal
