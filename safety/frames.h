@@ -12,12 +12,12 @@ struct SensorFrame {
   std::uint64_t counter{0};  ///< Rises by one with every new frame; a repeated number is a stale frame.
   TimeNs time;               ///< When the frame was sampled.
   std::int32_t joint_count{0};
-  JointAngles<> angle;                  ///< rad
-  JointSpeeds<> speed;                  ///< rad/s
-  Torques<> torque;                     ///< measured, N m at the joint
-  Temperatures<> winding;               ///< deg C
-  Temperatures<> housing;               ///< deg C
-  Vector3<RadianPerSecond, Body> rate;  ///< IMU, rad/s
+  JointAngles<> angle;                                ///< rad
+  JointSpeeds<> speed;                                ///< rad/s
+  Torques<> torque;                                   ///< measured, N m at the joint
+  Temperatures<> winding;                             ///< deg C
+  Temperatures<> housing;                             ///< deg C
+  Vector3<RadianPerSecond, Body> rate;                ///< IMU, rad/s
   Vector3<MetrePerSecondSquared, Body> acceleration;  ///< IMU specific force; +g upward at rest
   bool has_attitude{false};                           ///< true when the IMU gives an attitude of its own
   Attitude<> attitude;

@@ -11,8 +11,8 @@ namespace pastern::safety {
 
 /// What else reaches the gate in a tick; plain values copied from atomics by the cycle.
 struct Flags {
-  bool stop{false};           ///< operator's controlled stop
-  bool halt{false};           ///< operator's torque off at once
+  bool stop{false};  ///< operator's controlled stop
+  bool halt{false};  ///< operator's torque off at once
   bool baton_lost{false};
   bool internal_stop{false};  ///< the program asks for an orderly stop
   bool bus_error{false};      ///< the drives could not be read or written
@@ -47,15 +47,18 @@ class Gate {
   explicit Gate(const Limits& limits) noexcept;
 
   /// One tick. `wanted` and `target` come from the PD stage and may hold anything, NaN included.
-  /// `late_s`: by how much this tick began after it was due. Returns the only command that may reach the drives.
-  [[nodiscard]] DriveCommand judge(const SensorFrame& frame, const Torques<>& wanted, const JointAngles<>& target,
-                                   const Flags& flags, TimeNs now, double late_s) noexcept;
+  /// `late_s`: by how much this tick began after it was due. Returns the only command that may reach the
+  /// drives.
+  [[nodiscard]] DriveCommand judge(const SensorFrame& frame, const Torques<>& wanted,
+                                   const JointAngles<>& target, const Flags& flags, TimeNs now,
+                                   double late_s) noexcept;
 
   [[nodiscard]] Phase phase() const noexcept;
   /// First cause since the last release; cause none when armed.
   [[nodiscard]] const Trip& trip() const noexcept;
   [[nodiscard]] Hold hold() const noexcept;
-  /// Clears a trip: only when the torque is off and no cause is present any more. An operator's act; false when refused.
+  /// Clears a trip: only when the torque is off and no cause is present any more. An operator's act; false
+  /// when refused.
   [[nodiscard]] bool release() noexcept;
   /// True when the last judge changed a wanted torque (peak, slew, fades).
   [[nodiscard]] bool clamped() const noexcept;
@@ -65,7 +68,8 @@ class Gate {
   /// Hottest joint of the thermal model, 1 = limit.
   [[nodiscard]] double thermal_worst() const noexcept;
   /// Thermal state to carry over a restart (thermal memory must not be zeroed by a power cut).
-  [[nodiscard]] const PerJoint<Celsius>& thermal_state() const noexcept;  ///< entries are fractions of the limit
+  [[nodiscard]] const PerJoint<Celsius>& thermal_state()
+      const noexcept;  ///< entries are fractions of the limit
   void restore_thermal_state(const PerJoint<Celsius>& state) noexcept;
   /// The simulated or carried robot was set down elsewhere: filters start anew, latches stay.
   void reset_filters() noexcept;

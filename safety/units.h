@@ -19,7 +19,8 @@ struct Metre {};
 struct MetrePerSecond {};
 struct MetrePerSecondSquared {};
 
-/// Frame tags. World: x forward along the lane, y left, z up. Body: x forward, y left, z up, fixed to the trunk.
+/// Frame tags. World: x forward along the lane, y left, z up. Body: x forward, y left, z up, fixed to the
+/// trunk.
 struct World {};
 struct Body {};
 

@@ -1,4 +1,5 @@
-// Judges a message by the rules written on its fields (proto/pastern/v1/rule.proto), every defect in one line.
+// Judges a message by the rules written on its fields (proto/pastern/v1/rule.proto), every defect in one
+// line.
 #pragma once
 
 #include <google/protobuf/message.h>

@@ -8,7 +8,8 @@ namespace pastern::files {
 
 struct Defect {
   std::string file;
-  std::string field;     ///< path in the file, e.g. "joints[3].drive.peak_torque_nm"; empty for the file as a whole
+  std::string
+      field;  ///< path in the file, e.g. "joints[3].drive.peak_torque_nm"; empty for the file as a whole
   std::string found;
   std::string expected;
 

@@ -9,7 +9,8 @@
 
 namespace pastern::files {
 
-[[nodiscard]] std::optional<v1::Plan> parse_plan(const std::string& text, const std::string& file, Defects& defects);
+[[nodiscard]] std::optional<v1::Plan> parse_plan(const std::string& text, const std::string& file,
+                                                 Defects& defects);
 [[nodiscard]] std::optional<v1::Plan> read_plan(const std::string& path, Defects& defects);
 
 }  // namespace pastern::files

@@ -1,4 +1,5 @@
-// Text-format protobuf files: read whole, parse strictly (unknown fields and duplicates are errors), check rules.
+// Text-format protobuf files: read whole, parse strictly (unknown fields and duplicates are errors), check
+// rules.
 #pragma once
 
 #include <google/protobuf/message.h>
@@ -15,7 +16,7 @@ namespace pastern::files {
 [[nodiscard]] std::optional<std::string> read_whole(const std::string& path, Defects& defects);
 
 /// Parses `text` into `message` and checks its rules; false with defects otherwise.
-[[nodiscard]] bool parse_text(std::string_view text, const std::string& file, google::protobuf::Message& message,
-                              Defects& defects);
+[[nodiscard]] bool parse_text(std::string_view text, const std::string& file,
+                              google::protobuf::Message& message, Defects& defects);
 
 }  // namespace pastern::files

@@ -1,4 +1,5 @@
-// The exact one-sided sign-flip test on paired differences (Fisher 1935, sec. 21), and the interval that belongs to it.
+// The exact one-sided sign-flip test on paired differences (Fisher 1935, sec. 21), and the interval that
+// belongs to it.
 #pragma once
 
 #include <cstdint>
@@ -6,15 +7,17 @@
 
 namespace pastern::adapt {
 
-/// Share of the 2^n sign patterns whose sum of differences is at least the observed one (ties count, compared with a
-/// relative tolerance of 1e-12 of the sum of magnitudes). n in 1..24; 1.0 when any difference is not finite or n is 0.
+/// Share of the 2^n sign patterns whose sum of differences is at least the observed one (ties count, compared
+/// with a relative tolerance of 1e-12 of the sum of magnitudes). n in 1..24; 1.0 when any difference is not
+/// finite or n is 0.
 [[nodiscard]] double sign_flip_p(const std::vector<double>& differences);
 
 struct Interval {
   double low{0};
   double high{0};
 };
-/// All shifts d that a two-sided sign-flip test at 1 - level does not reject, on differences - d (test inversion).
+/// All shifts d that a two-sided sign-flip test at 1 - level does not reject, on differences - d (test
+/// inversion).
 [[nodiscard]] Interval sign_flip_interval(const std::vector<double>& differences, double level);
 
 /// For each pair whether the adapted policy walks first: random, a pure function of the seed.

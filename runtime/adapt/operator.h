@@ -1,5 +1,6 @@
-// An adaptation operator: returns in, next parameters out. Pure: no clock, no file; random numbers are a function of
-// (seed, batch, index) by Philox4x32-10 (Random123). Replaying the same committed returns gives the same proposals.
+// An adaptation operator: returns in, next parameters out. Pure: no clock, no file; random numbers are a
+// function of (seed, batch, index) by Philox4x32-10 (Random123). Replaying the same committed returns gives
+// the same proposals.
 #pragma once
 
 #include <cstdint>
@@ -30,19 +31,22 @@ class Operator {
   virtual ~Operator() = default;
   /// The walks wanted next, a batch at once; the same again until all of them are observed.
   [[nodiscard]] virtual const std::vector<Proposal>& batch() const = 0;
-  /// A result of the present batch, in any order, each once. Voided walks are never told: they are walked again.
-  /// True when the batch is complete and the next one has been made.
+  /// A result of the present batch, in any order, each once. Voided walks are never told: they are walked
+  /// again. True when the batch is complete and the next one has been made.
   virtual bool observe(const Committed<Evaluation>& evaluation) = 0;
   /// The parameters the operator would name now (the start's before anything was learned).
   [[nodiscard]] virtual const Parameters& incumbent() const = 0;
   [[nodiscard]] virtual std::string name() const = 0;
 };
 
-/// `start` is inside its own trust region by definition; every proposal is inside, by shrinking the change group by group.
+/// `start` is inside its own trust region by definition; every proposal is inside, by shrinking the change
+/// group by group.
 [[nodiscard]] std::unique_ptr<Operator> make_operator(const Settings& settings, const Parameters& start);
 
 /// Group whose change is outside the trust region, or nothing. NaN is outside.
-[[nodiscard]] std::optional<std::string> outside_trust_region(const Parameters& start, const Parameters& candidate,
-                                                              const std::vector<Group>& groups, double trust_region);
+[[nodiscard]] std::optional<std::string> outside_trust_region(const Parameters& start,
+                                                              const Parameters& candidate,
+                                                              const std::vector<Group>& groups,
+                                                              double trust_region);
 
 }  // namespace pastern::adapt

@@ -1,5 +1,5 @@
-// Counter-based random numbers: Philox4x32-10 of Random123 (Salmon et al., SC 2011). A number is a pure function of its
-// coordinates: no state, any order, any thread.
+// Counter-based random numbers: Philox4x32-10 of Random123 (Salmon et al., SC 2011). A number is a pure
+// function of its coordinates: no state, any order, any thread.
 #pragma once
 
 #include <cstdint>

@@ -19,8 +19,8 @@ struct Gains {
 
 /// torque = stiffness * (target - angle) - damping * speed. No clamp here: the gate clamps.
 template <class S>
-[[nodiscard]] Torques<S> pd_torques(const Gains<S>& gains, const JointTarget<S>& target, const JointAngles<S>& angle,
-                                    const JointSpeeds<S>& speed) noexcept {
+[[nodiscard]] Torques<S> pd_torques(const Gains<S>& gains, const JointTarget<S>& target,
+                                    const JointAngles<S>& angle, const JointSpeeds<S>& speed) noexcept {
   Torques<S> torque;
   for (int j = 0; j < gains.joint_count; ++j) {
     const auto i = static_cast<std::size_t>(j);
@@ -29,7 +29,7 @@ template <class S>
   return torque;
 }
 
-extern template Torques<double> pd_torques(const Gains<double>&, const JointTarget<double>&, const JointAngles<double>&,
-                                           const JointSpeeds<double>&) noexcept;
+extern template Torques<double> pd_torques(const Gains<double>&, const JointTarget<double>&,
+                                           const JointAngles<double>&, const JointSpeeds<double>&) noexcept;
 
 }  // namespace pastern::control

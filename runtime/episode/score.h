@@ -1,4 +1,5 @@
-// Ticks -> EpisodeReturn. The sums are a template over the scalar, so that training scores by the same source.
+// Ticks -> EpisodeReturn. The sums are a template over the scalar, so that training scores by the same
+// source.
 #pragma once
 
 #include <algorithm>
@@ -30,8 +31,8 @@ struct ReturnSums {
   S turn{};
 };
 
-/// What a tick adds: speed along the lane, sum over joints of |torque*speed|, distance from the lane's middle, yaw.
-/// min and abs are found by argument-dependent lookup for a lane type.
+/// What a tick adds: speed along the lane, sum over joints of |torque*speed|, distance from the lane's
+/// middle, yaw. min and abs are found by argument-dependent lookup for a lane type.
 template <class S>
 struct TickScore {
   S speed_m_per_s{};

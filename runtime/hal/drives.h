@@ -11,7 +11,7 @@
 namespace pastern::hal {
 
 struct DrivesConfig {
-  std::string plugin;   ///< path of the shared object
+  std::string plugin;  ///< path of the shared object
   std::vector<std::string> joint_names;
   double period_s{0.001};
   double drive_timeout_s{0.020};

@@ -3,29 +3,29 @@
  *
  * Life of a plug-in
  *   dlopen -> pastern_hal_entry(PASTERN_HAL_VERSION) -> open -> { read, write } once a tick -> close.
- *   The table and its strings belong to the plug-in and live until it is closed. A frame belongs to the caller; the
- *   plug-in fills it and keeps no pointer to it. A command belongs to the caller and is valid during write only.
- *   All calls after open come from one thread at a time (the cycle), never two at once.
+ *   The table and its strings belong to the plug-in and live until it is closed. A frame belongs to the
+ * caller; the plug-in fills it and keeps no pointer to it. A command belongs to the caller and is valid
+ * during write only. All calls after open come from one thread at a time (the cycle), never two at once.
  *
  * Timing
  *   read returns the newest frame and must not wait longer than a quarter of the period. write must not wait.
  *   Neither may allocate memory, take a lock that another thread may hold for long, or block on the network.
  *
  * Safety duties of the drives (not of the caller)
- *   Command timeout: when no write has arrived for `drive_timeout_s` (default 0.020 s) the drives damp by themselves
- *   and take the torque off 0.5 s later. This holds when the process is stopped, killed or starved.
+ *   Command timeout: when no write has arrived for `drive_timeout_s` (default 0.020 s) the drives damp by
+ * themselves and take the torque off 0.5 s later. This holds when the process is stopped, killed or starved.
  *   Emergency stop: the input acts on the drives directly; the frame only reports it.
  *   `torque_on == 0` means no torque is produced, from the next command period on.
  *
  * Failure
- *   read: PASTERN_HAL_OK new frame; PASTERN_HAL_NO_FRAME nothing new since the last (the frame is left unchanged; the
- *   caller's stale watch judges it); PASTERN_HAL_FAILED the bus is broken: the caller trips at once (bus_error) and
- *   goes on trying to write torque_on == 0. write: PASTERN_HAL_OK or PASTERN_HAL_FAILED, judged alike.
- *   error_text gives one line about the last failure.
+ *   read: PASTERN_HAL_OK new frame; PASTERN_HAL_NO_FRAME nothing new since the last (the frame is left
+ * unchanged; the caller's stale watch judges it); PASTERN_HAL_FAILED the bus is broken: the caller trips at
+ * once (bus_error) and goes on trying to write torque_on == 0. write: PASTERN_HAL_OK or PASTERN_HAL_FAILED,
+ * judged alike. error_text gives one line about the last failure.
  *
  * Units: rad, rad/s, N m, deg C, V, A, m, m/s^2, nanoseconds of CLOCK_MONOTONIC (or simulated time).
- * Frames: body x forward, y left, z up; world x forward along the lane, z up. Attitude: unit quaternion body-to-world,
- * scalar first. Joints: the order of the robot file. Entries from joint_count on are ignored.
+ * Frames: body x forward, y left, z up; world x forward along the lane, z up. Attitude: unit quaternion
+ * body-to-world, scalar first. Joints: the order of the robot file. Entries from joint_count on are ignored.
  */
 #ifndef PASTERN_HAL_H
 #define PASTERN_HAL_H
@@ -99,10 +99,10 @@ typedef struct pastern_hal {
   const char* (*error_text)(void* handle);
 
   /* Optional (null when absent), simulated robots only. Between orders, never within a tick.
-   * save: writes what carries over between walks (heat, charge, wear, clock) and sets *length; PASTERN_HAL_FAILED with
-   * *length = bytes needed when capacity is too small. restore: the inverse.
-   * carry_back: a person has put the robot back on its start mark, torque off; what is random about that is a pure
-   * function of `draw`. */
+   * save: writes what carries over between walks (heat, charge, wear, clock) and sets *length;
+   * PASTERN_HAL_FAILED with *length = bytes needed when capacity is too small. restore: the inverse.
+   * carry_back: a person has put the robot back on its start mark, torque off; what is random about that is a
+   * pure function of `draw`. */
   int (*save)(void* handle, void* buffer, size_t capacity, size_t* length);
   int (*restore)(void* handle, const void* buffer, size_t length);
   int (*carry_back)(void* handle, uint64_t draw);

@@ -1,5 +1,6 @@
-// The durable record: SQLite, WAL, synchronous FULL. A walk is on disk before the next begins. Session thread only.
-// Schema: runtime/journal/schema.sql (documented there, versioned; a newer version is refused). Any SQLite tool opens it.
+// The durable record: SQLite, WAL, synchronous FULL. A walk is on disk before the next begins. Session thread
+// only. Schema: runtime/journal/schema.sql (documented there, versioned; a newer version is refused). Any
+// SQLite tool opens it.
 #pragma once
 
 #include <cstdint>
@@ -45,8 +46,9 @@ struct Adoption {
 
 class Journal {
  public:
-  /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, newer schema, not a journal,
-  /// damaged, locked by another process, disk full. `vfs` names an SQLite VFS (tests), empty for the default.
+  /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, newer schema,
+  /// not a journal, damaged, locked by another process, disk full. `vfs` names an SQLite VFS (tests), empty
+  /// for the default.
   [[nodiscard]] static std::unique_ptr<Journal> open(const std::string& folder, std::string& error,
                                                      const std::string& vfs = "", bool read_only = false);
   ~Journal();
@@ -56,11 +58,14 @@ class Journal {
   [[nodiscard]] std::optional<SessionRow> last_session() const;
   [[nodiscard]] Written end_session(std::uint64_t session, const v1::Verdict& verdict);
 
-  /// One transaction: the episode, the parameters it walked, and the simulated robot's carried state (may be empty).
-  /// The returned value is the proof that an operator wants; nothing when the write failed (words in `why`).
-  [[nodiscard]] std::optional<Committed<Evaluation>> commit(const v1::Episode& episode, const Parameters& parameters,
+  /// One transaction: the episode, the parameters it walked, and the simulated robot's carried state (may be
+  /// empty). The returned value is the proof that an operator wants; nothing when the write failed (words in
+  /// `why`).
+  [[nodiscard]] std::optional<Committed<Evaluation>> commit(const v1::Episode& episode,
+                                                            const Parameters& parameters,
                                                             const std::string& robot_state, std::string& why);
-  /// All finished walks of a session in order, as proofs, for replay. Void ones are included; the caller skips them.
+  /// All finished walks of a session in order, as proofs, for replay. Void ones are included; the caller
+  /// skips them.
   struct Finished {
     v1::Episode episode;
     Committed<Evaluation> evaluation;
@@ -92,7 +97,8 @@ class Journal {
   /// A line in the record: trips, releases, resumptions, with the robot's time.
   [[nodiscard]] Written note(std::uint64_t session, const std::string& words);
 
-  /// SHA-256 over walks, returns, parameters, decisions of a session in order; not wall times, not resume marks.
+  /// SHA-256 over walks, returns, parameters, decisions of a session in order; not wall times, not resume
+  /// marks.
   [[nodiscard]] std::string digest(std::uint64_t session) const;
   /// A consistent copy of the whole database as bytes (sqlite3_serialize).
   [[nodiscard]] std::string snapshot() const;

@@ -1,4 +1,5 @@
-// CURVE keys in files, one key a file, Z85 (RFC 32 of ZeroMQ). Private files 0600, refused if readable by others.
+// CURVE keys in files, one key a file, Z85 (RFC 32 of ZeroMQ). Private files 0600, refused if readable by
+// others.
 //   robot:  key_folder/robot.secret, robot.public, allowed/NAME.observer.public, allowed/NAME.operator.public
 //   ground: key_folder/NAME.secret, NAME.public (one pair), robot.public
 #pragma once
@@ -31,8 +32,8 @@ struct GroundKeys {
 [[nodiscard]] bool make_pair(const std::string& folder, const std::string& name, std::string& error);
 [[nodiscard]] bool read_robot_keys(const std::string& folder, RobotKeys& keys, std::string& error);
 [[nodiscard]] bool read_ground_keys(const std::string& folder, GroundKeys& keys, std::string& error);
-[[nodiscard]] bool allow(const std::string& folder, const std::string& name, bool commander, const std::string& public_z85,
-                         std::string& error);
+[[nodiscard]] bool allow(const std::string& folder, const std::string& name, bool commander,
+                         const std::string& public_z85, std::string& error);
 [[nodiscard]] bool revoke(const std::string& folder, const std::string& name, std::string& error);
 
 }  // namespace pastern::link

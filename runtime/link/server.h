@@ -1,5 +1,6 @@
 // The robot's end of the link: one thread, three ZeroMQ sockets, CURVE with an allow-list, the baton.
-// A stop never waits for a disk or a computation: stop and halt are served in this thread through Line's atomics.
+// A stop never waits for a disk or a computation: stop and halt are served in this thread through Line's
+// atomics.
 #pragma once
 
 #include <cstdint>
@@ -18,7 +19,7 @@ struct ServerConfig {
   int command_port{7741};
   int telemetry_port{7742};
   int fetch_port{7743};
-  std::string key_folder;        ///< empty: no CURVE, loopback only
+  std::string key_folder;  ///< empty: no CURVE, loopback only
   std::int64_t baton_lapse_ms{500};
 };
 
@@ -31,25 +32,28 @@ struct Ticket {
 class Line {
  public:
   virtual ~Line() = default;
-  virtual void stop() = 0;                                ///< sets the cycle's atomic
+  virtual void stop() = 0;  ///< sets the cycle's atomic
   virtual void halt() = 0;
-  [[nodiscard]] virtual bool stop_confirmed() const = 0;  ///< a damped or torque-free command has been written since
+  [[nodiscard]] virtual bool stop_confirmed()
+      const = 0;  ///< a damped or torque-free command has been written since
   virtual void baton_held(bool held) = 0;
-  /// All other commands: queued for the session thread, which calls Server::answer. False when the queue is full.
+  /// All other commands: queued for the session thread, which calls Server::answer. False when the queue is
+  /// full.
   [[nodiscard]] virtual bool submit(Ticket ticket, const v1::Command& command, const std::string& who) = 0;
   [[nodiscard]] virtual bool submit(Ticket ticket, const v1::Fetch& fetch) = 0;
-  [[nodiscard]] virtual v1::Status status() const = 0;    ///< latest snapshot, a copy under a short lock
+  [[nodiscard]] virtual v1::Status status() const = 0;  ///< latest snapshot, a copy under a short lock
 };
 
 class Server {
  public:
   /// Binds and starts the thread. Null with one line in `error`.
-  [[nodiscard]] static std::unique_ptr<Server> start(const ServerConfig& config, Line& line, std::string& error);
+  [[nodiscard]] static std::unique_ptr<Server> start(const ServerConfig& config, Line& line,
+                                                     std::string& error);
   ~Server();  ///< stops the thread
 
   void answer(Ticket ticket, const v1::Answer& answer);    ///< any thread
   void answer(Ticket ticket, const v1::Fetched& fetched);  ///< any thread
-  void publish(const v1::Telemetry& telemetry);            ///< any thread; dropped and counted when the queue is full
+  void publish(const v1::Telemetry& telemetry);  ///< any thread; dropped and counted when the queue is full
   [[nodiscard]] std::string baton_holder() const;
 
  private:

@@ -1,6 +1,7 @@
-// The deterministic feedforward policy: observation -> network -> action map -> joint targets, with its own gait clock.
-// Two layers:
-//  * Plain parts, templates over a scalar (observation, network, action map): policy_parts.h. Training and, later, lanes of
+// The deterministic feedforward policy: observation -> network -> action map -> joint targets, with its own
+// gait clock. Two layers:
+//  * Plain parts, templates over a scalar (observation, network, action map): policy_parts.h. Training and,
+//  later, lanes of
 //    floats use the same source.
 //  * Policy: what the cycle holds; float or double by file. No heap after make(); same inputs, same bits.
 #pragma once
@@ -26,8 +27,8 @@ class Policy {
   /// Phase to zero; the target becomes the stance.
   virtual void reset() noexcept = 0;
   /// One policy tick: `dt_s` is the policy's period; the phase advances by it afterwards.
-  virtual JointTarget<> step(const BodyEstimate<>& body, const JointAngles<>& angle, const JointSpeeds<>& speed,
-                             double dt_s) noexcept = 0;
+  virtual JointTarget<> step(const BodyEstimate<>& body, const JointAngles<>& angle,
+                             const JointSpeeds<>& speed, double dt_s) noexcept = 0;
 };
 
 /// Perturbation groups of a policy; one group of all parameters with scale 0.05 when the file names none.

@@ -1,5 +1,6 @@
-// One tick strung together: read -> estimate -> policy -> PD -> GATE -> write -> record. At wall pace it runs in the
-// cycle thread; at stepped pace, and in rehearsal and benches, whoever calls run_order() is that thread.
+// One tick strung together: read -> estimate -> policy -> PD -> GATE -> write -> record. At wall pace it runs
+// in the cycle thread; at stepped pace, and in rehearsal and benches, whoever calls run_order() is that
+// thread.
 #pragma once
 
 #include <atomic>
@@ -26,7 +27,8 @@ struct Signals {
   std::atomic<bool> halt{false};
   std::atomic<bool> baton_lost{false};
   std::atomic<bool> internal_stop{false};
-  std::atomic<std::uint64_t> stopped_commands{0};  ///< ticks written with a stop sequence running or torque off
+  std::atomic<std::uint64_t> stopped_commands{
+      0};  ///< ticks written with a stop sequence running or torque off
 };
 
 /// What the cycle is to do. Everything that takes time is an order.
@@ -63,7 +65,8 @@ class Cycle {
 
   /// Between orders: parameters of the next walk.
   void load(const Parameters& parameters) noexcept;
-  /// Runs one motion to its end at the caller's pace: stepped = no sleeping; wall = called by the cycle thread only.
+  /// Runs one motion to its end at the caller's pace: stepped = no sleeping; wall = called by the cycle
+  /// thread only.
   [[nodiscard]] MotionResult run(Motion motion, double duration_s);
   [[nodiscard]] CycleFigures figures() const noexcept;
 

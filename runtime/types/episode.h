@@ -13,10 +13,17 @@ namespace journal {
 class Journal;
 }
 
-enum class Part : std::uint8_t { baseline = 1, search = 2, confirmation_start = 3, confirmation_adapted = 4, single = 5 };
+enum class Part : std::uint8_t {
+  baseline = 1,
+  search = 2,
+  confirmation_start = 3,
+  confirmation_adapted = 4,
+  single = 5
+};
 enum class Outcome : std::uint8_t { completed = 1, fell = 2, left_lane = 3, voided = 4 };
 
-/// Return of one walk, every term on its own, in return units (metres with the default weights). Costs are negative.
+/// Return of one walk, every term on its own, in return units (metres with the default weights). Costs are
+/// negative.
 struct EpisodeReturn {
   double forward{0};
   double energy{0};
