@@ -1,0 +1,76 @@
+#!/bin/sh
+# Installs what is missing, builds, and runs every test. Quiet on success, clear on failure; works offline once the packages are there.
+#   sh tests/run.sh            everything: release, ASan+UBSan, TSan, formatting, clang-tidy
+#   sh tests/run.sh STAGE...   some of: release asan tsan format tidy
+set -eu
+cd "$(dirname "$0")/.."
+sh tools/install-packages.sh
+logs=build/logs
+mkdir -p "$logs"
+jobs=$(nproc)
+
+# step NAME COMMAND...: one line on success, the end of the log on failure.
+step() {
+  name=$1; shift
+  began=$(date +%s)
+  if "$@" >"$logs/$name.log" 2>&1; then
+    printf '%-24s passed  %4ss\n' "$name" $(($(date +%s) - began))
+  else
+    printf '%-24s FAILED  %4ss  (%s)\n' "$name" $(($(date +%s) - began)) "$logs/$name.log"
+    tail -n 60 "$logs/$name.log"
+    exit 1
+  fi
+}
+
+# build DIR cmake-arguments...
+build() {
+  dir=$1; shift
+  cmake -S . -B "$dir" -G Ninja "$@" && cmake --build "$dir" -j "$jobs"
+}
+
+# tests NAME DIR ctest-arguments...: prints ctest's closing lines, which count the tests.
+tests() {
+  name=$1; dir=$2; shift 2
+  step "$name" ctest --test-dir "$dir" --output-on-failure --no-tests=error -j "$jobs" "$@"
+  grep -E 'tests passed|Total Test time' "$logs/$name.log"
+}
+
+release() {
+  step build-release build build/release -DCMAKE_BUILD_TYPE=Release
+  tests tests-release build/release
+}
+
+asan() {
+  step build-asan build build/asan -DCMAKE_BUILD_TYPE=RelWithDebInfo -DPASTERN_ASAN=ON
+  tests tests-asan build/asan -L fast
+}
+
+tsan() {
+  step build-tsan build build/tsan -DCMAKE_BUILD_TYPE=RelWithDebInfo -DPASTERN_TSAN=ON
+  TSAN_OPTIONS="suppressions=$PWD/tests/tsan.supp halt_on_error=1 second_deadlock_stack=1" \
+    tests tests-tsan build/tsan -L threads
+}
+
+format() {
+  step format sh -c "git ls-files '*.h' '*.cpp' '*.c' | xargs clang-format --dry-run --Werror"
+}
+
+# All of safety/ always; elsewhere the files that differ from the last commit on which everything passed, or from the parent.
+tidy() {
+  files=$(git ls-files 'safety/*.cpp')
+  base=$(cat build/tidy-base 2>/dev/null || git rev-parse -q --verify HEAD~1 || true)
+  if [ -n "$base" ] && git cat-file -e "$base" 2>/dev/null; then
+    files="$files $(git diff --name-only --diff-filter=d "$base" -- 'runtime/*.cpp' 'hal_stub/*.cpp' 'tools/*.cpp' 'proto/*.cpp')"
+  fi
+  step tidy sh -c "echo '$files' | tr ' ' '\n' | sort -u | grep . | xargs -P $jobs -n 4 clang-tidy -quiet -p build/release"
+  git rev-parse HEAD >build/tidy-base
+}
+
+[ $# -gt 0 ] || set -- release asan tsan format tidy
+for stage in "$@"; do
+  case $stage in
+    release | asan | tsan | format | tidy) "$stage" ;;
+    *) echo "tests/run.sh: unknown stage '$stage': expected release, asan, tsan, format or tidy" >&2; exit 2 ;;
+  esac
+done
+echo "all passed"
