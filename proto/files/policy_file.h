@@ -33,7 +33,7 @@ class PolicyFile {
 [[nodiscard]] std::optional<PolicyFile> read_policy(const std::string& path, const RobotFile& robot,
                                                     Defects& defects);
 
-/// A copy of `base` with other parameters and provenance, as file bytes.
+/// The message as file bytes.
 [[nodiscard]] std::string pack_policy(const v1::Policy& policy);
 
 }  // namespace pastern::files

@@ -1,0 +1,116 @@
+// Reads a scenario file and judges it against its robot.
+#include "proto/files/scenario_file.h"
+
+#include <cmath>
+#include <set>
+
+#include "proto/files/number.h"
+#include "proto/files/text.h"
+
+namespace pastern::files {
+namespace {
+
+class Judge {
+ public:
+  Judge(const v1::Scenario& scenario, const RobotFile& robot, const std::string& file, Defects& defects)
+      : scenario_(scenario), robot_(robot), file_(file), defects_(defects) {}
+
+  void run() {
+    site();
+    wear();
+    for (int i = 0; i < scenario_.faults_size(); ++i) fault(i);
+  }
+
+ private:
+  void require(bool sound, const std::string& field, const std::string& found, const std::string& expected) {
+    if (!sound) defects_.push_back({file_, field, found, expected});
+  }
+
+  void within(double value, double most, const std::string& field, const char* unit) {
+    require(std::abs(value) <= most, field, shown_number(value),
+            "between -" + shown_number(most) + " and " + shown_number(most) + " (" + unit + ")");
+  }
+
+  void site() {
+    require(!scenario_.has_load_at_m() || scenario_.has_load_kg(), "load_at_m", "a place without a load",
+            "load_kg beside it");
+    require(!(scenario_.has_joint_damping_ratio() && scenario_.has_joint_damping_nm_s_per_rad()),
+            "joint_damping_ratio", "joint_damping_nm_s_per_rad as well", "one of the two");
+    require(scenario_.command_jitter_s() <= scenario_.command_delay_s(), "command_jitter_s",
+            shown_number(scenario_.command_jitter_s()),
+            "at most command_delay_s, " + shown_number(scenario_.command_delay_s()));
+    within(scenario_.load_at_m().x(), 2, "load_at_m.x", "m");
+    within(scenario_.load_at_m().y(), 2, "load_at_m.y", "m");
+    within(scenario_.load_at_m().z(), 2, "load_at_m.z", "m");
+    within(scenario_.imu_tilt_rad().x(), 0.5, "imu_tilt_rad.x", "rad");
+    within(scenario_.imu_tilt_rad().y(), 0.5, "imu_tilt_rad.y", "rad");
+    within(scenario_.imu_tilt_rad().z(), 0.5, "imu_tilt_rad.z", "rad");
+  }
+
+  void wear() {
+    std::set<std::string> seen;
+    for (int i = 0; i < scenario_.wear_size(); ++i) {
+      const std::string at = "wear[" + std::to_string(i) + "].joint";
+      const std::string& joint = scenario_.wear(i).joint();
+      known(joint, at);
+      require(seen.insert(joint).second, at, joint + ", said before", "each joint once");
+    }
+  }
+
+  void known(const std::string& joint, const std::string& field) {
+    require(robot_.joint_index(joint) >= 0, field, joint, "a joint of " + robot_.robot().name());
+  }
+
+  static bool of_a_joint(v1::Fault::Kind kind) {
+    switch (kind) {
+      case v1::Fault::ANGLE_STUCK:
+      case v1::Fault::ANGLE_NAN:
+      case v1::Fault::ANGLE_JUMP:
+      case v1::Fault::SPEED_NAN:
+      case v1::Fault::DRIVE_DEAD:
+      case v1::Fault::DRIVE_RUNAWAY:
+      case v1::Fault::WINDING_HOT:
+      case v1::Fault::TORQUE_SENSE_HIGH:
+        return true;
+      default:
+        return false;
+    }
+  }
+
+  void fault(int index) {
+    const v1::Fault& fault = scenario_.faults(index);
+    const std::string at = "faults[" + std::to_string(index) + "].joint";
+    if (of_a_joint(fault.kind())) {
+      require(!fault.joint().empty(), at, "nothing", "the joint that fails");
+      if (!fault.joint().empty()) known(fault.joint(), at);
+    } else {
+      require(fault.joint().empty(), at, fault.joint(),
+              "nothing: " + v1::Fault::Kind_Name(fault.kind()) + " is no fault of a joint");
+    }
+  }
+
+  const v1::Scenario& scenario_;
+  const RobotFile& robot_;
+  const std::string& file_;
+  Defects& defects_;
+};
+
+}  // namespace
+
+std::optional<v1::Scenario> parse_scenario(const std::string& text, const std::string& file,
+                                           const RobotFile& robot, Defects& defects) {
+  v1::Scenario scenario;
+  if (!parse_text(text, file, scenario, defects)) return std::nullopt;
+  const std::size_t before = defects.size();
+  Judge(scenario, robot, file, defects).run();
+  if (defects.size() != before) return std::nullopt;
+  return scenario;
+}
+
+std::optional<v1::Scenario> read_scenario(const std::string& path, const RobotFile& robot, Defects& defects) {
+  const std::optional<std::string> text = read_whole(path, defects);
+  if (!text) return std::nullopt;
+  return parse_scenario(*text, path, robot, defects);
+}
+
+}  // namespace pastern::files
