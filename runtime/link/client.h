@@ -24,8 +24,8 @@ class Client {
   [[nodiscard]] static std::unique_ptr<Client> connect(const ClientConfig& config, std::string& error);
   ~Client();
 
-  /// Fills in format, id (when empty), name and baton; sends; waits; sends again with the same id after a
-  /// third of the time. Nothing when no answer came within `timeout_ms`.
+  /// Fills in format, id (when empty), name and baton (when 0); sends; waits; sends again with the same id
+  /// after a third of the time. Nothing when no answer came within `timeout_ms`.
   [[nodiscard]] std::optional<v1::Answer> ask(v1::Command command, int timeout_ms = 3000);
   [[nodiscard]] std::optional<v1::Fetched> fetch(const v1::Fetch& fetch, int timeout_ms = 5000);
   /// Next telemetry, or nothing within the time. A gap in the sequence is filled by fetching before later
@@ -34,6 +34,8 @@ class Client {
   /// Takes the baton and renews it every 100 ms from a thread of its own until given back or destroyed.
   [[nodiscard]] bool take_baton(std::string& why);
   void give_baton();
+  /// Number of the baton held, 0 without one: another process with the same key may command with it.
+  [[nodiscard]] std::uint64_t baton() const;
 
  private:
   Client();
