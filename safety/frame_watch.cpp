@@ -1,0 +1,209 @@
+// Finite, possible, new, alive, without jumps. Every comparison is written so that NaN is found.
+#include "safety/frame_watch.h"
+
+#include <cmath>
+
+#include "safety/timing.h"
+
+namespace pastern::safety {
+namespace {
+
+constexpr int kNoJoint = -1;
+
+bool within(double x, double low, double high) noexcept { return x >= low && x <= high; }
+
+template <class Unit, class Frame>
+bool finite(const Vector3<Unit, Frame>& v) noexcept {
+  return std::isfinite(v.x) && std::isfinite(v.y) && std::isfinite(v.z);
+}
+
+void note_if_not_finite(double x, int joint, Findings& found) noexcept {
+  if (!std::isfinite(x)) found.note(Cause::frame_not_finite, joint, x, 0.0);
+}
+
+template <class Unit, class Frame>
+void note_if_not_finite(const Vector3<Unit, Frame>& v, Findings& found) noexcept {
+  if (!finite(v)) found.note(Cause::frame_not_finite);
+}
+
+void look_for_finite(const SensorFrame& frame, int joint_count, Findings& found) noexcept {
+  for (int j = 0; j < joint_count; ++j) {
+    note_if_not_finite(frame.angle[j], j, found);
+    note_if_not_finite(frame.speed[j], j, found);
+    note_if_not_finite(frame.torque[j], j, found);
+    note_if_not_finite(frame.winding[j], j, found);
+    note_if_not_finite(frame.housing[j], j, found);
+  }
+  note_if_not_finite(frame.rate, found);
+  note_if_not_finite(frame.acceleration, found);
+  note_if_not_finite(frame.pack_voltage_v, kNoJoint, found);
+  note_if_not_finite(frame.pack_current_a, kNoJoint, found);
+  if (frame.has_position) note_if_not_finite(frame.position, found);
+  if (!frame.has_attitude) return;
+  const Attitude<>& q = frame.attitude;
+  note_if_not_finite(q.w, kNoJoint, found);
+  note_if_not_finite(q.x, kNoJoint, found);
+  note_if_not_finite(q.y, kNoJoint, found);
+  note_if_not_finite(q.z, kNoJoint, found);
+}
+
+struct Range {
+  double low;
+  double high;
+};
+
+constexpr Range around(double size) noexcept { return {-size, size}; }
+
+// Not finite has its own cause and is not noted twice.
+void note_if_outside(double x, const Range& range, int joint, Findings& found) noexcept {
+  if (std::isnan(x) || within(x, range.low, range.high)) return;
+  found.note(Cause::frame_out_of_range, joint, x, x > range.high ? range.high : range.low);
+}
+
+template <class Unit, class Frame>
+void note_if_outside(const Vector3<Unit, Frame>& v, double size, Findings& found) noexcept {
+  note_if_outside(v.x, around(size), kNoJoint, found);
+  note_if_outside(v.y, around(size), kNoJoint, found);
+  note_if_outside(v.z, around(size), kNoJoint, found);
+}
+
+Range possible_speed(const JointLimits& joint) noexcept {
+  return around(kImpossibleFactor * joint.speed_max_rad_per_s);
+}
+
+void look_for_possible(const Limits& limits, const SensorFrame& frame, int joint_count,
+                       Findings& found) noexcept {
+  if (frame.joint_count != joint_count) {
+    found.note(Cause::frame_out_of_range, kNoJoint, frame.joint_count, joint_count);
+  }
+  for (int j = 0; j < joint_count; ++j) {
+    const JointLimits& joint = limits.joint[static_cast<std::size_t>(j)];
+    note_if_outside(frame.angle[j],
+                    {joint.angle_min_rad - kImpossibleAngle, joint.angle_max_rad + kImpossibleAngle}, j,
+                    found);
+    note_if_outside(frame.speed[j], possible_speed(joint), j, found);
+    note_if_outside(frame.torque[j], around(kImpossibleFactor * joint.trip_torque_nm), j, found);
+    note_if_outside(frame.winding[j], {kColdestC, kHottestC}, j, found);
+    note_if_outside(frame.housing[j], {kColdestC, kHottestC}, j, found);
+  }
+  note_if_outside(frame.rate, limits.rate_range_rad_per_s, found);
+  note_if_outside(frame.acceleration, limits.acceleration_range_m_per_s2, found);
+  note_if_outside(frame.pack_voltage_v, {0.0, kMostPackV}, kNoJoint, found);
+  note_if_outside(frame.pack_current_a, around(kImpossibleFactor * limits.pack_current_max_a), kNoJoint,
+                  found);
+  if (frame.has_position) note_if_outside(frame.position, kMostPositionM, found);
+  if (frame.has_attitude) {
+    const Attitude<>& q = frame.attitude;
+    note_if_outside(q.w * q.w + q.x * q.x + q.y * q.y + q.z * q.z, {0.9, 1.1}, kNoJoint, found);
+  }
+}
+
+bool all_speeds_possible(const Limits& limits, const SensorFrame& frame, int joint_count) noexcept {
+  for (int j = 0; j < joint_count; ++j) {
+    const Range range = possible_speed(limits.joint[static_cast<std::size_t>(j)]);
+    if (!within(frame.speed[j], range.low, range.high)) return false;
+  }
+  return true;
+}
+
+template <class Unit, class Frame>
+bool same(const Vector3<Unit, Frame>& a, const Vector3<Unit, Frame>& b) noexcept {
+  return a.x == b.x && a.y == b.y && a.z == b.z;
+}
+
+/// No analogue value differs. The counter, the time and the switches are not analogue.
+bool same_values(const SensorFrame& a, const SensorFrame& b, int joint_count) noexcept {
+  for (int j = 0; j < joint_count; ++j) {
+    if (a.angle[j] != b.angle[j] || a.speed[j] != b.speed[j] || a.torque[j] != b.torque[j] ||
+        a.winding[j] != b.winding[j] || a.housing[j] != b.housing[j]) {
+      return false;
+    }
+  }
+  const bool pack = a.pack_voltage_v == b.pack_voltage_v && a.pack_current_a == b.pack_current_a;
+  return pack && same(a.rate, b.rate) && same(a.acceleration, b.acceleration);
+}
+
+}  // namespace
+
+int joints_of(const Limits& limits) noexcept {
+  if (limits.joint_count < 0) return 0;
+  return limits.joint_count > kMaxJoints ? kMaxJoints : limits.joint_count;
+}
+
+FrameWatch::FrameWatch(const Limits& limits) noexcept
+    : stale_ticks_(ticks_within(limits.frame_stale_s, sound_tick_s(limits.tick_s))),
+      tick_s_(sound_tick_s(limits.tick_s)) {}
+
+void FrameWatch::reset() noexcept {
+  seen_ = false;
+  age_ = 0;
+  gap_ = 1;
+  frozen_ = 0;
+}
+
+void FrameWatch::look(const Limits& limits, const SensorFrame& frame, bool frame_new, bool live,
+                      std::int64_t elapsed, Findings& found) noexcept {
+  const int joint_count = joints_of(limits);
+  if (!seen_ && !frame_new && !live) {
+    fresh_ = speeds_usable_ = false;
+    return;
+  }
+  look_for_finite(frame, joint_count, found);
+  look_for_possible(limits, frame, joint_count, found);
+  look_for_age(limits, frame, frame_new, elapsed, found);
+  if (fresh_) {
+    look_for_life(limits, frame, found);
+    if (live) look_for_jumps(limits, frame, found);
+    remember(frame, joint_count);
+  }
+  const CauseSet unfit = bit(Cause::frame_stale) | bit(Cause::frame_frozen);
+  speeds_usable_ = (found.all() & unfit) == 0 && frame.joint_count == joint_count &&
+                   all_speeds_possible(limits, frame, joint_count);
+}
+
+void FrameWatch::look_for_age(const Limits& limits, const SensorFrame& frame, bool frame_new,
+                              std::int64_t elapsed, Findings& found) noexcept {
+  const std::int64_t age = age_ < kLongestTicks ? age_ + elapsed : age_;
+  fresh_ = frame_new && (!seen_ || frame.counter > last_.counter);
+  gap_ = fresh_ ? age : gap_;
+  age_ = fresh_ ? 0 : age;
+  if (age_ > stale_ticks_) {
+    const double age_s = static_cast<double>(age_) * tick_s_;
+    found.note(Cause::frame_stale, kNoJoint, age_s, limits.frame_stale_s, age_s);
+  }
+}
+
+void FrameWatch::look_for_life(const Limits& limits, const SensorFrame& frame, Findings& found) noexcept {
+  const bool changed = !seen_ || !same_values(frame, last_, joints_of(limits));
+  frozen_ = changed ? 0 : (frozen_ < kLongestTicks ? frozen_ + 1 : frozen_);
+  if (frozen_ > 0 && frozen_ >= limits.frame_frozen_ticks) {
+    found.note(Cause::frame_frozen, kNoJoint, frozen_, limits.frame_frozen_ticks, frozen_ * tick_s_);
+  }
+}
+
+void FrameWatch::look_for_jumps(const Limits& limits, const SensorFrame& frame,
+                                Findings& found) const noexcept {
+  if (!seen_) return;
+  for (int j = 0; j < joints_of(limits); ++j) {
+    const double jump = std::fabs(frame.angle[j] - last_.angle[j]);
+    if (!(jump <= limits.frame_jump_rad)) found.note(Cause::frame_jump, j, jump, limits.frame_jump_rad);
+  }
+}
+
+void FrameWatch::remember(const SensorFrame& frame, int joint_count) noexcept {
+  last_.counter = frame.counter;
+  for (int j = 0; j < joint_count; ++j) {
+    last_.angle[j] = frame.angle[j];
+    last_.speed[j] = frame.speed[j];
+    last_.torque[j] = frame.torque[j];
+    last_.winding[j] = frame.winding[j];
+    last_.housing[j] = frame.housing[j];
+  }
+  last_.rate = frame.rate;
+  last_.acceleration = frame.acceleration;
+  last_.pack_voltage_v = frame.pack_voltage_v;
+  last_.pack_current_a = frame.pack_current_a;
+  seen_ = true;
+}
+
+}  // namespace pastern::safety
