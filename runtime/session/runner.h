@@ -1,0 +1,139 @@
+// Runs walks: strings Session, Mover and Journal together. The same runner serves the onboard program and, in
+// process, benches and rehearsal. Session thread only; everything here may take its time.
+#pragma once
+
+#include <cstdint>
+#include <memory>
+#include <optional>
+#include <string>
+
+#include "pastern/v1/episode.pb.h"
+#include "pastern/v1/link.pb.h"
+#include "pastern/v1/plan.pb.h"
+#include "proto/files/policy_file.h"
+#include "proto/files/robot_file.h"
+#include "runtime/journal/journal.h"
+#include "runtime/session/mover.h"
+#include "runtime/session/session.h"
+
+namespace pastern::session {
+
+/// What the runner's surroundings do for it. The defaults suit a bench: nobody there, nothing to wait for.
+class Hooks {
+ public:
+  virtual ~Hooks() = default;
+  /// Called between motions and, at wall pace, some hundred times a second within them.
+  virtual void serve() {}
+  /// The robot stands still until somebody acts ("go", "release", "baton"). Serves, returns after a moment.
+  /// False: nobody will; the session is left as it is.
+  virtual bool wait(const std::string& what) {
+    (void)what;
+    return false;
+  }
+  /// True: leave the session in order as soon as the robot is parked.
+  [[nodiscard]] virtual bool leave() { return false; }
+  virtual void on_episode(const v1::Episode& episode) { (void)episode; }
+  virtual void on_verdict(const v1::Verdict& verdict) { (void)verdict; }
+  virtual void on_note(const std::string& words) { (void)words; }
+};
+
+struct SessionSetup {
+  v1::Plan plan;          ///< checked
+  std::string plan_text;  ///< as it came
+  files::PolicyFile start;
+  std::optional<files::PolicyFile> candidate;
+};
+
+/// verdict: to its end. interrupted: can be resumed. refused: nothing was done. failed: the journal cannot be
+/// written; no further walk.
+struct Ended {
+  enum class How : std::uint8_t { verdict, interrupted, refused, failed };
+  How how{How::refused};
+  std::string words;
+};
+
+class Runner {
+ public:
+  /// All must outlive the runner. Restores what the journal says the robot carries over (heat, charge,
+  /// thermal memory); why that failed is in `restore_failure()`.
+  Runner(const files::RobotFile& robot, Mover& mover, journal::Journal& journal, Hooks& hooks);
+  ~Runner();
+
+  /// Why nothing may walk with this robot file in this journal folder yet, in words; empty when it may.
+  [[nodiscard]] std::string first_start_missing() const;
+  [[nodiscard]] const std::string& restore_failure() const { return restore_failure_; }
+
+  /// Each returns when the robot is parked (or tripped) again.
+  [[nodiscard]] Ended run(const SessionSetup& setup);
+  /// Goes on with the journal's last session if that has no verdict.
+  [[nodiscard]] Ended resume();
+  /// One walk of a policy outside a session; recorded with session 0.
+  [[nodiscard]] Ended walk(const files::PolicyFile& policy, double duration_s, std::uint64_t draw);
+
+  // For commands, from within the hooks or between runs; same thread.
+  void go() { go_ = true; }
+  void end() { end_ = true; }      ///< the session ends as "keep" at the next moment when the robot is parked
+  void pause() { pause_ = true; }  ///< the session is left, interrupted, when the robot is parked
+  /// The walk that is being walked, or the last one until the next begins. False with a reason in `words`.
+  [[nodiscard]] bool mark_void(std::uint64_t walk, const std::string& reason, std::string& words);
+  /// An operator's release of a trip.
+  [[nodiscard]] bool release(std::string& words);
+  /// One tick, parked: a stop or halt that comes while the robot rests at stepped pace takes effect.
+  void rest();
+
+  [[nodiscard]] bool in_session() const { return session_ != nullptr; }
+  /// Fills in what the runner knows: robot state, session part, counts, returns, trip, verdict, figures.
+  void fill(v1::Status& status);
+
+ private:
+  struct Walked {
+    v1::Episode episode;
+    MotionResult result;
+  };
+
+  [[nodiscard]] Ended loop();
+  [[nodiscard]] bool wait_until_allowed(bool walk_to_come, Ended& ended);
+  [[nodiscard]] bool wait_for_rest(Ended& ended);
+  [[nodiscard]] bool make_ready(const Order& order, Ended& ended);
+  [[nodiscard]] bool perform(const Order& order, Ended& ended);
+  [[nodiscard]] MotionResult walk_through(const Order& order, std::string& void_reason);
+  [[nodiscard]] v1::Episode episode_of(const Order& order, const MotionResult& result,
+                                       const std::string& void_reason, std::int64_t started_ns) const;
+  [[nodiscard]] Ended conclude(v1::Verdict verdict, bool with_policy);
+  [[nodiscard]] bool store_adapted(v1::Verdict& verdict, std::string& words);
+  [[nodiscard]] bool replay(std::string& words);
+  [[nodiscard]] std::string open_setup(const journal::SessionRow& row, SessionSetup& setup) const;
+  MotionResult move(Motion motion, double duration_s, v1::RobotState state);
+  void take_up(const SessionSetup& setup, std::uint64_t number);
+  void set_down_session();
+  void say(const std::string& words);
+  [[nodiscard]] std::int64_t session_ns();
+  [[nodiscard]] bool releases_itself(safety::Cause cause) const;
+  [[nodiscard]] v1::TripRecord record_of(const safety::Trip& trip) const;
+
+  const files::RobotFile& robot_;
+  Mover& mover_;
+  journal::Journal& journal_;
+  Hooks& hooks_;
+  std::string robot_sha_;
+  std::string restore_failure_;
+
+  std::unique_ptr<SessionSetup> setup_;
+  std::unique_ptr<Session> session_;
+  std::uint64_t number_{0};  // of the session; 0 outside one
+  std::int64_t clock_base_ns_{0};
+  std::int64_t clock_origin_ns_{0};
+
+  bool go_{false};
+  bool end_{false};
+  bool pause_{false};
+  bool moving_{false};
+  std::uint64_t walking_{0};  // walk in progress
+  std::string void_mark_;
+  v1::RobotState state_{v1::PARKED};
+  std::string waiting_for_;
+  std::optional<v1::Verdict> last_verdict_;
+  v1::Status last_session_;  // what the ended or interrupted session's status said
+};
+
+}  // namespace pastern::session
