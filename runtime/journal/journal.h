@@ -1,6 +1,7 @@
 // The durable record: SQLite, WAL, synchronous FULL. A walk is on disk before the next begins. Session thread
 // only. Schema: runtime/journal/schema.sql (documented there, versioned; a newer version is refused). Any
-// SQLite tool opens it.
+// SQLite tool opens it. What was read is checked against its SHA-256: a journal that was changed or damaged
+// is refused when it is opened.
 #pragma once
 
 #include <cstdint>
@@ -25,8 +26,9 @@ struct SessionRow {
   std::uint64_t session{0};
   std::string plan_text;
   std::string robot_sha256_hex;
-  std::string start_policy_sha256_hex;
-  std::string candidate_sha256_hex;  ///< offered candidate, or empty
+  std::string start_policy_sha256_hex;      ///< of the file's bytes
+  std::string start_parameters_sha256_hex;  ///< of the parameters, as parameters_sha256() gives it
+  std::string candidate_sha256_hex;         ///< offered candidate, or empty
   bool ended{false};
   std::string software;
 };
@@ -44,23 +46,36 @@ struct Adoption {
   std::string words;
 };
 
+/// SHA-256 of the parameters as little-endian IEEE 754 doubles, in their order: 32 bytes.
+[[nodiscard]] std::string parameters_sha256(const Parameters& parameters);
+
 class Journal {
  public:
   /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, newer schema,
   /// not a journal, damaged, locked by another process, disk full. `vfs` names an SQLite VFS (tests), empty
-  /// for the default.
+  /// for the default. `read_only`: takes no lock, creates nothing, and `folder` may be the journal file
+  /// itself (a copy, say). An empty file counts as a new journal: a power cut while it is made leaves one.
   [[nodiscard]] static std::unique_ptr<Journal> open(const std::string& folder, std::string& error,
                                                      const std::string& vfs = "", bool read_only = false);
   ~Journal();
 
+  /// First failure's words, of a write or of a read; empty while all is well. After a failure nothing is
+  /// written any more and what is read is not to be relied on.
+  [[nodiscard]] const std::string& failure() const;
+
   // Sessions.
   [[nodiscard]] Written begin_session(SessionRow& row);  // fills row.session
   [[nodiscard]] std::optional<SessionRow> last_session() const;
+  [[nodiscard]] std::vector<SessionRow> sessions() const;  // oldest first
+  /// Once a session. Refused for a session that has ended.
   [[nodiscard]] Written end_session(std::uint64_t session, const v1::Verdict& verdict);
+  /// What end_session() was given.
+  [[nodiscard]] std::optional<v1::Verdict> verdict(std::uint64_t session) const;
 
-  /// One transaction: the episode, the parameters it walked, and the simulated robot's carried state (may be
-  /// empty). The returned value is the proof that an operator wants; nothing when the write failed (words in
-  /// `why`).
+  /// One transaction: the episode, the parameters it walked, and the simulated robot's carried state (empty:
+  /// stays as it was). The returned value is the proof that an operator wants; nothing when the write failed
+  /// (words in `why`). The walk's number is the session's last one plus 1; session 0 takes walks outside
+  /// sessions. `terms.total` and `parameters_sha256` are filled in here.
   [[nodiscard]] std::optional<Committed<Evaluation>> commit(const v1::Episode& episode,
                                                             const Parameters& parameters,
                                                             const std::string& robot_state, std::string& why);
@@ -74,6 +89,12 @@ class Journal {
     Committed<Evaluation> evaluation;
   };
   [[nodiscard]] std::vector<Finished> finished(std::uint64_t session) const;
+  /// Number of the last finished walk; 0 when none.
+  [[nodiscard]] std::uint64_t last_walk(std::uint64_t session) const;
+  /// The last finished walk does not count, on the operator's word. Refused for an earlier walk (the next has
+  /// begun to build on it), for one that is void already, and after the session's end.
+  [[nodiscard]] Written mark_void(std::uint64_t session, std::uint64_t walk, const std::string& reason);
+  /// By SHA-256, as 32 bytes or as hex.
   [[nodiscard]] std::optional<Parameters> parameters(const std::string& sha256) const;
   /// Carried state of the simulated robot after the last finished walk of any session; nothing when none.
   [[nodiscard]] std::optional<std::string> robot_state() const;
@@ -82,8 +103,10 @@ class Journal {
   [[nodiscard]] std::optional<std::string> get(const std::string& key) const;
 
   // Policies (file bytes by SHA-256 of the bytes) and what is current.
+  /// The bytes must have that sum. Storing it again changes nothing.
   [[nodiscard]] Written store_policy(const std::string& bytes, const std::string& sha256_hex);
   [[nodiscard]] std::optional<std::string> policy(const std::string& sha256_hex) const;
+  /// The policy must have been stored.
   [[nodiscard]] Written adopt(const Adoption& adoption);
   [[nodiscard]] std::vector<Adoption> adoptions() const;  // oldest first
 
@@ -99,11 +122,13 @@ class Journal {
   [[nodiscard]] std::uint64_t last_sequence() const;
   /// A line in the record: trips, releases, resumptions, with the robot's time.
   [[nodiscard]] Written note(std::uint64_t session, const std::string& words);
+  [[nodiscard]] std::vector<std::string> notes(std::uint64_t session) const;  // oldest first
 
-  /// SHA-256 over walks, returns, parameters, decisions of a session in order; not wall times, not resume
-  /// marks.
+  /// SHA-256 in hex over the session's plan, files, walks, returns, parameters and verdict in order; not wall
+  /// times, not notes or resume marks, not the session's number.
   [[nodiscard]] std::string digest(std::uint64_t session) const;
-  /// A consistent copy of the whole database as bytes (sqlite3_serialize).
+  /// A consistent copy of the whole database as the bytes of a plain file (sqlite3_serialize; not in WAL
+  /// mode, so that it opens anywhere, from a read-only medium too). Empty when it failed.
   [[nodiscard]] std::string snapshot() const;
 
  private:

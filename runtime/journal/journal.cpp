@@ -1,0 +1,184 @@
+// Opening, creating and checking a journal; the one way to write to it.
+#include "runtime/journal/journal.h"
+
+#include <unistd.h>
+
+#include <filesystem>
+
+#include "runtime/journal/encoding.h"
+#include "runtime/journal/impl.h"
+#include "runtime/journal/schema_text.h"
+
+namespace pastern::journal {
+namespace {
+
+constexpr const char* kFileName = "/pastern.journal";
+
+// A message of SQLite as the end of our line: never more than one line.
+std::string one_line(std::string words) {
+  for (char& c : words)
+    if (c == '\n' || c == '\r') c = ' ';
+  return words;
+}
+
+bool is_folder(const std::string& path) {
+  std::error_code ignored;
+  return std::filesystem::is_directory(path, ignored);
+}
+
+int number_in(Database& database, const char* sql) {
+  std::string answer;
+  if (!database.ask(sql, answer) || answer.empty()) return -1;
+  return std::stoi(answer);
+}
+
+// Empty when the file is a journal of a version we know; `fresh` when there is nothing in it yet.
+std::string objection_to(Database& database, bool& fresh) {
+  std::string tables;
+  if (!database.ask("SELECT count(*) FROM sqlite_schema", tables)) {
+    if ((database.code() & 0xFF) == SQLITE_NOTADB) return "not a journal: found another kind of file";
+    if ((database.code() & 0xFF) == SQLITE_CORRUPT) return "damaged: " + database.message();
+    return "cannot be read: " + database.message();
+  }
+  const int application = number_in(database, "PRAGMA application_id");
+  fresh = tables == "0" && application == 0;
+  if (fresh) return "";
+  if (application != kApplicationId)
+    return "not a journal: found application id " + std::to_string(application) + ", expected " +
+           std::to_string(kApplicationId);
+  const int version = number_in(database, "PRAGMA user_version");
+  if (version > kSchemaVersion)
+    return "made by a newer program: found version " + std::to_string(version) +
+           ", this program knows up to " + std::to_string(kSchemaVersion);
+  if (version < 1) return "not a journal: found version " + std::to_string(version) + ", expected 1";
+  std::string verdict;
+  if (!database.ask("PRAGMA quick_check(1)", verdict)) return "damaged: " + database.message();
+  return verdict == "ok" ? "" : "damaged: " + verdict;
+}
+
+// Each walk's seal: SQLite itself would not notice a changed byte inside a value.
+std::string objection_to_walks(Database& database) {
+  Query query(database, "SELECT session, walk, episode_message, seal FROM walks ORDER BY session, walk");
+  while (query.row()) {
+    if (seal_of(query.integer(0), query.integer(1), query.bytes(2)) == query.bytes(3)) continue;
+    return "damaged: walk " + std::to_string(query.integer(1)) + " of session " +
+           std::to_string(query.integer(0)) + " does not match its seal";
+  }
+  return query.failed() ? "damaged: " + database.message() : "";
+}
+
+bool create_schema(Database& database) {
+  const bool made = database.run("BEGIN IMMEDIATE") && database.run(kSchemaText) &&
+                    database.run(("PRAGMA application_id = " + std::to_string(kApplicationId)).c_str()) &&
+                    database.run(("PRAGMA user_version = " + std::to_string(kSchemaVersion)).c_str()) &&
+                    database.run("COMMIT");
+  if (!made) database.roll_back();
+  return made;
+}
+
+// WAL: a commit is one sync, and tools may read during a session. FULL: the sync is before the answer.
+// A short log, so that little is read again after a power cut.
+bool make_durable(Database& database) {
+  std::string mode;
+  return database.ask("PRAGMA journal_mode = WAL", mode) && mode == "wal" &&
+         database.run("PRAGMA synchronous = FULL") && database.run("PRAGMA wal_autocheckpoint = 64");
+}
+
+// A file in WAL mode on a read-only medium can be read when no log stands beside it.
+bool open_for_reading(Database& database, const std::string& path, const std::string& vfs) {
+  std::error_code ignored;
+  const auto log_size = std::filesystem::file_size(path + "-wal", ignored);
+  const bool log = !ignored && log_size > 0;
+  const bool writable = ::access(std::filesystem::path(path).parent_path().c_str(), W_OK) == 0;
+  if (log || writable || !vfs.empty()) return database.open(path, SQLITE_OPEN_READONLY, vfs);
+  std::string name;
+  for (const char c : path)
+    name += c == '?' ? "%3f" : c == '#' ? "%23" : c == '%' ? "%25" : std::string(1, c);
+  return database.open("file:" + name + "?immutable=1", SQLITE_OPEN_READONLY | SQLITE_OPEN_URI, vfs);
+}
+
+}  // namespace
+
+std::string seal_of(std::int64_t session, std::int64_t walk, std::string_view episode_bytes) {
+  return sum_hex(std::to_string(session) + " " + std::to_string(walk) + " " + std::string(episode_bytes));
+}
+
+const std::string& Journal::Impl::fail(const std::string& what, const std::string& why) {
+  if (failure.empty()) failure = path + ": " + what + ": " + one_line(why);
+  return failure;
+}
+
+bool Journal::Impl::sound(const Query& query, const std::string& what) {
+  if (query.failed()) fail(what, "not read: " + database.message());
+  return !query.failed();
+}
+
+Written Journal::Impl::write(const std::string& what, const std::function<bool(std::string&)>& body) {
+  if (!failure.empty()) return {false, failure};
+  if (read_only)
+    return {false, path + ": " + what + ": not written: the journal was opened for reading only"};
+  std::string objection;
+  if (database.run("BEGIN IMMEDIATE") && body(objection) && objection.empty() && database.run("COMMIT"))
+    return {true, ""};
+  if (objection.empty() && (database.code() & 0xFF) == SQLITE_CONSTRAINT) objection = database.message();
+  database.roll_back();
+  if (!objection.empty()) return {false, path + ": " + what + ": refused: " + one_line(objection)};
+  return {false, fail(what, "not written: " + database.message())};
+}
+
+Journal::Journal() : impl_(std::make_unique<Impl>()) {}
+Journal::~Journal() = default;
+
+const std::string& Journal::failure() const { return impl_->failure; }
+
+std::unique_ptr<Journal> Journal::open(const std::string& folder, std::string& error, const std::string& vfs,
+                                       bool read_only) {
+  std::unique_ptr<Journal> journal(new Journal);
+  Impl& impl = *journal->impl_;
+  impl.read_only = read_only;
+  const bool folder_given = is_folder(folder);
+  impl.path = folder_given ? folder + kFileName : folder;
+  const auto refuse = [&](const std::string& words) {
+    error = impl.path + ": " + one_line(words);
+    return nullptr;
+  };
+  if (!folder_given && !read_only) return refuse("not a folder");
+  if (!read_only && !impl.lock.take(folder, error)) return nullptr;
+
+  Database& database = impl.database;
+  const bool opened = read_only ? open_for_reading(database, impl.path, vfs)
+                                : database.open(impl.path, SQLITE_OPEN_READWRITE | SQLITE_OPEN_CREATE, vfs);
+  if (!opened) return refuse("cannot be opened: " + database.message());
+  sqlite3_busy_timeout(database.handle(), 2000);
+  if (!database.run("PRAGMA foreign_keys = ON")) return refuse("cannot be opened: " + database.message());
+
+  bool fresh = false;
+  if (const std::string words = objection_to(database, fresh); !words.empty()) return refuse(words);
+  if (read_only) {
+    if (fresh) return refuse("not a journal: found an empty file");
+  } else {
+    if (sqlite3_db_readonly(database.handle(), "main") != 0) return refuse("may not be written");
+    if (!make_durable(database) || (fresh && !create_schema(database)))
+      return refuse("cannot be written: " + database.message());
+    if (fresh && !sync_folder(folder, error)) return nullptr;
+  }
+  if (const std::string words = objection_to_walks(database); !words.empty()) return refuse(words);
+  return journal;
+}
+
+std::string Journal::snapshot() const {
+  sqlite3_int64 size = 0;
+  unsigned char* bytes = sqlite3_serialize(impl_->database.handle(), "main", &size, 0);
+  if (bytes == nullptr || size < 100) {
+    sqlite3_free(bytes);
+    return "";
+  }
+  // File format, bytes 18 and 19: 2 is WAL, 1 a plain file (sqlite.org/fileformat2.html sec. 1.3.3).
+  bytes[18] = 1;
+  bytes[19] = 1;
+  std::string copy(reinterpret_cast<const char*>(bytes), static_cast<std::size_t>(size));
+  sqlite3_free(bytes);
+  return copy;
+}
+
+}  // namespace pastern::journal
