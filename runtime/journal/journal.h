@@ -79,9 +79,6 @@ class Journal {
   [[nodiscard]] std::optional<Committed<Evaluation>> commit(const v1::Episode& episode,
                                                             const Parameters& parameters,
                                                             const std::string& robot_state, std::string& why);
-  /// An operator declares a finished walk void: outcome and reason of its row change in one transaction; fails
-  /// in words when there is no such walk. The session is then replayed without its return.
-  [[nodiscard]] Written mark_void(std::uint64_t session, std::uint64_t walk, const std::string& reason);
   /// All finished walks of a session in order, as proofs, for replay. Void ones are included; the caller
   /// skips them.
   struct Finished {

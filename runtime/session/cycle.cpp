@@ -113,6 +113,7 @@ struct Cycle::Impl {
   bool write_failed{false};
   bool seen_frame{false};
   bool cold{true};  // the estimator takes roll and pitch from gravity with the next fresh frame
+  bool walk_begins{false};
   double winding_max_c{0};
   std::uint64_t ticks{0};
   std::uint64_t gate_tick_base{0};  // ticks carried over from before this process; the gate counts its own
@@ -121,6 +122,7 @@ struct Cycle::Impl {
 
   // State of the motion.
   Motion motion{Motion::parked};
+  Motion asked{Motion::parked};
   std::int64_t length{1};
   std::int64_t elapsed{0};
   JointAngles<> from;
@@ -148,9 +150,9 @@ bool Cycle::Impl::read() noexcept {
 
 void Cycle::Impl::estimate(bool fresh) noexcept {
   if (!fresh) return;
-  const bool walk_begins = motion == Motion::walk && elapsed == 0;
   if (cold || walk_begins) estimator.begin(frame, cold);
   cold = false;
+  walk_begins = false;
   estimator.update(frame, period_s);
 }
 
@@ -288,6 +290,7 @@ void Cycle::change_policy(const v1::Policy& policy) { impl_->take_policy(policy)
 
 void Cycle::begin(Motion motion, double duration_s) noexcept {
   Impl& s = *impl_;
+  s.asked = motion;
   s.done = false;
   s.completed = false;
   s.tripped = false;
@@ -301,6 +304,7 @@ void Cycle::begin(Motion motion, double duration_s) noexcept {
   s.enter(motion, duration_s);
   if (motion == Motion::rise) s.cold = true;
   if (motion == Motion::walk) {
+    s.walk_begins = true;
     s.policy->reset();
     s.recorder.begin();
     s.scoring = true;
@@ -339,6 +343,7 @@ MotionResult Cycle::result() const {
   result.trip = s.gate.trip();
   result.trip.tick += s.gate_tick_base;
   result.outcome = s.outcome;
+  if (s.asked != Motion::walk) return result;
   result.terms = s.recorder.terms(s.outcome == Outcome::fell);
   result.summary = s.recorder.summary();
   result.trace = s.recorder.trace();
