@@ -16,10 +16,12 @@ class Estimator {
   explicit Estimator(const v1::Robot& robot);  // a checked robot
   ~Estimator();
 
-  /// Start of a walk: yaw, position and speed are zero here; roll and pitch from gravity in `frame` if
-  /// `cold`.
+  /// Start of a walk: yaw, position and speed are zero here. Cold: everything learned before is forgotten,
+  /// the gyro's bias too, and roll and pitch come from gravity in `frame`; what follows is then a function of
+  /// the frames alone.
   void begin(const safety::SensorFrame& frame, bool cold) noexcept;
-  /// Every tick with a fresh frame. `dt_s` is the nominal period.
+  /// Every tick with a fresh frame. `dt_s` is the nominal period; frames missed by the counter are bridged. A
+  /// frame with a value that is not finite leaves the estimate as it was.
   const BodyEstimate<>& update(const safety::SensorFrame& frame, double dt_s) noexcept;
   [[nodiscard]] const BodyEstimate<>& body() const noexcept;
 

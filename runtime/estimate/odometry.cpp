@@ -1,0 +1,125 @@
+// Leg odometry: which legs stand, what they say about the trunk, how it is put together with the
+// accelerometer.
+#include "runtime/estimate/odometry.h"
+
+#include <algorithm>
+#include <cmath>
+#include <limits>
+
+namespace pastern::estimate {
+
+namespace {
+
+constexpr double kGravity_m_per_s2 = 9.80665;
+
+/// Share of the way that a first-order lag of time constant tau goes in dt.
+double lag(double dt_s, double tau_s) noexcept { return 1.0 - std::exp(-dt_s / tau_s); }
+
+/// 0 at and below `from`, 1 at and above `to`.
+double ramp(double value, double from, double to) noexcept {
+  return std::clamp((value - from) / (to - from), 0.0, 1.0);
+}
+
+Eigen::Vector3d vector(const safety::Vector3<safety::Metre, safety::World>& v) noexcept {
+  return {v.x, v.y, v.z};
+}
+
+}  // namespace
+
+Odometry::Odometry(const Legs& legs, double weight_n, const OdometryGains& gains) noexcept
+    : legs_(legs), weight_n_(weight_n), gains_(gains) {}
+
+void Odometry::begin(const safety::SensorFrame& frame, const Eigen::Quaterniond& attitude) noexcept {
+  velocity_.setZero();
+  position_.setZero();
+  push_n_.fill(0);
+  external_known_ = frame.has_position;
+  external_origin_ = vector(frame.position);
+  external_last_ = external_origin_;
+  external_age_s_ = 0;
+  position_.z() =
+      look(frame, attitude, Eigen::Vector3d::Zero(), std::numeric_limits<double>::infinity()).height_m;
+}
+
+void Odometry::update(const safety::SensorFrame& frame, const Eigen::Quaterniond& attitude,
+                      const Eigen::Vector3d& rate_rad_s, double dt_s) noexcept {
+  const LegView legs = look(frame, attitude, rate_rad_s, dt_s);
+  const Eigen::Vector3d force(frame.acceleration.x, frame.acceleration.y, frame.acceleration.z);
+  velocity_ += (attitude * force - kGravity_m_per_s2 * Eigen::Vector3d::UnitZ()) * dt_s;
+  velocity_ += legs.weight * lag(dt_s, gains_.velocity_s) * (legs.velocity_m_s - velocity_);
+  position_ += velocity_ * dt_s;
+  position_.z() += lag(dt_s, gains_.height_s) * (legs.height_m - position_.z());
+  follow_external(frame, dt_s);
+}
+
+Odometry::LegView Odometry::look(const safety::SensorFrame& frame, const Eigen::Quaterniond& attitude,
+                                 const Eigen::Vector3d& rate_rad_s, double dt_s) noexcept {
+  const Eigen::Vector3d up = attitude.conjugate() * Eigen::Vector3d::UnitZ();
+  double lowest = std::numeric_limits<double>::infinity();
+  for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
+    foot_[i] = foot_state(legs_.leg[i], frame, up);
+    foot_height_m_[i] = foot_[i].at_m.dot(up);
+    lowest = std::min(lowest, foot_height_m_[i]);
+  }
+  judge_stance(lowest, dt_s);
+  LegView view;
+  double sum = 0;
+  double height = 0;
+  for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
+    // A foot that stands still: trunk velocity + rate x foot + foot's own velocity against the trunk = 0.
+    view.velocity_m_s -= stance_[i] * (rate_rad_s.cross(foot_[i].at_m) + foot_[i].velocity_m_s);
+    height -= stance_[i] * foot_height_m_[i];
+    sum += stance_[i];
+  }
+  view.weight = std::min(sum, 1.0);
+  view.velocity_m_s = attitude * (view.velocity_m_s / std::max(sum, 1e-9));
+  view.height_m = sum > 1e-9 ? height / sum : -lowest;
+  return view;
+}
+
+void Odometry::judge_stance(double lowest_m, double dt_s) noexcept {
+  double pushed = 0;
+  for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
+    push_n_[i] += lag(dt_s, gains_.push_s) * (foot_[i].push_n - push_n_[i]);
+    pushed += std::max(push_n_[i], 0.0);
+  }
+  // Torques that carry nothing tell nothing (in flight, limp, or drives without a measurement): then the
+  // lowest feet are taken to stand, as far as the push is missing.
+  const double blind = 1.0 - ramp(pushed, gains_.light_share * weight_n_, gains_.firm_share * weight_n_);
+  for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
+    const double low = 1.0 - ramp(foot_height_m_[i] - lowest_m, gains_.level_m, gains_.raised_m);
+    const double firm = ramp(push_n_[i], gains_.light_share * weight_n_, gains_.firm_share * weight_n_);
+    stance_[i] = low * std::max(firm, blind);
+  }
+}
+
+void Odometry::follow_external(const safety::SensorFrame& frame, double dt_s) noexcept {
+  external_age_s_ += dt_s;
+  if (!frame.has_position) {
+    return;
+  }
+  const Eigen::Vector3d place = vector(frame.position);
+  if (!external_known_) {
+    // It appears in the middle of a walk: it goes on from where odometry stands.
+    external_known_ = true;
+    external_origin_ = place - position_;
+    external_last_ = place;
+    external_age_s_ = 0;
+    return;
+  }
+  if (place == external_last_) {
+    return;
+  }
+  // Fading-memory filter of first order (critically damped g-h filter): theta = exp(-T / tau),
+  // g = 1 - theta^2, h = (1 - theta)^2, T the time since the source's last news. Height stays the legs'.
+  const double theta = std::exp(-external_age_s_ / gains_.external_s);
+  const Eigen::Vector3d error = (place - external_origin_) - position_;
+  for (int axis = 0; axis < 2; ++axis) {
+    position_(axis) += (1 - theta * theta) * error(axis);
+    velocity_(axis) += (1 - theta) * (1 - theta) / external_age_s_ * error(axis);
+  }
+  external_last_ = place;
+  external_age_s_ = 0;
+}
+
+}  // namespace pastern::estimate
