@@ -98,7 +98,8 @@ Session::Session(Session&&) noexcept = default;
 Session& Session::operator=(Session&&) noexcept = default;
 
 const Parameters& Session::adapted() const {
-  return operator_ ? operator_->incumbent() : given_.candidate.value_or(given_.start);
+  if (operator_) return operator_->incumbent();
+  return given_.candidate ? *given_.candidate : given_.start;
 }
 
 std::uint64_t Session::walks_planned() const {
