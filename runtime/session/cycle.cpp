@@ -130,6 +130,7 @@ struct Cycle::Impl {
   bool done{true};
   bool completed{true};
   bool tripped{false};
+  safety::Trip trip;  // as at the end of the motion; the gate's own may change while the result is read
   bool scoring{false};
   bool fall_seen{false};  // by the estimate; asks the gate for a stop
   int clipped{0};         // of this tick's policy step
@@ -245,6 +246,8 @@ void Cycle::Impl::finish(bool whole) noexcept {
     done = true;
     completed = whole;
     tripped = !armed();
+    trip = gate.trip();
+    trip.tick += gate_tick_base;
     scoring = false;
   }
   if (!armed() || motion == Motion::lower || motion == Motion::parked) {
@@ -340,8 +343,7 @@ MotionResult Cycle::result() const {
   MotionResult result;
   result.completed = s.completed;
   result.tripped = s.tripped;
-  result.trip = s.gate.trip();
-  result.trip.tick += s.gate_tick_base;
+  result.trip = s.trip;
   result.outcome = s.outcome;
   if (s.asked != Motion::walk) return result;
   result.terms = s.recorder.terms(s.outcome == Outcome::fell);
@@ -378,6 +380,7 @@ CycleReport Cycle::report() const noexcept {
   report.trip.tick += s.gate_tick_base;
   report.pack_voltage_v = s.frame.pack_voltage_v;
   report.winding_max_c = s.winding_max_c;
+  report.thermal = s.gate.thermal_state();
   return report;
 }
 

@@ -69,6 +69,7 @@ struct CycleReport {
   safety::Trip trip;
   double pack_voltage_v{0};
   double winding_max_c{0};
+  safety::PerJoint<safety::Celsius> thermal;  ///< the gate's thermal memory, fractions of the limit
 };
 
 class Cycle {

@@ -34,7 +34,9 @@ int index_of(const v1::Robot& robot, const std::string& name) {
   return -1;
 }
 
-safety::Vector3<safety::Metre, safety::Body> metres(const v1::Xyz& xyz) { return {xyz.x(), xyz.y(), xyz.z()}; }
+safety::Vector3<safety::Metre, safety::Body> metres(const v1::Xyz& xyz) {
+  return {xyz.x(), xyz.y(), xyz.z()};
+}
 
 safety::LegChain leg_chain(const v1::Robot& robot, const v1::Leg& leg) {
   safety::LegChain chain;

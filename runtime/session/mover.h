@@ -37,6 +37,11 @@ class Mover {
   [[nodiscard]] virtual std::string scheduling() const = 0;
 };
 
+/// What an operator's release clears before the gate is asked.
+void clear_stops(Signals& signals);
+/// Why the gate did not release, in words.
+[[nodiscard]] std::string release_refused(const CycleReport& report);
+
 /// `cycle` must outlive the mover and be made for the same pace.
 [[nodiscard]] std::unique_ptr<Mover> make_stepped_mover(Cycle& cycle);
 
