@@ -3,6 +3,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 #include <stdexcept>
 
 namespace pastern::adapt {
@@ -17,22 +18,24 @@ double difference(double plus, double minus) {
   return plus - minus;
 }
 
-// Median (lower of the middle two) of the magnitudes that are finite and not zero; 0 when there is none.
+// Median (lower of the middle two) of the magnitudes that are not zero, the infinite ones counted; the
+// largest finite one when it is infinite itself; 0 when there is none.
 double median_magnitude(const std::vector<double>& differences) {
   std::vector<double> magnitudes;
   for (const double d : differences)
-    if (std::isfinite(d) && d != 0) magnitudes.push_back(std::abs(d));
+    if (d != 0) magnitudes.push_back(std::abs(d));
   if (magnitudes.empty()) return 0.0;
-  const auto middle = magnitudes.begin() + static_cast<std::ptrdiff_t>((magnitudes.size() - 1) / 2);
-  std::nth_element(magnitudes.begin(), middle, magnitudes.end());
-  return *middle;
+  std::sort(magnitudes.begin(), magnitudes.end());
+  std::size_t middle = (magnitudes.size() - 1) / 2;
+  while (middle > 0 && std::isinf(magnitudes[middle])) --middle;
+  return std::isinf(magnitudes[middle]) ? 0.0 : magnitudes[middle];
 }
 
 }  // namespace
 
 std::vector<double> normalised_differences(const std::vector<double>& differences) {
   const double median = median_magnitude(differences);
-  const double most = median > 0 ? kClip * median : 1.0;
+  const double most = median > 0 ? std::min(kClip * median, std::numeric_limits<double>::max()) : 1.0;
   std::vector<double> clipped;
   double sum_of_squares = 0;
   for (const double d : differences) {
