@@ -1,0 +1,251 @@
+// The loop that follows a session, and the two ways to stop it. See follow.h.
+#include "tools/pastern/follow.h"
+
+#include <fmt/format.h>
+#include <poll.h>
+#include <unistd.h>
+
+#include <csignal>
+#include <iostream>
+
+#include "tools/pastern/json.h"
+#include "tools/pastern/words.h"
+
+namespace pastern::tools {
+namespace {
+
+volatile std::sig_atomic_t interrupts = 0;
+void count_interrupt(int) { interrupts = interrupts + 1; }
+
+/// Ctrl-C is counted while this lives.
+class Interrupts {
+ public:
+  Interrupts() {
+    interrupts = 0;
+    struct sigaction action {};
+    action.sa_handler = count_interrupt;
+    sigaction(SIGINT, &action, &before_);
+  }
+  ~Interrupts() { sigaction(SIGINT, &before_, nullptr); }
+  Interrupts(const Interrupts&) = delete;
+  Interrupts& operator=(const Interrupts&) = delete;
+
+ private:
+  struct sigaction before_ {};
+};
+
+std::optional<std::string> typed_line() {
+  pollfd input{STDIN_FILENO, POLLIN, 0};
+  std::string line;
+  if (poll(&input, 1, 0) != 1 || !std::getline(std::cin, line)) return std::nullopt;
+  return line;
+}
+
+class Follower {
+ public:
+  Follower(RobotLine& line, const FollowChoice& choice) : line_(line), choice_(choice) {}
+  Exit run();
+
+ private:
+  void take(const v1::Telemetry& telemetry);
+  void take(const v1::Episode& episode);
+  void notice(const v1::Status& status);
+  void look();
+  void obey(const std::string& typed);
+  void send(const v1::Command& command, const std::string& done);
+  void show_progress();
+  void wipe_progress();
+  void prompt();
+  void look_at_once();
+  [[nodiscard]] std::optional<Exit> ended() const;
+  [[nodiscard]] std::optional<Exit> tripped() const;
+  [[nodiscard]] Exit close(Exit exit);
+
+  RobotLine& line_;
+  FollowChoice choice_;
+  Progress progress_;
+  v1::Status status_;
+  std::optional<v1::Verdict> verdict_;
+  std::chrono::steady_clock::time_point last_word_{std::chrono::steady_clock::now()};
+  bool seen_{false};  ///< the session, or the single walk, has been seen under way
+  bool head_said_{false};
+  bool progress_shown_{false};
+  bool single_done_{false};
+  bool silent_{false};
+  std::uint64_t prompted_{~0ULL};  ///< walks_done when "go" was last asked for
+};
+
+void Follower::wipe_progress() {
+  if (!progress_shown_) return;
+  std::cout << "\r\033[K" << std::flush;
+  progress_shown_ = false;
+}
+
+void Follower::show_progress() {
+  if (!at_terminal() || choice_.json || choice_.single || status_.walks_planned() == 0) return;
+  wipe_progress();
+  const std::string waiting = status_.waiting_for().empty() ? "" : ", waiting for " + status_.waiting_for();
+  std::cout << progress_.line() << waiting << std::flush;
+  progress_shown_ = true;
+}
+
+void Follower::take(const v1::Episode& episode) {
+  seen_ = true;
+  single_done_ = single_done_ || episode.part() == v1::SINGLE;
+  if (choice_.json || choice_.quiet) return;
+  if (!head_said_) say(walk_head());
+  head_said_ = true;
+  const bool tell =
+      !at_terminal() && !choice_.single && progress_.seconds_to_go() && episode.walk() % 10 == 0;
+  say(walk_line(episode));
+  if (tell) say("      " + progress_.line());
+}
+
+void Follower::take(const v1::Telemetry& telemetry) {
+  last_word_ = std::chrono::steady_clock::now();
+  wipe_progress();
+  if (choice_.json) say(json(telemetry));
+  switch (telemetry.what_case()) {
+    case v1::Telemetry::kStatus:
+      notice(telemetry.status());
+      break;
+    case v1::Telemetry::kEpisode:
+      take(telemetry.episode());
+      break;
+    case v1::Telemetry::kVerdict:
+      verdict_ = telemetry.verdict();
+      break;
+    case v1::Telemetry::kNote:
+      if (!choice_.json && !choice_.quiet) say("      " + telemetry.note());
+      break;
+    case v1::Telemetry::WHAT_NOT_SET:
+      break;
+  }
+}
+
+/// Asks when telemetry has been silent for a second: at stepped pace nothing is published between orders.
+void Follower::look() {
+  if (std::chrono::steady_clock::now() - last_word_ >= std::chrono::seconds(1)) look_at_once();
+}
+
+void Follower::look_at_once() {
+  last_word_ = std::chrono::steady_clock::now();
+  const auto answer = line_.ask_quietly(command_of(&v1::Command::mutable_ask_status), 1.0);
+  if (!answer && !silent_) complain(fmt::format("no answer from {}; still trying", line_.reach().endpoint()));
+  if (answer && silent_) complain(fmt::format("{} answers again", line_.reach().endpoint()));
+  silent_ = !answer.has_value();
+  if (answer) notice(answer->status());
+}
+
+void Follower::notice(const v1::Status& status) {
+  status_ = status;
+  progress_.update(status_.walks_done(), status_.walks_planned(), last_word_);
+  const v1::SessionPart part = status_.session_part();
+  const bool running = part == v1::IN_BASELINE || part == v1::IN_SEARCH || part == v1::IN_CONFIRMATION;
+  seen_ = seen_ || running || (choice_.session != 0 && status_.session() == choice_.session);
+}
+
+void Follower::prompt() {
+  if (status_.waiting_for() != "go" || prompted_ == status_.walks_done()) return;
+  prompted_ = status_.walks_done();
+  wipe_progress();
+  if (!choice_.commander || !can_ask()) {
+    if (!choice_.json) suggest("go", fmt::format("walk {} waits for it", status_.walks_done() + 1));
+    return;
+  }
+  say(fmt::format("walk {}: Enter = go; v = the last walk is void; e = end the session; s = stop",
+                  prompted_ + 1));
+}
+
+void Follower::send(const v1::Command& command, const std::string& done) {
+  v1::Answer answer;
+  if (line_.ask(command, answer) == Exit::done)
+    say("      " + (answer.words().empty() ? done : answer.words()));
+  prompted_ = ~0ULL;
+}
+
+void Follower::obey(const std::string& typed) {
+  if (typed == "s") {
+    (void)press(line_, false, 5);
+  } else if (typed == "e") {
+    send(command_of(&v1::Command::mutable_end_session), "the session ends");
+  } else if (!typed.empty() && typed[0] == 'v') {
+    v1::Command command = command_of(&v1::Command::mutable_mark_void);
+    command.mutable_mark_void()->set_walk(status_.walks_done());
+    command.mutable_mark_void()->set_reason(typed.size() > 2 ? typed.substr(2) : "marked by the operator");
+    send(command, "marked void");
+  } else if (status_.waiting_for() == "go") {
+    send(command_of(&v1::Command::mutable_go), "go");
+  }
+}
+
+/// Empty while there is something to follow.
+std::optional<Exit> Follower::ended() const {
+  if (choice_.forever) return std::nullopt;
+  if (choice_.single) return single_done_ ? std::optional(Exit::done) : tripped();
+  if (choice_.walks_from && status_.walks_done() > *choice_.walks_from) return Exit::done;
+  if (!seen_) return std::nullopt;
+  if (verdict_) return verdict_->kind() == v1::Verdict::ADOPT ? Exit::done : Exit::findings;
+  if (status_.session_part() == v1::ENDED) {
+    return status_.verdict().kind() == v1::Verdict::ADOPT ? Exit::done : Exit::findings;
+  }
+  if (status_.session_part() == v1::INTERRUPTED) return tripped().value_or(Exit::refused);
+  return tripped();
+}
+
+/// A trip that waits for a person; a fall that the session itself gets up from is none.
+std::optional<Exit> Follower::tripped() const {
+  const bool latched = status_.robot_state() == v1::TRIPPED && status_.waiting_for() == "release";
+  return latched ? std::optional(Exit::tripped) : std::nullopt;
+}
+
+Exit Follower::close(Exit exit) {
+  wipe_progress();
+  v1::Status now;
+  if (line_.status(now) == Exit::done) status_ = now;
+  if (choice_.json) return exit;
+  if (!verdict_ && status_.has_verdict() && status_.session_part() == v1::ENDED && !choice_.single) {
+    verdict_ = status_.verdict();
+  }
+  if (exit == Exit::tripped) say("tripped: " + trip_words(status_.trip()));
+  if (exit == Exit::refused) say("the session is interrupted; its finished walks are on disk");
+  if (verdict_) {
+    say(verdict_line(*verdict_));
+    if (!verdict_->words().empty()) say(verdict_->words());
+  }
+  suggest_after(status_);
+  return exit;
+}
+
+Exit Follower::run() {
+  const Interrupts guard;
+  int obeyed = 0;
+  look_at_once();
+  std::optional<Exit> exit;
+  while (!(exit = ended())) {
+    if (const auto telemetry = line_.client().next(200)) {
+      take(*telemetry);
+    } else {
+      look();
+    }
+    prompt();
+    show_progress();
+    if (choice_.commander) {
+      if (const auto typed = can_ask() ? typed_line() : std::nullopt) obey(*typed);
+    }
+    if (interrupts > obeyed) {
+      obeyed = interrupts;
+      wipe_progress();
+      if (!choice_.commander) return Exit::done;
+      const Exit stopped = press(line_, obeyed > 1, 5);
+      if (stopped != Exit::done || obeyed > 1) return stopped;
+    }
+  }
+  return close(*exit);
+}
+
+}  // namespace
+
+Exit follow(RobotLine& line, const FollowChoice& choice) { return Follower(line, choice).run(); }
+
+}  // namespace pastern::tools

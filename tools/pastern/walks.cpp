@@ -1,0 +1,196 @@
+// Walks, states and verdicts in words. See follow.h.
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <cmath>
+
+#include "tools/pastern/follow.h"
+#include "tools/pastern/words.h"
+
+namespace pastern::tools {
+namespace {
+
+constexpr double kDegree = 3.14159265358979323846 / 180.0;
+
+std::string remark(const v1::Episode& episode) {
+  if (episode.outcome() == v1::VOID) return "  void: " + episode.void_reason();
+  return episode.has_trip() && !episode.trip().cause().empty() ? "  " + trip_words(episode.trip()) : "";
+}
+
+}  // namespace
+
+std::string words(v1::Part part) {
+  switch (part) {
+    case v1::BASELINE:
+      return "baseline";
+    case v1::SEARCH:
+      return "search";
+    case v1::CONFIRMATION_START:
+      return "confirm, start";
+    case v1::CONFIRMATION_ADAPTED:
+      return "confirm, adapted";
+    case v1::SINGLE:
+      return "single";
+    default:
+      return "-";
+  }
+}
+
+std::string words(v1::Outcome outcome) {
+  switch (outcome) {
+    case v1::COMPLETED:
+      return "completed";
+    case v1::FELL:
+      return "FELL";
+    case v1::LEFT_LANE:
+      return "left the lane";
+    case v1::VOID:
+      return "void";
+    default:
+      return "-";
+  }
+}
+
+std::string words(v1::RobotState state) {
+  switch (state) {
+    case v1::PARKED:
+      return "parked, torque off";
+    case v1::RISING:
+      return "rising";
+    case v1::READY:
+      return "standing, ready";
+    case v1::WALKING:
+      return "walking";
+    case v1::SETTLING:
+      return "settling";
+    case v1::LOWERING:
+      return "lowering";
+    case v1::TRIPPED:
+      return "TRIPPED, latched";
+    case v1::WAITING:
+      return "waiting";
+    default:
+      return "not said";
+  }
+}
+
+std::string words(v1::SessionPart part) {
+  switch (part) {
+    case v1::NO_SESSION:
+      return "none";
+    case v1::IN_BASELINE:
+      return "baseline";
+    case v1::IN_SEARCH:
+      return "search";
+    case v1::IN_CONFIRMATION:
+      return "confirmation";
+    case v1::ENDED:
+      return "ended";
+    case v1::INTERRUPTED:
+      return "interrupted";
+    default:
+      return "not said";
+  }
+}
+
+std::string walk_head() {
+  return fmt::format("{:>4}  {:<16}  {:<13}  {:>6}  {:>5}  {:>5}  {:>5}  {:>5}  {:>5}", "walk", "part",
+                     "outcome", "return", "m/s", "roll", "pitch", "hot C", "low V");
+}
+
+std::string walk_line(const v1::Episode& episode) {
+  const v1::EpisodeSummary& summary = episode.summary();
+  return fmt::format("{:>4}  {:<16}  {:<13}  {:>6.2f}  {:>5.2f}  {:>5.1f}  {:>5.1f}  {:>5.0f}  {:>5.1f}{}",
+                     episode.walk(), words(episode.part()), words(episode.outcome()), episode.terms().total(),
+                     summary.mean_speed_m_per_s(), summary.roll_rms_rad() / kDegree,
+                     summary.pitch_rms_rad() / kDegree, summary.winding_max_c(), summary.pack_min_v(),
+                     remark(episode));
+}
+
+std::string verdict_line(const v1::Verdict& verdict) {
+  const std::string kind = verdict.kind() == v1::Verdict::ADOPT  ? "adopt"
+                           : verdict.kind() == v1::Verdict::KEEP ? "keep"
+                                                                 : "none";
+  if (verdict.pairs() == 0) return fmt::format("verdict {}: {}", kind, verdict.words());
+  return fmt::format(
+      "verdict {}: return {:+.2f} ({:g} % interval {:+.2f} to {:+.2f}), p = {:.4f} at level {:g}, {} pairs",
+      kind, verdict.effect(), 100 * verdict.interval_level(), verdict.effect_low(), verdict.effect_high(),
+      verdict.p_value(), verdict.level(), verdict.pairs());
+}
+
+std::string status_text(const v1::Status& status) {
+  std::string out;
+  const auto fact = [&](const std::string& name, const std::string& value) {
+    if (!value.empty()) out += fmt::format("{:<12}{}\n", name, value);
+  };
+  fact("robot", fmt::format("{}, {}, {} pace; file sha256 {}", status.robot(),
+                            status.simulated() ? "simulated" : "real drives", status.pace(),
+                            brief_hash(status.robot_sha256_hex())));
+  fact("state", words(status.robot_state()));
+  fact("waiting for", status.waiting_for());
+  if (status.has_trip()) fact("trip", trip_words(status.trip()));
+  fact("policy", "sha256 " + brief_hash(status.policy_sha256_hex()));
+  fact("pack", fmt::format("{:.1f} V", status.pack_voltage_v()));
+  fact("hottest", fmt::format("{:.0f} deg C", status.winding_max_c()));
+  fact("baton", status.baton_holder().empty() ? "nobody holds it" : "held by " + status.baton_holder());
+  if (status.session() != 0) {
+    fact("session", fmt::format("{}: {}; {} of {} walks, {} falls, {} void", status.session(),
+                                words(status.session_part()), status.walks_done(), status.walks_planned(),
+                                status.falls(), status.voids()));
+    fact("return", fmt::format("start policy {:.2f}, best of the search {:.2f}", status.start_return(),
+                               status.best_return()));
+  } else {
+    fact("session", "none");
+  }
+  if (status.has_verdict()) fact("verdict", verdict_line(status.verdict()));
+  fact("cycle", fmt::format("{} ticks, {} overruns{}", status.ticks(), status.overruns(),
+                            status.scheduling().empty() ? "" : "; " + status.scheduling()));
+  fact("software", status.software());
+  return out;
+}
+
+void Progress::update(std::uint64_t done, std::uint64_t planned, Clock::time_point now) {
+  done_ = done;
+  planned_ = planned;
+  if (!first_ || done < first_->first) first_ = {done, now};
+  if (done > first_->first) {
+    per_walk_s_ = std::chrono::duration<double>(now - first_->second).count() /
+                  static_cast<double>(done - first_->first);
+  }
+}
+
+std::optional<double> Progress::seconds_to_go() const {
+  if (per_walk_s_ <= 0 || planned_ < done_) return std::nullopt;
+  return per_walk_s_ * static_cast<double>(planned_ - done_);
+}
+
+std::string Progress::line() const {
+  const std::optional<double> left = seconds_to_go();
+  return fmt::format("{} {} of {} walks{}",
+                     bar(static_cast<double>(done_), static_cast<double>(planned_), 30), done_, planned_,
+                     left ? fmt::format(", about {} to go", duration(*left)) : "");
+}
+
+void suggest_after(const v1::Status& status) {
+  const std::string& waiting = status.waiting_for();
+  const bool ended = status.session_part() == v1::ENDED;
+  if (status.robot_state() == v1::TRIPPED) {
+    suggest("release", "clears the trip, once its cause is gone and nobody is in reach");
+  } else if (waiting.find("first-start") != std::string::npos) {
+    suggest("confirm", "first start with this robot file: read the procedure, then confirm");
+  } else if (waiting == "go") {
+    suggest("go", "when the robot is back on its mark and nobody is in reach");
+  } else if (status.session_part() == v1::INTERRUPTED) {
+    suggest("resume", "goes on with the interrupted session");
+  } else if (ended && status.verdict().kind() == v1::Verdict::ADOPT) {
+    suggest("adopt", "makes the adapted policy current; `pastern report` first shows why");
+  } else if (ended) {
+    suggest("report --out report.html", "the session as one page");
+  } else if (status.session_part() == v1::NO_SESSION) {
+    suggest("start tools/plans/default.plan.txtpb", "begins a session");
+  } else {
+    suggest("watch", "follows the session");
+  }
+}
+
+}  // namespace pastern::tools

@@ -1,0 +1,44 @@
+// resume: goes on with an interrupted session.
+#include "tools/pastern/link_verb.h"
+
+namespace pastern::tools {
+namespace {
+
+class Resume final : public LinkVerb {
+ public:
+  const char* name() const override { return "resume"; }
+  const char* about() const override {
+    return "Go on with an interrupted session, from its last finished walk.";
+  }
+  const char* group() const override { return "In a session"; }
+  std::vector<std::string> examples() const override { return {"pastern resume", "pastern resume --json"}; }
+
+ protected:
+  void more_options(Options& options) override {
+    options.flag("--json", choice_.json, "Each message of the robot as one line of JSON")
+        .flag("--quiet", choice_.quiet, "The verdict only");
+  }
+  Exit run_on(RobotLine& line) override {
+    Exit exit = line.hold_baton();
+    if (exit != Exit::done) return exit;
+    v1::Answer answer;
+    exit = line.ask(command_of(&v1::Command::mutable_resume), answer);
+    if (exit != Exit::done) return exit;
+    if (!choice_.json) say(answer.words().empty() ? "the session goes on" : answer.words());
+    v1::Status status;
+    exit = line.status(status);
+    if (exit != Exit::done) return exit;
+    choice_.commander = true;
+    choice_.session = status.session();
+    return follow(line, choice_);
+  }
+
+ private:
+  FollowChoice choice_;
+};
+
+}  // namespace
+
+std::unique_ptr<Verb> make_resume() { return std::make_unique<Resume>(); }
+
+}  // namespace pastern::tools
