@@ -62,6 +62,7 @@ std::string no_such_verb(const std::string& word, const std::vector<std::unique_
 void declare(CLI::App& app, const std::vector<std::unique_ptr<Verb>>& verbs) {
   app.set_version_flag("--version", fmt::format("pastern {}", PASTERN_VERSION));
   app.require_subcommand(1);
+  app.get_formatter()->label("SUBCOMMAND", "VERB");
   app.footer(kClosing);
   for (const auto& verb : verbs) {
     CLI::App* sub = app.add_subcommand(verb->name(), verb->about());
@@ -79,6 +80,7 @@ int run_command(const std::vector<std::string>& arguments) {
   CLI::App app{kAbout, "pastern"};
   declare(app, verbs);
   const std::string first = arguments.empty() ? "" : arguments[0];
+  if (arguments.empty()) return usage("which verb?", "");
   if (!first.empty() && first[0] != '-' && !is_verb(first, verbs)) {
     return usage(no_such_verb(first, verbs), "");
   }

@@ -209,10 +209,7 @@ Exit Follower::close(Exit exit) {
   }
   if (exit == Exit::tripped) say("tripped: " + trip_words(status_.trip()));
   if (exit == Exit::refused) say("the session is interrupted; its finished walks are on disk");
-  if (verdict_) {
-    say(verdict_line(*verdict_));
-    if (!verdict_->words().empty()) say(verdict_->words());
-  }
+  if (verdict_) say(verdict_line(*verdict_));
   suggest_after(status_);
   return exit;
 }

@@ -21,7 +21,7 @@ namespace pastern::tools {
 /// One walk: number, part, outcome, return, speed, roll, heat, pack, and why it was void or tripped.
 [[nodiscard]] std::string walk_line(const v1::Episode& episode);
 
-/// "adopt: return +0.61 (90 % interval +0.32 to +0.88), p = 0.0039 at level 0.05, 8 pairs"
+/// The robot's own words: "verdict: adopt: ...".
 [[nodiscard]] std::string verdict_line(const v1::Verdict& verdict);
 
 /// "[=====     ] 34 of 76 walks, about 48 s to go".

@@ -108,14 +108,11 @@ std::string walk_line(const v1::Episode& episode) {
 }
 
 std::string verdict_line(const v1::Verdict& verdict) {
-  const std::string kind = verdict.kind() == v1::Verdict::ADOPT  ? "adopt"
-                           : verdict.kind() == v1::Verdict::KEEP ? "keep"
-                                                                 : "none";
-  if (verdict.pairs() == 0) return fmt::format("verdict {}: {}", kind, verdict.words());
-  return fmt::format(
-      "verdict {}: return {:+.2f} ({:g} % interval {:+.2f} to {:+.2f}), p = {:.4f} at level {:g}, {} pairs",
-      kind, verdict.effect(), 100 * verdict.interval_level(), verdict.effect_low(), verdict.effect_high(),
-      verdict.p_value(), verdict.level(), verdict.pairs());
+  const bool adopt = verdict.kind() == v1::Verdict::ADOPT;
+  const std::string kind = verdict.kind() == v1::Verdict::KIND_NOT_SAID ? "none"
+                           : adopt                                      ? "adopt"
+                                                                        : "keep the start policy";
+  return "verdict: " + (verdict.words().empty() ? kind : verdict.words());
 }
 
 std::string status_text(const v1::Status& status) {

@@ -1,5 +1,6 @@
 // go: says go for the next walk, at operator pace.
 #include "tools/pastern/link_verb.h"
+#include "tools/pastern/words.h"
 
 namespace pastern::tools {
 namespace {

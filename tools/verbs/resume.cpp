@@ -1,5 +1,6 @@
 // resume: goes on with an interrupted session.
 #include "tools/pastern/link_verb.h"
+#include "tools/pastern/words.h"
 
 namespace pastern::tools {
 namespace {

@@ -1,5 +1,6 @@
 // watch: follows what the robot does, without commanding.
 #include "tools/pastern/link_verb.h"
+#include "tools/pastern/words.h"
 
 namespace pastern::tools {
 namespace {
