@@ -18,6 +18,9 @@
 
 namespace pastern::session {
 
+/// "pastern 0.1.0", as it stands in journals and policy files.
+[[nodiscard]] const std::string& software();
+
 /// What the runner's surroundings do for it. The defaults suit a bench: nobody there, nothing to wait for.
 class Hooks {
  public:
@@ -44,8 +47,8 @@ struct SessionSetup {
   std::optional<files::PolicyFile> candidate;
 };
 
-/// verdict: to its end. interrupted: can be resumed. refused: nothing was done. failed: the journal cannot be
-/// written; no further walk.
+/// verdict: to its end (a single walk: walked). interrupted: can be resumed. refused: nothing was done.
+/// failed: the journal cannot be written; no further walk.
 struct Ended {
   enum class How : std::uint8_t { verdict, interrupted, refused, failed };
   How how{How::refused};
@@ -55,60 +58,68 @@ struct Ended {
 class Runner {
  public:
   /// All must outlive the runner. Restores what the journal says the robot carries over (heat, charge,
-  /// thermal memory); why that failed is in `restore_failure()`.
+  /// thermal memory); why that failed is in restore_failure().
   Runner(const files::RobotFile& robot, Mover& mover, journal::Journal& journal, Hooks& hooks);
   ~Runner();
+  Runner(const Runner&) = delete;
+  Runner& operator=(const Runner&) = delete;
 
+  [[nodiscard]] const std::string& restore_failure() const { return restore_failure_; }
   /// Why nothing may walk with this robot file in this journal folder yet, in words; empty when it may.
   [[nodiscard]] std::string first_start_missing() const;
-  [[nodiscard]] const std::string& restore_failure() const { return restore_failure_; }
+  /// Why a session cannot begin, in words; empty when it can.
+  [[nodiscard]] std::string refusal_of(const SessionSetup& setup) const;
+  /// Number of the journal's last session if that has no verdict; 0 otherwise.
+  [[nodiscard]] std::uint64_t interrupted_session() const;
 
   /// Each returns when the robot is parked (or tripped) again.
   [[nodiscard]] Ended run(const SessionSetup& setup);
-  /// Goes on with the journal's last session if that has no verdict.
   [[nodiscard]] Ended resume();
   /// One walk of a policy outside a session; recorded with session 0.
   [[nodiscard]] Ended walk(const files::PolicyFile& policy, double duration_s, std::uint64_t draw);
 
   // For commands, from within the hooks or between runs; same thread.
   void go() { go_ = true; }
-  void end() { end_ = true; }      ///< the session ends as "keep" at the next moment when the robot is parked
-  void pause() { pause_ = true; }  ///< the session is left, interrupted, when the robot is parked
+  void end() { end_ = true; }      ///< the session ends as "keep" as soon as the robot is parked
+  void pause() { pause_ = true; }  ///< the session is left, to be resumed, as soon as the robot is parked
   /// The walk that is being walked, or the last one until the next begins. False with a reason in `words`.
   [[nodiscard]] bool mark_void(std::uint64_t walk, const std::string& reason, std::string& words);
-  /// An operator's release of a trip.
+  /// An operator's release of a trip. False with a reason in `words`.
   [[nodiscard]] bool release(std::string& words);
-  /// One tick, parked: a stop or halt that comes while the robot rests at stepped pace takes effect.
+  /// At stepped pace nothing ticks between orders: one parked tick, so that a stop or halt takes effect.
   void rest();
 
   [[nodiscard]] bool in_session() const { return session_ != nullptr; }
+  [[nodiscard]] const std::string& waiting_for() const { return waiting_for_; }
   /// Fills in what the runner knows: robot state, session part, counts, returns, trip, verdict, figures.
   void fill(v1::Status& status);
 
  private:
-  struct Walked {
-    v1::Episode episode;
-    MotionResult result;
-  };
-
+  [[nodiscard]] bool begin(const SessionSetup& setup, std::uint64_t number);
   [[nodiscard]] Ended loop();
-  [[nodiscard]] bool wait_until_allowed(bool walk_to_come, Ended& ended);
-  [[nodiscard]] bool wait_for_rest(Ended& ended);
+  [[nodiscard]] bool allowed(bool by_operator, Ended& ended);
+  [[nodiscard]] bool interrupted(Ended& ended);
+  [[nodiscard]] bool wait_for(const std::string& what, Ended& ended);
   [[nodiscard]] bool make_ready(const Order& order, Ended& ended);
+  [[nodiscard]] bool out_of_trip(Ended& ended);
+  [[nodiscard]] bool cool_down(Ended& ended);
   [[nodiscard]] bool perform(const Order& order, Ended& ended);
-  [[nodiscard]] MotionResult walk_through(const Order& order, std::string& void_reason);
-  [[nodiscard]] v1::Episode episode_of(const Order& order, const MotionResult& result,
-                                       const std::string& void_reason, std::int64_t started_ns) const;
-  [[nodiscard]] Ended conclude(v1::Verdict verdict, bool with_policy);
-  [[nodiscard]] bool store_adapted(v1::Verdict& verdict, std::string& words);
-  [[nodiscard]] bool replay(std::string& words);
-  [[nodiscard]] std::string open_setup(const journal::SessionRow& row, SessionSetup& setup) const;
+  MotionResult walk_through(const Order& order, std::string& void_reason);
   MotionResult move(Motion motion, double duration_s, v1::RobotState state);
-  void take_up(const SessionSetup& setup, std::uint64_t number);
-  void set_down_session();
+  [[nodiscard]] v1::Episode episode_of(const Order& order, const MotionResult& result,
+                                       std::int64_t started_ns) const;
+  [[nodiscard]] std::optional<Committed<Evaluation>> commit(const v1::Episode& episode, const Order& order,
+                                                            Ended& ended);
+  [[nodiscard]] Ended conclude(v1::Verdict verdict);
+  [[nodiscard]] journal::Written store_adapted(v1::Verdict& verdict);
+  [[nodiscard]] bool replay(std::string& words);
+  [[nodiscard]] std::optional<SessionSetup> recorded_setup(const journal::SessionRow& row,
+                                                           std::string& words) const;
+  [[nodiscard]] Ended leave_session(Ended::How how, const std::string& words);
   void say(const std::string& words);
   [[nodiscard]] std::int64_t session_ns();
-  [[nodiscard]] bool releases_itself(safety::Cause cause) const;
+  [[nodiscard]] bool tripped();
+  [[nodiscard]] bool releases_itself(const safety::Trip& trip) const;
   [[nodiscard]] v1::TripRecord record_of(const safety::Trip& trip) const;
 
   const files::RobotFile& robot_;
@@ -117,6 +128,7 @@ class Runner {
   Hooks& hooks_;
   std::string robot_sha_;
   std::string restore_failure_;
+  std::int64_t carried_session_ns_{0};
 
   std::unique_ptr<SessionSetup> setup_;
   std::unique_ptr<Session> session_;
@@ -128,12 +140,13 @@ class Runner {
   bool end_{false};
   bool pause_{false};
   bool moving_{false};
-  std::uint64_t walking_{0};  // walk in progress
+  bool by_operator_{true};     // pace: a person says go and releases
+  std::uint64_t walking_{0};   // the walk in progress
+  std::uint64_t voidable_{0};  // the finished walk that may still be declared void
   std::string void_mark_;
   v1::RobotState state_{v1::PARKED};
   std::string waiting_for_;
-  std::optional<v1::Verdict> last_verdict_;
-  v1::Status last_session_;  // what the ended or interrupted session's status said
+  v1::Status last_;  // session fields of the status after the session was left
 };
 
 }  // namespace pastern::session

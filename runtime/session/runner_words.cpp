@@ -1,0 +1,100 @@
+// What the runner tells: episodes, trips, status.
+#include "runtime/session/runner.h"
+
+namespace pastern::session {
+namespace {
+
+v1::Part part_of(Part part) { return static_cast<v1::Part>(static_cast<int>(part)); }
+v1::Outcome outcome_of(Outcome outcome) { return static_cast<v1::Outcome>(static_cast<int>(outcome)); }
+
+}  // namespace
+
+const std::string& software() {
+  static const std::string words = "pastern " PASTERN_VERSION;
+  return words;
+}
+
+v1::TripRecord Runner::record_of(const safety::Trip& trip) const {
+  v1::TripRecord record;
+  record.set_cause(safety::name(trip.cause));
+  if (trip.joint >= 0 && trip.joint < robot_.joint_count()) {
+    record.set_joint(robot_.robot().joints(trip.joint).name());
+  }
+  record.set_value(trip.value);
+  record.set_limit(trip.limit);
+  record.set_held_s(trip.held_s);
+  record.set_tick(trip.tick);
+  record.set_unit(safety::unit(trip.cause));
+  record.set_reaction(safety::name(trip.reaction));
+  return record;
+}
+
+v1::Episode Runner::episode_of(const Order& order, const MotionResult& result,
+                               std::int64_t started_ns) const {
+  v1::Episode episode;
+  episode.set_session(number_);
+  episode.set_walk(order.walk);
+  episode.set_part(part_of(order.part));
+  episode.set_batch(order.batch);
+  episode.set_index(order.index);
+  episode.set_draw(order.draw);
+  episode.set_outcome(outcome_of(result.outcome));
+  v1::ReturnTerms& terms = *episode.mutable_terms();
+  terms.set_forward(result.terms.forward);
+  terms.set_energy(result.terms.energy);
+  terms.set_drift(result.terms.drift);
+  terms.set_turn(result.terms.turn);
+  terms.set_fall(result.terms.fall);
+  terms.set_total(result.terms.total());
+  *episode.mutable_summary() = result.summary;
+  *episode.mutable_trace() = result.trace;
+  if (result.tripped) *episode.mutable_trip() = record_of(result.trip);
+  episode.set_parameters_sha256(journal::parameters_sha256(order.parameters));
+  episode.set_started_s(static_cast<double>(started_ns) * 1e-9);
+  return episode;
+}
+
+std::int64_t Runner::session_ns() { return clock_base_ns_ + (mover_.report().now.value - clock_origin_ns_); }
+
+void Runner::say(const std::string& words) {
+  (void)journal_.note(number_, words).ok;
+  hooks_.on_note(words);
+}
+
+void Runner::fill(v1::Status& status) {
+  const CycleReport report = mover_.report();
+  if (!session_) {
+    const v1::Status& last = last_;
+    status.MergeFrom(last);
+    if (last.session_part() == v1::NO_SESSION && interrupted_session() != 0) {
+      status.set_session_part(v1::INTERRUPTED);
+      status.set_session(interrupted_session());
+    }
+  } else {
+    status.set_session_part(session_->part());
+    status.set_session(number_);
+    status.set_walks_done(session_->walks_done());
+    status.set_walks_planned(session_->walks_planned());
+    status.set_falls(session_->falls());
+    status.set_voids(session_->voids());
+    status.set_best_return(session_->best_return());
+    status.set_start_return(session_->start_return());
+  }
+  const bool stopped = report.phase != safety::Phase::armed;
+  status.set_robot_state(stopped ? v1::TRIPPED : state_ == v1::TRIPPED ? v1::PARKED : state_);
+  status.set_waiting_for(waiting_for_.empty() && stopped ? "release" : waiting_for_);
+  status.clear_trip();
+  if (stopped) *status.mutable_trip() = record_of(report.trip);
+  status.set_robot(robot_.robot().name());
+  status.set_robot_sha256_hex(robot_sha_);
+  status.set_pace(mover_.pace() == Pace::wall ? "wall" : "stepped");
+  status.set_scheduling(mover_.scheduling());
+  status.set_simulated(mover_.simulated());
+  status.set_pack_voltage_v(report.pack_voltage_v);
+  status.set_winding_max_c(report.winding_max_c);
+  status.set_ticks(report.ticks);
+  status.set_overruns(report.overruns);
+  status.set_software(software());
+}
+
+}  // namespace pastern::session
