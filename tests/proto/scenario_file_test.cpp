@@ -1,0 +1,67 @@
+// A scenario against its robot.
+#include "proto/files/scenario_file.h"
+
+#include <gtest/gtest.h>
+
+#include <functional>
+
+#include "tests/proto/fixture.h"
+
+namespace pastern::files {
+namespace {
+
+std::string why(const std::function<void(v1::Scenario&)>& change) {
+  v1::Scenario scenario = fixture::scenario();
+  change(scenario);
+  Defects defects;
+  return parse_scenario(fixture::text(scenario), "s", fixture::robot_file(), defects) ? "accepted"
+                                                                                      : lines(defects);
+}
+
+TEST(ScenarioFile, ANameAloneIsTheNominalSite) {
+  Defects defects;
+  EXPECT_TRUE(parse_scenario("name: \"good_day\"", "s", fixture::robot_file(), defects)) << lines(defects);
+}
+
+TEST(ScenarioFile, RefusesJointsThatTheRobotDoesNotHave) {
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_wear(0)->set_joint("wing"); }),
+            "s: wear[0].joint: found wing, expected a joint of fixture10\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_faults(0)->set_joint("wing"); }),
+            "s: faults[0].joint: found wing, expected a joint of fixture10\n");
+}
+
+TEST(ScenarioFile, RefusesTheSameJointWornTwice) {
+  EXPECT_EQ(why([](v1::Scenario& s) { *s.add_wear() = s.wear(0); }),
+            "s: wear[1].joint: found rear_left_knee, said before, expected each joint once\n");
+}
+
+TEST(ScenarioFile, AFaultNamesAJointExactlyWhenItIsOneOfAJoint) {
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_faults(0)->clear_joint(); }),
+            "s: faults[0].joint: found nothing, expected the joint that fails\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_faults(0)->set_kind(v1::Fault::PACK_CUT); }),
+            "s: faults[0].joint: found front_left_hip, expected nothing: PACK_CUT is no fault of a joint\n");
+  EXPECT_EQ(why([](v1::Scenario& s) {
+              s.mutable_faults(0)->set_kind(v1::Fault::PACK_CUT);
+              s.mutable_faults(0)->clear_joint();
+            }),
+            "accepted");
+}
+
+TEST(ScenarioFile, RefusesWhatContradictsItself) {
+  EXPECT_EQ(why([](v1::Scenario& s) { s.clear_load_kg(); }),
+            "s: load_at_m: found a place without a load, expected load_kg beside it\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.set_joint_damping_nm_s_per_rad(1); }),
+            "s: joint_damping_ratio: found joint_damping_nm_s_per_rad as well, expected one of the two\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.set_command_jitter_s(0.02); }),
+            "s: command_jitter_s: found 0.02, expected at most command_delay_s, 0.01\n");
+}
+
+TEST(ScenarioFile, RefusesALoadBesideTheRobotAndAnImuOnItsSide) {
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_load_at_m()->set_y(-3); }),
+            "s: load_at_m.y: found -3, expected between -2 and 2 (m)\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_imu_tilt_rad()->set_z(0.6); }),
+            "s: imu_tilt_rad.z: found 0.6, expected between -0.5 and 0.5 (rad)\n");
+}
+
+}  // namespace
+}  // namespace pastern::files

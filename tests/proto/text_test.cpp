@@ -1,0 +1,125 @@
+// The strict text parser and the form of a defect.
+#include "proto/files/text.h"
+
+#include <gtest/gtest.h>
+
+#include <algorithm>
+
+#include "proto/files/check.h"
+#include "proto/files/plan_file.h"
+#include "proto/files/robot_file.h"
+#include "tests/proto/fixture.h"
+
+namespace pastern::files {
+namespace {
+
+std::string why(const std::string& text) {
+  v1::Plan plan;
+  Defects defects;
+  return parse_text(text, "a.plan.txtpb", plan, defects) ? "accepted" : lines(defects);
+}
+
+TEST(DefectLine, NamesFileFieldFoundAndExpected) {
+  EXPECT_EQ((Defect{"x.robot.txtpb", "joints[3].axis", "length 0.5", "a unit vector"}.line()),
+            "x.robot.txtpb: joints[3].axis: found length 0.5, expected a unit vector");
+  EXPECT_EQ((Defect{"x", "", "a folder", "a file"}.line()), "x: found a folder, expected a file");
+}
+
+TEST(DefectLine, StaysOneLineOfBoundedLengthWhateverTheFileHolds) {
+  const std::string line = Defect{"x", "a\nb", "\x1b[31m" + std::string(1000, 'y'), "z"}.line();
+  EXPECT_EQ(line.find('\n'), std::string::npos);
+  EXPECT_EQ(line.find('\x1b'), std::string::npos);
+  EXPECT_NE(line.find("a\\nb: found \\x1b[31m"), std::string::npos);
+  EXPECT_LT(line.size(), 300U);
+}
+
+TEST(TextFile, SoundIsAccepted) { EXPECT_EQ(why(fixture::text(fixture::plan())), "accepted"); }
+
+TEST(TextFile, CommentsAreAllowed) {
+  EXPECT_EQ(why("# a remark\n" + fixture::text(fixture::plan())), "accepted");
+}
+
+TEST(TextFile, UnknownFieldIsNamedWithLineAndColumn) {
+  const std::string text = why(fixture::text(fixture::plan()) + "colour: 3\n");
+  EXPECT_NE(text.find("a.plan.txtpb:20:"), std::string::npos) << text;
+  EXPECT_NE(text.find("colour"), std::string::npos) << text;
+}
+
+TEST(TextFile, AFieldSaidTwiceIsRefused) {
+  EXPECT_NE(why(fixture::text(fixture::plan()) + "seed: 3\n").find("specified multiple times"),
+            std::string::npos);
+}
+
+TEST(TextFile, EmptyNamesEveryRequiredFieldInOneLineEach) {
+  const std::string text = why("");
+  EXPECT_EQ(std::count(text.begin(), text.end(), '\n'), 12) << text;
+  EXPECT_NE(
+      text.find(
+          "a.plan.txtpb: walk_s: found nothing, expected a finite number at least 0.5 and at most 60 (s)\n"),
+      std::string::npos)
+      << text;
+  EXPECT_NE(text.find("a.plan.txtpb: go_by: found nothing, expected one of OPERATOR AUTO\n"),
+            std::string::npos)
+      << text;
+}
+
+TEST(TextFile, AnEnumOutsideItsValuesIsRefusedAlsoByNumber) {
+  v1::Plan plan = fixture::plan();
+  plan.set_go_by(static_cast<v1::Plan::GoBy>(9));
+  EXPECT_NE(why(fixture::text(plan)).find("go_by: found 9, expected one of OPERATOR AUTO"),
+            std::string::npos);
+}
+
+TEST(TextFile, GarbageAndAWholeBinaryFileAreRefusedWithFewLines) {
+  std::string garbage;
+  for (int i = 0; i < 100'000; ++i) garbage += static_cast<char>(i * 7 + i / 251);
+  const std::string text = why(garbage);
+  EXPECT_NE(text, "accepted");
+  EXPECT_LE(std::count(text.begin(), text.end(), '\n'), 50);
+}
+
+TEST(TextFile, DeepNestingIsRefusedWithoutACrash) {
+  std::string deep;
+  for (int i = 0; i < 200'000; ++i) deep += "adaptation {";
+  EXPECT_NE(why(deep), "accepted");
+}
+
+TEST(TextFile, LargerThanSixteenMebibytesIsRefused) {
+  EXPECT_NE(why(std::string((16U << 20U) + 1, '#')).find("more than 16 MiB"), std::string::npos);
+}
+
+TEST(TextFile, DefectsAreAppendedAndNeverRemoved) {
+  Defects defects{{"earlier", "", "x", "y"}};
+  v1::Plan plan;
+  EXPECT_FALSE(parse_text("seed: nan", "b", plan, defects));
+  EXPECT_TRUE(parse_text(fixture::text(fixture::plan()), "c", plan, defects));
+  EXPECT_EQ(defects[0].file, "earlier");
+  EXPECT_GE(defects.size(), 2U);
+}
+
+TEST(Rules, DefectsOfNestedAndRepeatedFieldsCarryTheirPath) {
+  v1::Robot robot = fixture::robot();
+  robot.mutable_joints(3)->mutable_drive()->set_peak_torque_nm(-1);
+  robot.mutable_joints(3)->mutable_link()->mutable_inertia()->clear_zz();
+  Defects defects;
+  check_rules(robot, "r", "robot", defects);
+  ASSERT_EQ(defects.size(), 2U) << lines(defects);
+  EXPECT_EQ(defects[0].field, "robot.joints[3].link.inertia.zz");
+  EXPECT_EQ(defects[1].line(),
+            "r: robot.joints[3].drive.peak_torque_nm: found -1, expected a finite number above 0 and at most "
+            "2000 (N m)");
+}
+
+TEST(Rules, CountsOfRepeatedFieldsAreKept) {
+  v1::Robot robot = fixture::robot();
+  while (robot.joints_size() < 33) *robot.add_joints() = robot.joints(0);
+  robot.clear_legs();
+  Defects defects;
+  check_rules(robot, "r", "", defects);
+  EXPECT_EQ(lines(defects),
+            "r: joints: found 33 entries, expected 2 to 32 entries\n"
+            "r: legs: found 0 entries, expected 2 to 8 entries\n");
+}
+
+}  // namespace
+}  // namespace pastern::files
