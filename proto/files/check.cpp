@@ -6,7 +6,7 @@
 #include <vector>
 
 #include "pastern/v1/rule.pb.h"
-#include "proto/files/number.h"
+#include "proto/files/words.h"
 
 namespace pastern::files {
 namespace {
@@ -136,13 +136,8 @@ class Judge {
       add(path, std::to_string(value.size()) + " characters", "at most " + std::to_string(rule.max_length()));
     }
     if (field.type() == FieldDescriptor::TYPE_BYTES) return;
-    for (const char c : value) {
-      const auto byte = static_cast<unsigned char>(c);
-      if ((byte < 0x20 && c != '\n') || byte == 0x7f || (c == '\n' && rule.max_length() <= kNameLength)) {
-        add(path, "a control character", "printable text");
-        return;
-      }
-    }
+    if (!printable(value, rule.max_length() > kNameLength))
+      add(path, "bytes that are no text", "printable text");
   }
 
   void choice(int value, const FieldDescriptor& field, const std::string& path) {

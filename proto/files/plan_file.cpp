@@ -4,8 +4,8 @@
 
 #include <cmath>
 
-#include "proto/files/number.h"
 #include "proto/files/text.h"
+#include "proto/files/words.h"
 
 namespace pastern::files {
 namespace {

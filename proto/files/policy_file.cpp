@@ -7,8 +7,8 @@
 #include <set>
 
 #include "proto/files/artefact.h"
-#include "proto/files/number.h"
 #include "proto/files/text.h"
+#include "proto/files/words.h"
 
 namespace pastern::files {
 namespace {
@@ -50,12 +50,9 @@ class Judge {
   }
 
   void text(const std::string& value, std::size_t least, std::size_t most, const std::string& field) {
-    const bool plain = std::all_of(value.begin(), value.end(), [](char c) {
-      const auto byte = static_cast<unsigned char>(c);
-      return (byte >= 0x20 && byte != 0x7f) || c == '\n';
-    });
+    const bool plain = printable(value, true);
     require(plain && value.size() >= least && value.size() <= most, field,
-            plain ? std::to_string(value.size()) + " characters" : "control characters",
+            plain ? std::to_string(value.size()) + " characters" : "bytes that are no text",
             "a text of " + std::to_string(least) + " to " + std::to_string(most) + " characters");
   }
 

@@ -7,8 +7,8 @@
 #include <set>
 
 #include "proto/files/geometry.h"
-#include "proto/files/number.h"
 #include "proto/files/text.h"
+#include "proto/files/words.h"
 
 namespace pastern::files {
 namespace {

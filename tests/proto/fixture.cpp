@@ -258,7 +258,8 @@ v1::Policy policy() {
   last.set_inputs(3);
   last.set_outputs(10);
   last.set_activation(v1::Layer::IDENTITY);
-  for (const v1::Leg& leg : robot().legs()) {
+  const v1::Robot walker = robot();
+  for (const v1::Leg& leg : walker.legs()) {
     v1::LegAction& action = *policy.add_legs();
     action.set_leg(leg.name());
     action.set_angle_rad(0.4);

@@ -41,7 +41,7 @@ const Case kCases[] = {
     {"Format", [](v1::Policy& p) { p.set_format(2); }, "f: format: found 2, expected format 1\n"},
     {"NoFormat", [](v1::Policy& p) { p.clear_format(); }, "f: format: found 0"},
     {"NoName", [](v1::Policy& p) { p.clear_name(); }, "f: name: found 0 characters"},
-    {"NameOfTwoLines", [](v1::Policy& p) { p.set_name("a\x07"); }, "f: name: found control characters"},
+    {"NameOfTwoLines", [](v1::Policy& p) { p.set_name("a\x07"); }, "f: name: found bytes that are no text"},
     {"OtherRobot", [](v1::Policy& p) { p.set_robot("other"); },
      "f: robot: found other, expected fixture10\n"},
     {"NoScalar", [](v1::Policy& p) { p.clear_scalar(); }, "f: scalar: found 0"},
@@ -133,7 +133,7 @@ const Case kCases[] = {
      "f: provenance.parent_sha256: found 3 bytes"},
 };
 INSTANTIATE_TEST_SUITE_P(Parts, PolicyFileRefuses, ::testing::ValuesIn(kCases),
-                         [](const ::testing::TestParamInfo<Case>& info) { return info.param.name; });
+                         [](const ::testing::TestParamInfo<Case>& one) { return one.param.name; });
 
 TEST(PolicyFile, SoundIsAcceptedWithItsHash) {
   const std::string bytes = pack_policy(fixture::policy());

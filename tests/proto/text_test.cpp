@@ -4,10 +4,12 @@
 #include <gtest/gtest.h>
 
 #include <algorithm>
+#include <limits>
 
 #include "proto/files/check.h"
 #include "proto/files/plan_file.h"
 #include "proto/files/robot_file.h"
+#include "proto/files/words.h"
 #include "tests/proto/fixture.h"
 
 namespace pastern::files {
@@ -40,8 +42,10 @@ TEST(TextFile, CommentsAreAllowed) {
 }
 
 TEST(TextFile, UnknownFieldIsNamedWithLineAndColumn) {
-  const std::string text = why(fixture::text(fixture::plan()) + "colour: 3\n");
-  EXPECT_NE(text.find("a.plan.txtpb:20:"), std::string::npos) << text;
+  const std::string sound = fixture::text(fixture::plan());
+  const auto line = 1 + std::count(sound.begin(), sound.end(), '\n');
+  const std::string text = why(sound + "colour: 3\n");
+  EXPECT_EQ(text.rfind("a.plan.txtpb:" + std::to_string(line) + ":", 0), 0U) << text;
   EXPECT_NE(text.find("colour"), std::string::npos) << text;
 }
 
@@ -95,6 +99,25 @@ TEST(TextFile, DefectsAreAppendedAndNeverRemoved) {
   EXPECT_TRUE(parse_text(fixture::text(fixture::plan()), "c", plan, defects));
   EXPECT_EQ(defects[0].file, "earlier");
   EXPECT_GE(defects.size(), 2U);
+}
+
+// RFC 3629: overlong forms, surrogates, beyond U+10FFFF and cut sequences are not UTF-8.
+TEST(PrintableText, IsWellFormedUtf8WithoutControlCharacters) {
+  EXPECT_TRUE(printable("robot 12, \xc3\xa9 \xe2\x82\xac \xf0\x9f\x90\x95", false));
+  EXPECT_TRUE(printable("", false));
+  for (const char* text : {"\xc0\xaf", "\xe0\x9f\xbf", "\xed\xa0\x80", "\xf4\x90\x80\x80", "\xf5\x80\x80\x80",
+                           "\xe2\x82", "\x80", "\xff", "a\x7f", "\x1b[0m", "\xc2\x85", "\t"}) {
+    EXPECT_FALSE(printable(text, true)) << hex(std::string_view(text));
+  }
+  EXPECT_TRUE(printable("a\nb", true));
+  EXPECT_FALSE(printable("a\nb", false));
+}
+
+TEST(ShownNumber, IsShortAndExact) {
+  EXPECT_EQ(shown_number(0.0005), "0.0005");
+  EXPECT_EQ(shown_number(0.1), "0.1");
+  EXPECT_EQ(shown_number(-3), "-3");
+  EXPECT_EQ(shown_number(std::numeric_limits<double>::quiet_NaN()), "nan");
 }
 
 TEST(Rules, DefectsOfNestedAndRepeatedFieldsCarryTheirPath) {
