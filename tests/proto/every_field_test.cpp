@@ -1,8 +1,11 @@
 // Every field of every text file kind, damaged in every way: never accepted out of range, never silent.
 #include <gtest/gtest.h>
 
+#include <filesystem>
 #include <functional>
 #include <set>
+#include <string>
+#include <vector>
 
 #include "proto/files/plan_file.h"
 #include "proto/files/robot_file.h"
@@ -66,6 +69,34 @@ TEST(EveryField, OfAScenarioFileDamagedIsNeverAcceptedOutOfRange) {
 
 TEST(EveryField, OfAPlanFileDamagedIsNeverAcceptedOutOfRange) {
   damage_and_read(fixture::text(fixture::plan()), *v1::Plan::descriptor(), read_plan_text);
+}
+
+// Files of one kind that are shipped.
+std::vector<std::string> shipped(const std::string& folder, const std::string& suffix) {
+  std::vector<std::string> paths;
+  const auto root = std::filesystem::path(PASTERN_SOURCE_DIR) / folder;
+  for (const auto& entry : std::filesystem::directory_iterator(root)) {
+    if (entry.path().string().ends_with(suffix)) paths.push_back(entry.path().string());
+  }
+  return paths;
+}
+
+TEST(ShippedFiles, AreSound) {
+  files::Defects defects;
+  const auto robots = shipped("hal_stub/robots", ".robot.txtpb");
+  const auto scenarios = shipped("hal_stub/scenarios", ".scenario.txtpb");
+  const auto plans = shipped("tools/plans", ".plan.txtpb");
+  EXPECT_GE(robots.size(), 2U);
+  EXPECT_GE(scenarios.size(), 5U);
+  EXPECT_GE(plans.size(), 1U);
+  for (const std::string& path : robots) {
+    const auto robot = files::read_robot(path, defects);
+    ASSERT_TRUE(robot) << files::lines(defects);
+    for (const std::string& scenario : scenarios) {
+      EXPECT_TRUE(files::read_scenario(scenario, *robot, defects)) << files::lines(defects);
+    }
+  }
+  for (const std::string& path : plans) EXPECT_TRUE(files::read_plan(path, defects)) << files::lines(defects);
 }
 
 }  // namespace
