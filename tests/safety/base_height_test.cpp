@@ -53,6 +53,30 @@ TEST(BaseHeight, AbductionSwingsTheLegSideways) {
   EXPECT_NEAR(foot.z, 0.07 * std::sin(0.4) - 0.5 * std::cos(0.4), 1e-14);
 }
 
+TEST(BaseHeight, AHingeOfAnyAxisTurnsTheFootByItsQuaternion) {
+  // Rotation vector (.1, .2, .3): q = (.982550982155, .049708843325, .099417686650, .149126529975) (SciPy
+  // 1.10.1); the foot by the quaternion's matrix.
+  Limits limits = test::some_limits();
+  LegChain& leg = limits.leg[0];
+  leg.joint_count = 1;
+  const double size = std::sqrt(0.14);
+  leg.axis[0] = {0.1 / size, 0.2 / size, 0.3 / size};
+  leg.foot = {0.3, -0.2, -0.5};
+  JointAngles<> angle;
+  angle[0] = size;
+  const double w = .982550982155;
+  const double x = .049708843325;
+  const double y = .099417686650;
+  const double z = .149126529975;
+  const auto foot = foot_in_body(leg, angle);
+  EXPECT_NEAR(foot.x, 0.3 * (1 - 2 * (y * y + z * z)) - 0.2 * 2 * (x * y - w * z) - 0.5 * 2 * (x * z + w * y),
+              1e-11);
+  EXPECT_NEAR(foot.y, 0.3 * 2 * (x * y + w * z) - 0.2 * (1 - 2 * (x * x + z * z)) - 0.5 * 2 * (y * z - w * x),
+              1e-11);
+  EXPECT_NEAR(foot.z, 0.3 * 2 * (x * z - w * y) - 0.2 * 2 * (y * z + w * x) - 0.5 * (1 - 2 * (x * x + y * y)),
+              1e-11);
+}
+
 TEST(BaseHeight, TheLowestFootCounts) {
   Limits limits = test::some_limits(4);
   limits.leg_count = 2;

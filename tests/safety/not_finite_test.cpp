@@ -103,10 +103,12 @@ TEST(NotFinite, WhatTheRobotDoesNotHaveIsNotJudged) {
   loop.frame.attitude.w = kNan;
   loop.frame.position.x = kInf;
   loop.frame.angle[3] = kNan;  // the fourth of three joints
+  loop.frame.winding[3] = loop.frame.torque[3] = loop.frame.speed[3] = kNan;
   loop.wanted[3] = kNan;
   loop.target[3] = kNan;
   for (int i = 0; i < 100; ++i) EXPECT_TRUE(sound(loop.tick(), loop.limits));
   EXPECT_EQ(loop.gate.phase(), Phase::armed);
+  EXPECT_EQ(loop.gate.hold(), Hold::none);
 }
 
 TEST(NotFinite, WantedTorquesAndTargetsTripAtOnce) {

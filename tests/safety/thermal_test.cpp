@@ -100,6 +100,12 @@ TEST(Thermal, CoolsByTheSameLaw) {
   EXPECT_NEAR(t, 352.672, 0.01 + 1e-3);
 }
 
+TEST(Thermal, NoTimeChangesNothing) {
+  ThermalModel model;
+  model.step(0, 20.0, kRated, kTau, 0.0);
+  EXPECT_EQ(model.theta(0), 0.0);
+}
+
 TEST(Thermal, RisesBySixtyThreePerCentInOneTimeConstant) {
   constexpr std::array<double, 5> kRise{.632121, .864665, .950213, .981684, .993262};
   ThermalModel model;
@@ -126,7 +132,7 @@ TEST(Thermal, StaysFiniteAndHotUnderAnyInput) {
       EXPECT_GE(model.theta(0), 1.0) << rated;
     }
   }
-  for (const double tau : {std::nan(""), 0.0, -1.0}) {
+  for (const double tau : {std::nan(""), 0.0, -1.0, -std::numeric_limits<double>::infinity()}) {
     ThermalModel model;
     model.step(0, 20.0, kRated, tau, 0.001);
     EXPECT_EQ(model.theta(0), 4.0) << tau;

@@ -101,6 +101,8 @@ TEST(Tilt, CountsAsUpsideDownUntilTheFirstDirection) {
   EXPECT_NEAR(std::fabs(filter.roll()), 180.0 * kDegree, 1e-12);
   filter.follow({}, Acceleration{}, 0.001, 0.5);
   EXPECT_NEAR(std::fabs(filter.roll()), 180.0 * kDegree, 1e-12);
+  filter.follow({}, Acceleration{1e308, 1e308, 1e308}, 0.001, 0.5);
+  EXPECT_NEAR(std::fabs(filter.roll()), 180.0 * kDegree, 1e-12);
   filter.follow({}, at_rest(0.1, 0.0), 0.001, 0.5);
   EXPECT_NEAR(filter.roll(), 0.1, 1e-12);
   filter.reset();

@@ -45,6 +45,8 @@ TEST(Timing, AStallCountsTheTicksThatWereMissed) {
   EXPECT_EQ(counter.advance(TimeNs{1'000'000}), 1);
   EXPECT_EQ(counter.advance(TimeNs{19'000'000}), 18);
   EXPECT_EQ(counter.advance(TimeNs{20'000'000}), 1);
+  EXPECT_EQ(counter.advance(TimeNs{25'600'000}), 6);  // to the nearest
+  EXPECT_EQ(counter.advance(TimeNs{35'400'000}), 9);
 }
 
 TEST(Timing, AClockThatStandsStillOrGoesBackCountsOneTickACall) {

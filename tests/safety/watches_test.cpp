@@ -320,7 +320,9 @@ TEST(Watches, AnAttitudeThatIsNoRotationIsImpossible) {
   Loop loop;
   loop.frame.has_attitude = true;
   EXPECT_EQ(loop.ticks_to_trip(5), 6);
-  loop.frame.attitude.w = 0.5;
+  loop.frame.attitude = {0.5, -0.5, 0.5, -0.5};
+  EXPECT_EQ(loop.ticks_to_trip(5), 6);
+  loop.frame.attitude = {0.5, -0.5, 0.5, -0.3};
   EXPECT_EQ(loop.ticks_to_trip(5), 1);
   EXPECT_EQ(loop.gate.trip().cause, Cause::frame_out_of_range);
 }
