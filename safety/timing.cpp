@@ -1,6 +1,8 @@
 // Whole ticks from seconds and from a clock.
 #include "safety/timing.h"
 
+#include <cmath>
+
 namespace pastern::safety {
 namespace {
 
@@ -27,7 +29,7 @@ std::int64_t ticks_within(double span_s, double tick_s) noexcept {
 }
 
 TickCounter::TickCounter(double tick_s) noexcept
-    : tick_ns_(static_cast<std::uint64_t>(sound_tick_s(tick_s) * 1e9 + 0.5)) {}
+    : tick_ns_(static_cast<std::uint64_t>(std::llround(sound_tick_s(tick_s) * 1e9))) {}
 
 void TickCounter::anchor(TimeNs now) noexcept {
   origin_ = now;

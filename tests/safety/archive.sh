@@ -7,7 +7,7 @@ archive=$2
 [ -f "$archive" ] || { echo "no such archive: $archive"; exit 1; }
 
 # Memory copies and plain mathematics of the C library.
-allowed='memcpy|memset|memmove|memcmp|exp|expm1|sin|cos|sincos|sqrt|atan2|fabs|log|_GLOBAL_OFFSET_TABLE_'
+allowed='memcpy|memset|memmove|memcmp|exp|expm1|sin|cos|sincos|sqrt|atan2|fabs|log|lround|llround|_GLOBAL_OFFSET_TABLE_'
 # Checks that hardened or sanitizing builds add.
 allowed="$allowed|__stack_chk_fail|__asan_[a-z0-9_]*|__ubsan_[a-z0-9_]*|__tsan_[a-z0-9_]*|__sanitizer_[a-z0-9_]*"
 

@@ -149,6 +149,15 @@ TEST(Watches, TiltTripsAfterItsHoldAndAtOnceWhenLarge) {
   }
 }
 
+TEST(Watches, BodyRateIsTheSizeOfTheWholeVector) {
+  Loop loop;
+  loop.frame.rate = {-4.0, 4.0, 2.0};  // 6 rad/s exactly: the limit; too short to tilt far
+  EXPECT_EQ(loop.ticks_to_trip(40), 41);
+  loop.frame.rate = {4.0, -4.0, -2.001};
+  EXPECT_EQ(loop.ticks_to_trip(200), 31);
+  EXPECT_EQ(loop.gate.trip().cause, Cause::body_rate);
+}
+
 TEST(Watches, ADeadAccelerometerCountsAsUpsideDown) {
   Loop loop;
   loop.frame.acceleration = {};
