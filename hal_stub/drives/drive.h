@@ -1,0 +1,175 @@
+// Drives and pack over the scalar S: torque-speed line, winding heat, rotor, gear friction, play, supply. Pure functions
+// of plain values; the constants come from the robot file (C), what varies with the site is S.
+#pragma once
+
+#include <array>
+
+#include "hal_stub/dynamics/motion.h"
+#include "safety/units.h"
+
+namespace pastern::stub {
+
+using safety::kMaxJoints;
+
+template <class S>
+using PerDrive = std::array<S, kMaxJoints>;
+
+/// Copper, relative to 25 deg C, where the drive's figures hold: 1 + 0.00393 (T - 20) scaled (handbook).
+template <class S>
+inline S copper_ratio(const S& celsius) noexcept {
+  using C = Constant<S>;
+  return (C(1) + (celsius - S(C(20))) * C(0.00393)) * C(1.0 / 1.01965);
+}
+
+template <class C>
+struct DriveFigures {
+  C peak_torque{0};      ///< N m at the joint
+  C no_load_speed{0};    ///< rad/s at nominal voltage
+  C rotor_inertia{0};    ///< kg m2 at the joint
+  C per_amp{0};          ///< N m/A
+  C resistance{0};       ///< ohm at 25 deg C
+  C winding_per_j{0};    ///< K/J
+  C housing_per_j{0};
+  C to_housing{0};       ///< W/K
+  C to_air{0};
+  C timeout_damping{0};  ///< N m s/rad, what the drive does by itself when commands stop
+};
+
+/// Gear teeth that meet: stiff enough not to be seen, damped enough not to ring.
+template <class C>
+struct Teeth {
+  C stiffness{C(4000)};  ///< N m/rad
+  C damping{C(5)};       ///< N m s/rad
+};
+
+inline constexpr double kCoulombSpeed = 0.05;  ///< rad/s; below it Coulomb friction grows linearly
+
+/// What a site and wear make of the drives.
+template <class S>
+struct DriveSite {
+  PerDrive<S> strength;  ///< joint torque for unit torque that the drive believes it makes
+  PerDrive<S> damping;   ///< N m s/rad
+  PerDrive<S> coulomb;   ///< N m
+  PerDrive<S> half_gap;  ///< rad
+  S ambient;             ///< deg C
+};
+
+template <class S>
+struct DriveState {
+  PerDrive<S> torque{};         ///< that the drive believes it makes, N m
+  PerDrive<S> rotor_angle{};    ///< at the joint side, rad; equal to the joint's without play
+  PerDrive<S> rotor_speed{};
+  PerDrive<S> winding{};        ///< deg C
+  PerDrive<S> housing{};
+};
+
+/// Torque that the drive makes of a wanted one: the line from stall to no-load speed, moved by the supply, steeper when
+/// the winding is hot. Braking is not limited by the line but by the peak.
+template <class S>
+inline S made_torque(const DriveFigures<Constant<S>>& drive, const S& wanted, const S& speed, const S& supply_ratio,
+                     const S& winding) noexcept {
+  using C = Constant<S>;
+  const S relative = speed * (C(1) / drive.no_load_speed);
+  const S warm = C(drive.peak_torque) * (C(1) / copper_ratio(winding));
+  const S cap(drive.peak_torque);
+  const S up = max(min((supply_ratio - relative) * warm, cap), S(0));
+  const S down = max(min((supply_ratio + relative) * warm, cap), S(0));
+  return max(min(wanted, up), S(0) - down);
+}
+
+/// Gear friction as a viscosity: viscous and Coulomb, the latter regularised.
+template <class S>
+inline S gear_viscosity(const S& damping, const S& coulomb, const S& speed) noexcept {
+  return damping + coulomb * (Constant<S>(1) / max(abs(speed), S(Constant<S>(kCoulombSpeed))));
+}
+
+/// What couples a rotor to its joint in a step; kept to move the rotor afterwards.
+template <class S>
+struct Coupling {
+  S rotor_force;    ///< right-hand side of the rotor
+  S rotor_inverse;  ///< 1 / its matrix
+  S mesh;           ///< dt * viscosity of the teeth, zero in the gap
+};
+
+/// Rotor, friction and teeth of one joint, the rotor eliminated from the step: without a gap it sits on the joint.
+template <class S>
+inline JointLoad<S> load_of(const DriveFigures<Constant<S>>& drive, const Teeth<Constant<S>>& teeth, const S& torque,
+                            const S& viscosity, const S& half_gap, const S& angle, const S& speed,
+                            const S& rotor_angle, const S& rotor_speed, Constant<S> dt,
+                            Coupling<S>& coupling) noexcept {
+  using C = Constant<S>;
+  const S zero(0);
+  const auto loose = half_gap > zero;
+  const S ahead = rotor_angle - angle;
+  const S bite = max(ahead - half_gap, zero) + min(ahead + half_gap, zero);
+  const S meeting = select(abs(bite) > zero, S(teeth.stiffness * dt + teeth.damping), zero);
+  const S through = bite * C(teeth.stiffness) + (rotor_speed - speed) * meeting;
+  const S mesh = meeting * dt;
+  const S inverse = C(1) / (C(drive.rotor_inertia) + mesh + viscosity * dt + S(C(1e-9)));
+  const S rotor_force = torque - viscosity * rotor_speed - through;
+  coupling = {rotor_force, inverse, mesh};
+  const S rigid_torque = torque - viscosity * speed;
+  const S rigid_inertia = C(drive.rotor_inertia) + viscosity * dt;
+  return {select(loose, through + mesh * inverse * rotor_force, rigid_torque),
+          select(loose, mesh - mesh * mesh * inverse, rigid_inertia)};
+}
+
+/// Two nodes, winding and housing (first order each), explicit step; `loss` in W.
+template <class S>
+inline void heat(const DriveFigures<Constant<S>>& drive, const S& loss, const S& ambient, Constant<S> dt, S& winding,
+                 S& housing) noexcept {
+  const S inward = (winding - housing) * drive.to_housing;
+  const S outward = (housing - ambient) * drive.to_air;
+  winding = winding + (loss - inward) * (drive.winding_per_j * dt);
+  housing = housing + (inward - outward) * (drive.housing_per_j * dt);
+}
+
+template <class C>
+struct PackFigures {
+  C nominal{0};      ///< V
+  C capacity_as{0};  ///< A s
+  C resistance{0};   ///< ohm
+  C idle{0};         ///< W
+};
+
+template <class S>
+struct PackSite {
+  S open_scale;  ///< V for unit relative cell voltage
+  S resistance;  ///< ohm
+};
+
+template <class S>
+struct PackState {
+  S charge{};   ///< 0..1
+  S voltage{};  ///< V at the terminals
+  S current{};  ///< A, positive out of the pack
+};
+
+/// Relative open-circuit voltage over charge above 5 %: the polynomial of a lithium-ion cell (Chen and Rincon-Mora, IEEE
+/// Trans. Energy Conv. 21(2) 2006) over its value at 60 %, with the exponential knee as a rational function.
+template <class S>
+inline S open_voltage(const S& charge) noexcept {
+  using C = Constant<S>;
+  const S s = max(charge, S(0));
+  // exp(-35 s) by (1 + 35 s/8)^-8
+  S k = C(1) / (s * C(35.0 / 8) + C(1));
+  k = k * k;
+  k = k * k;
+  k = k * k;
+  const S volts = C(3.685) + s * (C(0.2156) - s * (C(0.1178) - s * C(0.3201))) - k * C(1.031);
+  return volts * C(1.0 / 3.8411);
+}
+
+/// Terminals under `power` W for a step: V = E - I R with V I = power; more power than the pack can give is not given.
+template <class S>
+inline void draw(const PackFigures<Constant<S>>& pack, const PackSite<S>& site, const S& power, Constant<S> dt,
+                 PackState<S>& state) noexcept {
+  using C = Constant<S>;
+  const S open = open_voltage(state.charge) * site.open_scale;
+  const S root = sqrt(max(open * open - site.resistance * power * C(4), S(0)));
+  state.current = (open - root) * (C(0.5) / site.resistance);
+  state.voltage = open - state.current * site.resistance;
+  state.charge = max(min(state.charge - state.current * (dt / pack.capacity_as), S(C(1))), S(0));
+}
+
+}  // namespace pastern::stub

@@ -1,0 +1,181 @@
+// One step of the body: inertia and bias, drives and end stops, contacts, solve, integrate (semi-implicit Euler, first
+// order). The trunk's velocity is kept in world axes, so that linear momentum has no drift of its own.
+#pragma once
+
+#include "hal_stub/dynamics/contact.h"
+#include "hal_stub/dynamics/solve.h"
+
+namespace pastern::stub {
+
+/// Everything outside the body that acts in a step.
+template <class S>
+struct Surroundings {
+  Ground<S> ground;
+  TrunkFigures<S> trunk;
+  Vec3<S> push{S(0), S(0), S(0)};  ///< force on the trunk's centre of mass, world axes, N
+};
+
+template <class S>
+inline void add_loads(const Tree<Constant<S>>& tree, const BodyState<S>& state, const Loads<S>& loads,
+                      Constant<S> dt, Work<S>& work) noexcept {
+  const S zero(0);
+  const Constant<S> along = tree.stop_stiffness * dt + tree.stop_damping;
+  for (int l = 0; l < tree.leg_count; ++l) {
+    const auto n = static_cast<std::size_t>(l);
+    const int count = tree.leg[n].joint_count;
+    for (int i = 0; i < count; ++i) {
+      const auto k = static_cast<std::size_t>(i);
+      const auto& joint = tree.leg[n].joint[k];
+      const S& angle = state.angle[n][k];
+      const S over = max(angle - joint.angle_max, zero) + min(angle - joint.angle_min, zero);
+      const S along_here = select(abs(over) > zero, S(along), zero);
+      LegWork<S>& leg = work.leg[n];
+      leg.force[k] = leg.force[k] + loads[n][k].torque - over * tree.stop_stiffness - along_here * state.speed[n][k];
+      leg.inertia[i][i] = leg.inertia[i][i] + loads[n][k].inertia + along_here * dt;
+    }
+  }
+}
+
+template <class S>
+inline void add_push(const Surroundings<S>& around, Work<S>& work) noexcept {
+  const Vec3<S> f = turn_back(work.body, around.push);
+  const Vec3<S> m = cross(around.trunk.centre, f);
+  const S more[6] = {m.x, m.y, m.z, f.x, f.y, f.z};
+  for (int i = 0; i < 6; ++i) work.force[i] = work.force[i] + more[i];
+}
+
+/// Where the ground lies, seen from the trunk.
+template <class S>
+struct Below {
+  Vec3<S> normal;  ///< trunk axes
+  S height;        ///< of the trunk's origin, along the normal
+};
+
+/// One point of a leg that moves with its first K joints.
+template <int K, class S>
+inline void press_point(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
+                        const Vec3<S>& centre, Constant<S> radius, const BodyState<S>& state, std::size_t l,
+                        std::size_t point, Constant<S> dt, Work<S>& work) noexcept {
+  const S depth = S(radius) - below.height - dot(below.normal, centre);
+  if (!any(depth > S(0))) return;
+  LegWork<S>& leg = work.leg[l];
+  const Vec3<S> r = centre - below.normal * S(radius);
+  std::array<Vec3<S>, K> arm;
+  arms_of<K>(leg, r, arm);
+  const Vec3<S> velocity = velocity_at<K>(work, state.rate, r, arm, state.speed[l]);
+  const Touch<S> touch =
+      touch_of(ground, below.normal, tree.stick_speed, dt, depth, velocity, state.grip.leg[l][point]);
+  press_leg<K>(touch, below.normal, r, arm, dt, leg);
+  press_trunk(touch, below.normal, r, dt, work);
+}
+
+template <int K, class S>
+inline void grip_point(const Ground<S>& ground, const Below<S>& below, const Vec3<S>& centre, Constant<S> radius,
+                       std::size_t l, std::size_t point, Constant<S> dt, const Work<S>& work,
+                       BodyState<S>& state) noexcept {
+  const S depth = S(radius) - below.height - dot(below.normal, centre);
+  S& grip = state.grip.leg[l][point];
+  if (!any(depth > S(0))) {
+    grip = S(0);
+    return;
+  }
+  const LegWork<S>& leg = work.leg[l];
+  const Vec3<S> r = centre - below.normal * S(radius);
+  std::array<Vec3<S>, K> arm;
+  arms_of<K>(leg, r, arm);
+  PerChain<S> speed = state.speed[l];
+  for (std::size_t i = 0; i < K; ++i) speed[i] = speed[i] + leg.acceleration[i] * dt;
+  const auto* a = work.acceleration;
+  const Vec3<S> turning{a[0], a[1], a[2]};
+  const Vec3<S> moving{a[3], a[4], a[5]};
+  const Vec3<S> after = velocity_at<K>(work, state.rate + turning * S(dt), r, arm, speed) + moving * S(dt);
+  grip = grip_after(ground, dt, depth, dot(after, below.normal));
+}
+
+/// Foot and knee of every leg: `press` (before solving) or `grip` (after).
+template <bool kPress, class S>
+inline void touch_legs(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below, Constant<S> dt,
+                       BodyState<S>& state, Work<S>& work) noexcept {
+  for (int l = 0; l < tree.leg_count; ++l) {
+    const auto n = static_cast<std::size_t>(l);
+    const auto& leg = tree.leg[n];
+    for_chain(leg.joint_count, [&]<int K>() {
+      const Vec3<S>& knee = work.leg[n].place[K - 1];
+      if constexpr (kPress) {
+        press_point<K>(tree, ground, below, work.leg[n].foot, leg.foot_radius, state, n, 0, dt, work);
+        if (leg.knee) press_point<K>(tree, ground, below, knee, leg.knee_radius, state, n, 1, dt, work);
+      } else {
+        grip_point<K>(ground, below, work.leg[n].foot, leg.foot_radius, n, 0, dt, work, state);
+        if (leg.knee) grip_point<K>(ground, below, knee, leg.knee_radius, n, 1, dt, work, state);
+      }
+    });
+  }
+}
+
+/// Mask: a corner of the trunk may touch.
+template <class S>
+inline auto trunk_near(const Tree<Constant<S>>& tree, const Below<S>& below) noexcept {
+  const S reach = abs(below.normal.x) * tree.half_size.x + abs(below.normal.y) * tree.half_size.y +
+                  abs(below.normal.z) * tree.half_size.z;
+  return below.height < reach;
+}
+
+template <bool kPress, class S>
+inline void touch_trunk(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below, Constant<S> dt,
+                        BodyState<S>& state, Work<S>& work) noexcept {
+  if (!any(trunk_near(tree, below))) {
+    if constexpr (!kPress) state.grip.corner.fill(S(0));
+    return;
+  }
+  const auto* a = work.acceleration;
+  for (std::size_t c = 0; c < kTrunkCorners; ++c) {
+    const Vec3<S> r = spread<S>(tree.corner[c]);
+    const S depth = S(0) - below.height - dot(below.normal, r);
+    const Vec3<S> velocity = work.velocity + cross(state.rate, r);
+    if constexpr (kPress) {
+      if (!any(depth > S(0))) continue;
+      const Touch<S> touch =
+          touch_of(ground, below.normal, tree.stick_speed, dt, depth, velocity, state.grip.corner[c]);
+      press_trunk(touch, below.normal, r, dt, work);
+    } else {
+      const Vec3<S> gain = Vec3<S>{a[3], a[4], a[5]} + cross(Vec3<S>{a[0], a[1], a[2]}, r);
+      state.grip.corner[c] = grip_after(ground, dt, depth, dot(velocity + gain * S(dt), below.normal));
+    }
+  }
+}
+
+/// New speeds, then new places with the new speeds.
+template <class S>
+inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<S>& work, BodyState<S>& state) noexcept {
+  const auto* a = work.acceleration;
+  state.rate = state.rate + Vec3<S>{a[0], a[1], a[2]} * S(dt);
+  state.velocity = state.velocity + work.body * Vec3<S>{a[3], a[4], a[5]} * S(dt);
+  state.position = state.position + state.velocity * S(dt);
+  state.attitude = turned_by(state.attitude, state.rate * S(dt));
+  for (int l = 0; l < tree.leg_count; ++l) {
+    const auto n = static_cast<std::size_t>(l);
+    for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[n].joint_count); ++i) {
+      state.speed[n][i] = state.speed[n][i] + work.leg[n].acceleration[i] * dt;
+      state.angle[n][i] = state.angle[n][i] + state.speed[n][i] * dt;
+    }
+  }
+}
+
+/// One step of `dt` seconds. `work` holds this step's accelerations afterwards ([angular; linear] of the trunk's origin
+/// in trunk axes, gravity included), which is what an IMU feels.
+template <class S>
+inline void step_body(const Tree<Constant<S>>& tree, const Surroundings<S>& around, const Loads<S>& loads,
+                      Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
+  begin_step(tree, around.trunk, state, work);
+  add_loads(tree, state, loads, dt, work);
+  add_push(around, work);
+  const Below<S> below{turn_back(work.body, around.ground.normal), dot(around.ground.normal, state.position)};
+  touch_legs<true>(tree, around.ground, below, dt, state, work);
+  touch_trunk<true>(tree, around.ground, below, dt, state, work);
+  solve(tree, work);
+  touch_legs<false>(tree, around.ground, below, dt, state, work);
+  touch_trunk<false>(tree, around.ground, below, dt, state, work);
+  integrate(tree, dt, work, state);
+}
+
+}  // namespace pastern::stub

@@ -1,0 +1,119 @@
+// Everything that varies in a simulated robot, over the scalar S, and one step of it: drives, body, heat, pack. Plain
+// numbers only, so that it can be saved as bytes.
+#pragma once
+
+#include <cstdint>
+
+#include "hal_stub/drives/drive.h"
+#include "hal_stub/dynamics/step.h"
+
+namespace pastern::stub {
+
+template <class S>
+struct RobotState {
+  BodyState<S> body;
+  DriveState<S> drives;
+  PackState<S> pack;
+};
+
+/// Constant figures of a robot in C.
+template <class C>
+struct Figures {
+  Tree<C> tree;
+  std::array<DriveFigures<C>, kMaxJoints> drive{};
+  Teeth<C> teeth;
+  PackFigures<C> pack;
+};
+
+/// What a site makes of it.
+template <class S>
+struct SiteFigures {
+  Surroundings<S> around;
+  DriveSite<S> drives;
+  PackSite<S> pack;
+};
+
+/// What the drives are told in a step; `wanted` by joint order. The drive acts on the wanted torque times `on`, minus
+/// the damping that it does by itself times `damping`; a forced torque is one that ignores commands (a fault).
+template <class S>
+struct Told {
+  PerDrive<S> wanted{};
+  PerDrive<S> forced{};  ///< added by a runaway drive, N m
+  S on{1};               ///< 0 or 1
+  S damping{0};          ///< 0 or 1
+};
+
+template <class S>
+struct RobotWork {
+  Work<S> body;
+  Loads<S> loads;
+  PerDrive<Coupling<S>> coupling;
+  S power;       ///< electrical, W
+  S mechanical;  ///< sum of |torque * joint speed|, W
+};
+
+template <class S>
+inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, const Told<S>& told,
+                         Constant<S> dt, RobotState<S>& state, RobotWork<S>& work) noexcept {
+  using C = Constant<S>;
+  const S supply = state.pack.voltage * (C(1) / figures.pack.nominal);
+  work.power = S(figures.pack.idle);
+  work.mechanical = S(0);
+  for (int l = 0; l < figures.tree.leg_count; ++l) {
+    const auto n = static_cast<std::size_t>(l);
+    const auto& leg = figures.tree.leg[n];
+    for (std::size_t i = 0; i < static_cast<std::size_t>(leg.joint_count); ++i) {
+      const auto k = static_cast<std::size_t>(leg.joint[i].order);
+      const auto& drive = figures.drive[k];
+      DriveState<S>& d = state.drives;
+      const S speed = state.body.speed[n][i];
+      const S rotor_speed = select(site.drives.half_gap[k] > S(0), d.rotor_speed[k], speed);
+      const S wanted =
+          told.wanted[k] * told.on + told.forced[k] - rotor_speed * told.damping * drive.timeout_damping;
+      const S torque = made_torque(drive, wanted, rotor_speed, supply, d.winding[k]);
+      const S real = torque * site.drives.strength[k];
+      const S amps = torque * (C(1) / drive.per_amp);
+      const S loss = amps * amps * drive.resistance * copper_ratio(d.winding[k]);
+      const S viscosity = gear_viscosity(site.drives.damping[k], site.drives.coulomb[k], rotor_speed);
+      work.loads[n][i] = load_of(drive, figures.teeth, real, viscosity, site.drives.half_gap[k],
+                                 state.body.angle[n][i], speed, d.rotor_angle[k], rotor_speed, dt, work.coupling[k]);
+      work.power = work.power + real * rotor_speed + loss;
+      work.mechanical = work.mechanical + abs(torque * speed);
+      heat(drive, loss, site.drives.ambient, dt, d.winding[k], d.housing[k]);
+      d.torque[k] = torque;
+    }
+  }
+}
+
+template <class S>
+inline void move_rotors(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, Constant<S> dt,
+                        const std::array<PerChain<S>, kMaxTreeLegs>& speed_before, RobotState<S>& state,
+                        const RobotWork<S>& work) noexcept {
+  for (int l = 0; l < figures.tree.leg_count; ++l) {
+    const auto n = static_cast<std::size_t>(l);
+    const auto& leg = figures.tree.leg[n];
+    for (std::size_t i = 0; i < static_cast<std::size_t>(leg.joint_count); ++i) {
+      const auto k = static_cast<std::size_t>(leg.joint[i].order);
+      DriveState<S>& d = state.drives;
+      const Coupling<S>& c = work.coupling[k];
+      const S gain = state.body.speed[n][i] - speed_before[n][i];  // dt * joint acceleration
+      const S speed = d.rotor_speed[k] + (c.rotor_force * dt + c.mesh * gain) * c.rotor_inverse;
+      const auto loose = site.drives.half_gap[k] > S(0);
+      d.rotor_speed[k] = select(loose, speed, state.body.speed[n][i]);
+      d.rotor_angle[k] = select(loose, d.rotor_angle[k] + speed * dt, state.body.angle[n][i]);
+    }
+  }
+}
+
+/// One step of everything that moves, warms or runs down.
+template <class S>
+inline void step_robot(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, const Told<S>& told,
+                       Constant<S> dt, RobotState<S>& state, RobotWork<S>& work) noexcept {
+  drive_joints(figures, site, told, dt, state, work);
+  const auto speed_before = state.body.speed;
+  step_body(figures.tree, site.around, work.loads, dt, state.body, work.body);
+  move_rotors(figures, site, dt, speed_before, state, work);
+  draw(figures.pack, site.pack, work.power, dt, state.pack);
+}
+
+}  // namespace pastern::stub

@@ -1,0 +1,87 @@
+// One simulated robot: body, ground, drives, pack, sensors. Not thread-safe; one object a thread. After construction
+// nothing allocates. Random numbers are a pure function of (seed, draw, tick since placed): same calls, same bits.
+//
+// Use from training and rehearsal:
+//   const auto model = Model::make(robot_file.robot(), error);           // constant, shared by all threads
+//   Site site = nominal_site(*model);  site.friction = 0.5; ...           // or site_of(scenario, *model)
+//   SimulatedRobot robot(model, site, seed);                              // allocates; then again and again:
+//   robot.renew(site, seed);                                              // a fresh robot (cold, full) at another site
+//   robot.place_standing(draw);                                           // in stance on the start mark, torque on hold
+//   for (each tick) {
+//     if (robot.read(frame)) ... estimator, policy, PD, gate ...          // frame: what real sensors would say
+//     robot.command(torques, true);
+//     robot.step();                                                       // one period of the cycle (1/cycle_hz)
+//     if (robot.truth().fallen) break;
+//   }
+#pragma once
+
+#include <cstdint>
+#include <memory>
+#include <string>
+
+#include "hal_stub/robot/model.h"
+#include "hal_stub/robot/robot_state.h"
+#include "hal_stub/robot/site.h"
+#include "safety/frames.h"
+
+namespace pastern::stub {
+
+/// What is really so, in SI units and world axes unless said otherwise. Never reaches the onboard program.
+struct Truth {
+  std::array<double, 4> attitude_wxyz{1, 0, 0, 0};  ///< body to world
+  std::array<double, 3> position_m{};               ///< of the trunk frame's origin
+  std::array<double, 3> velocity_m_per_s{};         ///< of that point
+  std::array<double, 3> rate_rad_per_s{};           ///< body axes
+  double roll_rad{0};
+  double pitch_rad{0};
+  double yaw_rad{0};
+  double tilt_rad{0};    ///< angle of the body's z axis from vertical
+  double height_m{0};    ///< of the trunk frame's origin over the ground below it
+  bool other_contact{false};  ///< a part other than a foot touches the ground
+  bool fallen{false};  ///< tilt over 34 degrees, height under half the stance's, or other_contact (settings of the return)
+  double power_w{0};   ///< sum of |torque * joint speed|
+};
+
+class SimulatedRobot {
+ public:
+  SimulatedRobot(std::shared_ptr<const Model> model, const Site& site, std::uint64_t seed);
+
+  /// A new robot at another site: clock at zero, pack and windings as the site says, lying on its mark. No allocation
+  /// unless the site's delays are longer than any before.
+  void renew(const Site& site, std::uint64_t seed);
+
+  /// On the start mark in the stance, feet on the ground, at rest, drives holding nothing. Heat, charge and clock stay.
+  /// The scatter (each joint, heading) and the push of this walk are drawn from `draw`.
+  void place_standing(std::uint64_t draw);
+  /// The same, lying in the parked pose; the push then comes after the robot has had time to rise.
+  void place_lying(std::uint64_t draw);
+
+  /// Sent now; the drives act on it after the bus's delay. Non-finite torque counts as zero.
+  void command(const safety::Torques<>& torque, bool torque_on);
+  /// One period of the cycle. Without a command for `drive_timeout_s` the drives damp, 0.5 s later they let go.
+  void step();
+  /// Newest frame. False when there is none since the last call (lost frames); `frame` is then unchanged.
+  [[nodiscard]] bool read(safety::SensorFrame& frame);
+  /// The bus's own state: false while a BUS_BROKEN fault lasts.
+  [[nodiscard]] bool bus_sound() const;
+
+  [[nodiscard]] Truth truth() const;
+  [[nodiscard]] bool fallen() const;  ///< cheaper than truth().fallen
+  [[nodiscard]] double time_s() const;
+  [[nodiscard]] const Model& model() const { return *model_; }
+  [[nodiscard]] const Site& site() const { return site_; }
+  [[nodiscard]] const RobotState<double>& state() const { return state_; }
+  [[nodiscard]] RobotState<double>& state() { return state_; }  ///< for tests that start from a state of their own
+
+  /// All that varies, as bytes; restore gives a robot that goes on with the same bits. Restore refuses bytes of another
+  /// version, robot, length or with a wrong checksum, and then changes nothing.
+  [[nodiscard]] std::string save() const;
+  [[nodiscard]] bool restore(const std::string& bytes, std::string& error);
+
+ private:
+  std::shared_ptr<const Model> model_;
+  Site site_;
+  RobotState<double> state_;
+};
+
+}  // namespace pastern::stub

@@ -1,0 +1,61 @@
+// A site: what is true of a robot and a place on one day. Plain figures; a scenario file, or a draw of training, fills
+// it in. No heap.
+#pragma once
+
+#include <array>
+#include <cstdint>
+
+#include "pastern/v1/scenario.pb.h"
+#include "safety/units.h"
+
+namespace pastern::stub {
+
+class Model;
+
+inline constexpr int kMaxFaults = 32;
+
+/// A fault with its times in seconds since the simulated robot was switched on.
+struct Fault {
+  v1::Fault::Kind kind{v1::Fault::KIND_NOT_SAID};
+  int joint{-1};  ///< -1: every joint, or not a joint's
+  double begins_s{0};
+  double ends_s{0};
+  double size{0};
+};
+
+struct Site {
+  double load_kg{0};
+  std::array<double, 3> load_at_m{};  ///< trunk frame
+  double pack_voltage_ratio{1};       ///< of nominal, at rest, at the start
+  double pack_resistance_ratio{1};
+  double friction{0.8};
+  double slope_rad{0};  ///< positive: upward along the lane
+  double ground_stiffness_n_per_m{24000};
+  double ground_damping_n_s_per_m{400};
+  double command_delay_s{0.002};
+  double command_jitter_s{0};  ///< a command is late by delay + jitter * uniform(0, 1)
+  double sensor_delay_s{0};
+  double push_m_per_s{0};  ///< sd of one change of the trunk's speed, each walk, at a random time and direction
+  double start_scatter_rad{0};
+  double ambient_c{20};
+  double winding_start_c{25};
+  std::array<double, 3> imu_tilt_rad{};  ///< mounting error about x, y, z
+  bool position_source{false};
+  double sensor_noise_ratio{1};  ///< times the robot file's noise and bias
+  std::array<double, safety::kMaxJoints> strength{};             ///< times the drive's torque
+  std::array<double, safety::kMaxJoints> damping_nm_s_per_rad{};  ///< of the joint
+  std::array<double, safety::kMaxJoints> coulomb_nm{};
+  std::array<double, safety::kMaxJoints> backlash_rad{};     ///< full width of the gap
+  std::array<double, safety::kMaxJoints> zero_offset_rad{};  ///< encoder reads this much too high
+  int fault_count{0};
+  std::array<Fault, kMaxFaults> fault{};
+};
+
+/// Everything as in the robot file: strength 1, the drives' own friction, level rubber-on-concrete floor, no pushes, no
+/// scatter.
+[[nodiscard]] Site nominal_site(const Model& model);
+
+/// The site of a checked scenario file; what the file does not name is nominal.
+[[nodiscard]] Site site_of(const v1::Scenario& scenario, const Model& model);
+
+}  // namespace pastern::stub
