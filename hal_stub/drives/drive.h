@@ -1,5 +1,5 @@
-// Drives and pack over the scalar S: torque-speed line, winding heat, rotor, gear friction, play, supply. Pure functions
-// of plain values; the constants come from the robot file (C), what varies with the site is S.
+// Drives and pack over the scalar S: torque-speed line, winding heat, rotor, gear friction, play, supply.
+// Pure functions of plain values; the constants come from the robot file (C), what varies with the site is S.
 #pragma once
 
 #include <array>
@@ -23,14 +23,14 @@ inline S copper_ratio(const S& celsius) noexcept {
 
 template <class C>
 struct DriveFigures {
-  C peak_torque{0};      ///< N m at the joint
-  C no_load_speed{0};    ///< rad/s at nominal voltage
-  C rotor_inertia{0};    ///< kg m2 at the joint
-  C per_amp{0};          ///< N m/A
-  C resistance{0};       ///< ohm at 25 deg C
-  C winding_per_j{0};    ///< K/J
+  C peak_torque{0};    ///< N m at the joint
+  C no_load_speed{0};  ///< rad/s at nominal voltage
+  C rotor_inertia{0};  ///< kg m2 at the joint
+  C per_amp{0};        ///< N m/A
+  C resistance{0};     ///< ohm at 25 deg C
+  C winding_per_j{0};  ///< K/J
   C housing_per_j{0};
-  C to_housing{0};       ///< W/K
+  C to_housing{0};  ///< W/K
   C to_air{0};
   C timeout_damping{0};  ///< N m s/rad, what the drive does by itself when commands stop
 };
@@ -56,18 +56,18 @@ struct DriveSite {
 
 template <class S>
 struct DriveState {
-  PerDrive<S> torque{};         ///< that the drive believes it makes, N m
-  PerDrive<S> rotor_angle{};    ///< at the joint side, rad; equal to the joint's without play
+  PerDrive<S> torque{};       ///< that the drive believes it makes, N m
+  PerDrive<S> rotor_angle{};  ///< at the joint side, rad; equal to the joint's without play
   PerDrive<S> rotor_speed{};
-  PerDrive<S> winding{};        ///< deg C
+  PerDrive<S> winding{};  ///< deg C
   PerDrive<S> housing{};
 };
 
-/// Torque that the drive makes of a wanted one: the line from stall to no-load speed, moved by the supply, steeper when
-/// the winding is hot. Braking is not limited by the line but by the peak.
+/// Torque that the drive makes of a wanted one: the line from stall to no-load speed, moved by the supply,
+/// steeper when the winding is hot. Braking is not limited by the line but by the peak.
 template <class S>
-inline S made_torque(const DriveFigures<Constant<S>>& drive, const S& wanted, const S& speed, const S& supply_ratio,
-                     const S& winding) noexcept {
+inline S made_torque(const DriveFigures<Constant<S>>& drive, const S& wanted, const S& speed,
+                     const S& supply_ratio, const S& winding) noexcept {
   using C = Constant<S>;
   const S relative = speed * (C(1) / drive.no_load_speed);
   const S warm = C(drive.peak_torque) * (C(1) / copper_ratio(winding));
@@ -91,11 +91,12 @@ struct Coupling {
   S mesh;           ///< dt * viscosity of the teeth, zero in the gap
 };
 
-/// Rotor, friction and teeth of one joint, the rotor eliminated from the step: without a gap it sits on the joint.
+/// Rotor, friction and teeth of one joint, the rotor eliminated from the step: without a gap it sits on the
+/// joint.
 template <class S>
-inline JointLoad<S> load_of(const DriveFigures<Constant<S>>& drive, const Teeth<Constant<S>>& teeth, const S& torque,
-                            const S& viscosity, const S& half_gap, const S& angle, const S& speed,
-                            const S& rotor_angle, const S& rotor_speed, Constant<S> dt,
+inline JointLoad<S> load_of(const DriveFigures<Constant<S>>& drive, const Teeth<Constant<S>>& teeth,
+                            const S& torque, const S& viscosity, const S& half_gap, const S& angle,
+                            const S& speed, const S& rotor_angle, const S& rotor_speed, Constant<S> dt,
                             Coupling<S>& coupling) noexcept {
   using C = Constant<S>;
   const S zero(0);
@@ -116,8 +117,8 @@ inline JointLoad<S> load_of(const DriveFigures<Constant<S>>& drive, const Teeth<
 
 /// Two nodes, winding and housing (first order each), explicit step; `loss` in W.
 template <class S>
-inline void heat(const DriveFigures<Constant<S>>& drive, const S& loss, const S& ambient, Constant<S> dt, S& winding,
-                 S& housing) noexcept {
+inline void heat(const DriveFigures<Constant<S>>& drive, const S& loss, const S& ambient, Constant<S> dt,
+                 S& winding, S& housing) noexcept {
   const S inward = (winding - housing) * drive.to_housing;
   const S outward = (housing - ambient) * drive.to_air;
   winding = winding + (loss - inward) * (drive.winding_per_j * dt);
@@ -145,8 +146,9 @@ struct PackState {
   S current{};  ///< A, positive out of the pack
 };
 
-/// Relative open-circuit voltage over charge above 5 %: the polynomial of a lithium-ion cell (Chen and Rincon-Mora, IEEE
-/// Trans. Energy Conv. 21(2) 2006) over its value at 60 %, with the exponential knee as a rational function.
+/// Relative open-circuit voltage over charge above 5 %: the polynomial of a lithium-ion cell (Chen and
+/// Rincon-Mora, IEEE Trans. Energy Conv. 21(2) 2006) over its value at 60 %, with the exponential knee as a
+/// rational function.
 template <class S>
 inline S open_voltage(const S& charge) noexcept {
   using C = Constant<S>;
@@ -160,10 +162,11 @@ inline S open_voltage(const S& charge) noexcept {
   return volts * C(1.0 / 3.8411);
 }
 
-/// Terminals under `power` W for a step: V = E - I R with V I = power; more power than the pack can give is not given.
+/// Terminals under `power` W for a step: V = E - I R with V I = power; more power than the pack can give is
+/// not given.
 template <class S>
-inline void draw(const PackFigures<Constant<S>>& pack, const PackSite<S>& site, const S& power, Constant<S> dt,
-                 PackState<S>& state) noexcept {
+inline void draw(const PackFigures<Constant<S>>& pack, const PackSite<S>& site, const S& power,
+                 Constant<S> dt, PackState<S>& state) noexcept {
   using C = Constant<S>;
   const S open = open_voltage(state.charge) * site.open_scale;
   const S root = sqrt(max(open * open - site.resistance * power * C(4), S(0)));

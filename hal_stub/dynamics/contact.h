@@ -1,6 +1,6 @@
-// Ground contact of points, linearly implicit: the normal force at the end of the step is k (d - dt vn') - c vn', the
-// friction force -b vt' with b = mu N / max(|vt|, stick speed) and N of the step before. Both enter the matrix through
-// each point's own Jacobian, so the arrow stays; stable far beyond the explicit limit.
+// Ground contact of points, linearly implicit: the normal force at the end of the step is k (d - dt vn') - c
+// vn', the friction force -b vt' with b = mu N / max(|vt|, stick speed) and N of the step before. Both enter
+// the matrix through each point's own Jacobian, so the arrow stays; stable far beyond the explicit limit.
 #pragma once
 
 #include "hal_stub/dynamics/motion.h"
@@ -16,7 +16,8 @@ struct Ground {
   S damping{S(400)};      ///< N s/m
 };
 
-/// What a point does in this step: force f = push - B v', B = along n n' + across (1 - n n'), all zero when it is free.
+/// What a point does in this step: force f = push - B v', B = along n n' + across (1 - n n'), all zero when
+/// it is free.
 template <class S>
 struct Touch {
   Vec3<S> force;  ///< with this step's velocity
@@ -26,8 +27,8 @@ struct Touch {
 
 /// `grip`: normal force of the step before.
 template <class S>
-inline Touch<S> touch_of(const Ground<S>& ground, const Vec3<S>& normal, Constant<S> stick_speed, Constant<S> dt,
-                         const S& depth, const Vec3<S>& velocity, const S& grip) noexcept {
+inline Touch<S> touch_of(const Ground<S>& ground, const Vec3<S>& normal, Constant<S> stick_speed,
+                         Constant<S> dt, const S& depth, const Vec3<S>& velocity, const S& grip) noexcept {
   using C = Constant<S>;
   const S along = ground.stiffness * dt + ground.damping;
   const S normal_speed = dot(velocity, normal);
@@ -108,7 +109,8 @@ inline void press_leg(const Touch<S>& touch, const Vec3<S>& normal, const Vec3<S
     const auto n = static_cast<std::size_t>(i);
     const Vec3<S> w = resisted(touch, normal, arm[n]) * S(dt);
     leg.force[n] = leg.force[n] + dot(arm[n], touch.force);
-    for (int j = 0; j <= i; ++j) leg.inertia[i][j] = leg.inertia[i][j] + dot(arm[static_cast<std::size_t>(j)], w);
+    for (int j = 0; j <= i; ++j)
+      leg.inertia[i][j] = leg.inertia[i][j] + dot(arm[static_cast<std::size_t>(j)], w);
     leg.turning[n] = leg.turning[n] + cross(r, w);
     leg.moving[n] = leg.moving[n] + w;
   }

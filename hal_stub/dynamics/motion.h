@@ -1,8 +1,8 @@
-// State of a body, and its joint-space inertia and bias forces by composite bodies, all written in trunk axes about the
-// trunk frame's origin. The trunk's six coordinates are [angular; linear acceleration of that origin], so a joint's
-// column of the coupling is the momentum of the composite body beyond it for unit joint speed.
-// Source of the method: Featherstone, Rigid Body Dynamics Algorithms (2008), ch. 5 and 6 (from memory); the bias by
-// Newton-Euler with the trunk's acceleration set to minus gravity.
+// State of a body, and its joint-space inertia and bias forces by composite bodies, all written in trunk axes
+// about the trunk frame's origin. The trunk's six coordinates are [angular; linear acceleration of that
+// origin], so a joint's column of the coupling is the momentum of the composite body beyond it for unit joint
+// speed. Source of the method: Featherstone, Rigid Body Dynamics Algorithms (2008), ch. 5 and 6 (from
+// memory); the bias by Newton-Euler with the trunk's acceleration set to minus gravity.
 #pragma once
 
 #include <array>
@@ -36,9 +36,9 @@ struct BodyState {
 template <class S>
 struct LegWork {
   std::array<Vec3<S>, kMaxChain> axis;
-  std::array<Vec3<S>, kMaxChain> place;  ///< of the joints
-  Vec3<S> foot;                          ///< centre of the foot's ball
-  S inertia[kMaxChain][kMaxChain];       ///< lower triangle
+  std::array<Vec3<S>, kMaxChain> place;    ///< of the joints
+  Vec3<S> foot;                            ///< centre of the foot's ball
+  S inertia[kMaxChain][kMaxChain];         ///< lower triangle
   std::array<Vec3<S>, kMaxChain> turning;  ///< coupling to the trunk, angular
   std::array<Vec3<S>, kMaxChain> moving;   ///< linear
   PerChain<S> force;                       ///< right-hand side: what accelerates the joint, N m
@@ -50,17 +50,17 @@ struct LegWork {
 /// Scratch of one step, allocated once by whoever steps.
 template <class S>
 struct Work {
-  Rotation<S> body;   ///< trunk to world
-  Vec3<S> velocity;   ///< of the trunk's origin, trunk axes
-  Vec3<S> gravity;    ///< trunk axes, m/s2
+  Rotation<S> body;  ///< trunk to world
+  Vec3<S> velocity;  ///< of the trunk's origin, trunk axes
+  Vec3<S> gravity;   ///< trunk axes, m/s2
   std::array<LegWork<S>, kMaxTreeLegs> leg;
   S inertia[6][6];    ///< of the trunk with all legs, lower triangle
   S force[6];         ///< right-hand side, [moment about the origin; force]
   S acceleration[6];  ///< [angular; linear], trunk axes
 };
 
-/// What the drives do to a joint in a step: torque now, and what the step's own change of speed adds to the diagonal
-/// (rotor inertia + dt * viscosity).
+/// What the drives do to a joint in a step: torque now, and what the step's own change of speed adds to the
+/// diagonal (rotor inertia + dt * viscosity).
 template <class S>
 struct JointLoad {
   S torque;
@@ -90,7 +90,8 @@ inline void add(Heap<S>& sum, const Heap<S>& more) noexcept {
 
 /// The rotation `r` followed by a turn about the joint's axis in its own frame.
 template <class S>
-inline Rotation<S> turned(const Rotation<S>& r, const JointFigures<Constant<S>>& joint, const SinCos<S>& a) noexcept {
+inline Rotation<S> turned(const Rotation<S>& r, const JointFigures<Constant<S>>& joint,
+                          const SinCos<S>& a) noexcept {
   const S c = a.cos;
   const S s = a.sin * joint.sign;
   switch (joint.kind) {
@@ -133,8 +134,9 @@ inline Sym3<S> turned_inertia(const Rotation<S>& r, const LinkFigures<Constant<S
   const auto& m = link.inertia;
   const Vec3<S> x = r.x * S(m.xx - m.zz);
   const Vec3<S> y = r.y * S(m.yy - m.zz);
-  Sym3<S> sum{m.zz + x.x * r.x.x + y.x * r.y.x, m.zz + x.y * r.x.y + y.y * r.y.y, m.zz + x.z * r.x.z + y.z * r.y.z,
-              x.x * r.x.y + y.x * r.y.y,        x.x * r.x.z + y.x * r.y.z,        x.y * r.x.z + y.y * r.y.z};
+  Sym3<S> sum{m.zz + x.x * r.x.x + y.x * r.y.x, m.zz + x.y * r.x.y + y.y * r.y.y,
+              m.zz + x.z * r.x.z + y.z * r.y.z, x.x * r.x.y + y.x * r.y.y,
+              x.x * r.x.z + y.x * r.y.z,        x.y * r.x.z + y.y * r.y.z};
   if (link.skewed) {
     const Vec3<S> a = turn(r, Vec3<Constant<S>>{0, m.xy, m.xz});
     const Vec3<S> b = turn(r, Vec3<Constant<S>>{m.xy, 0, m.yz});
@@ -149,7 +151,8 @@ inline Sym3<S> turned_inertia(const Rotation<S>& r, const LinkFigures<Constant<S
   return sum;
 }
 
-/// A link at `centre` with central inertia `inertia`, moving with acceleration `linear` of its centre of mass.
+/// A link at `centre` with central inertia `inertia`, moving with acceleration `linear` of its centre of
+/// mass.
 template <class S, class M>
 inline Heap<S> heap_of(const M& mass, const Vec3<S>& centre, const Sym3<S>& inertia, const Vec3<S>& rate,
                        const Vec3<S>& angular, const Vec3<S>& linear) noexcept {
@@ -252,7 +255,8 @@ inline void for_chain(int joint_count, F&& f) noexcept {
   }
 }
 
-/// Inertia about the trunk's origin as a 6x6 in [angular; linear], lower triangle, and the bias on the right-hand side.
+/// Inertia about the trunk's origin as a 6x6 in [angular; linear], lower triangle, and the bias on the
+/// right-hand side.
 template <class S>
 inline void spread_total(const Heap<S>& total, Work<S>& work) noexcept {
   const auto& j = total.inertia;
@@ -295,7 +299,8 @@ struct TrunkFigures {
   Sym3<S> inertia;  ///< about its centre of mass
 };
 
-/// Fills `work` for this state: inertia, coupling, bias with gravity. Loads and contacts are added afterwards.
+/// Fills `work` for this state: inertia, coupling, bias with gravity. Loads and contacts are added
+/// afterwards.
 template <class S>
 inline void begin_step(const Tree<Constant<S>>& tree, const TrunkFigures<S>& trunk, const BodyState<S>& state,
                        Work<S>& work) noexcept {

@@ -1,13 +1,15 @@
-// The operations that the simulated robot asks of its scalar type S, here for double and float. A lane type brings its
-// own in its own namespace, found by argument-dependent lookup. No branch depends on an S but through any().
+// The operations that the simulated robot asks of its scalar type S, here for double and float. A lane type
+// brings its own in its own namespace, found by argument-dependent lookup. No branch depends on an S but
+// through any().
 #pragma once
 
 #include <cmath>
 
 namespace pastern::stub {
 
-/// Which operations: + - * / with S and with its Constant, unary -, comparison < and > giving a mask, select, any, min,
-/// max, abs, sqrt, round_even, and & | ! of masks. Constant is the plain number type that model figures are stored in.
+/// Which operations: + - * / with S and with its Constant, unary -, comparison < and > giving a mask, select,
+/// any, min, max, abs, sqrt, round_even, and & | ! of masks. Constant is the plain number type that model
+/// figures are stored in.
 template <class S>
 struct ScalarTraits {
   using Constant = typename S::Constant;
@@ -35,7 +37,8 @@ inline float abs(float a) noexcept { return std::fabs(a); }
 inline double sqrt(double a) noexcept { return std::sqrt(a); }
 inline float sqrt(float a) noexcept { return std::sqrt(a); }
 
-/// Nearest whole number, ties to even, for |a| < 2^51 (2^22): adding 1.5 * 2^52 leaves no bits for the fraction.
+/// Nearest whole number, ties to even, for |a| < 2^51 (2^22): adding 1.5 * 2^52 leaves no bits for the
+/// fraction.
 inline double round_even(double a) noexcept { return (a + 6755399441055744.0) - 6755399441055744.0; }
 inline float round_even(float a) noexcept { return (a + 12582912.0F) - 12582912.0F; }
 
@@ -44,7 +47,8 @@ template <class S>
 inline S less_turns(const S& angle, const S& turns) noexcept {
   using C = Constant<S>;
   if constexpr (sizeof(C) == sizeof(float)) {
-    return ((angle - turns * C(3.140625)) - turns * C(9.67502593994140625e-4)) - turns * C(1.5099579909783e-7);
+    return ((angle - turns * C(3.140625)) - turns * C(9.67502593994140625e-4)) -
+           turns * C(1.5099579909783e-7);
   } else {
     return (angle - turns * C(3.14159265346825122834)) - turns * C(1.21542010130123844986e-10);
   }
@@ -56,8 +60,9 @@ struct SinCos {
   S cos;
 };
 
-/// Sine and cosine by reduction to half a turn about zero and the Taylor series, without a branch. Absolute error under
-/// 3e-16 for |angle| < 100 in double: the first left-out terms are (pi/2)^23/23! = 1.3e-18 and (pi/2)^22/22! = 1.9e-17.
+/// Sine and cosine by reduction to half a turn about zero and the Taylor series, without a branch. Absolute
+/// error under 3e-16 for |angle| < 100 in double: the first left-out terms are (pi/2)^23/23! = 1.3e-18 and
+/// (pi/2)^22/22! = 1.9e-17.
 template <class S>
 inline SinCos<S> sin_cos(const S& angle) noexcept {
   using C = Constant<S>;

@@ -1,5 +1,6 @@
-// Block-arrow elimination: each leg's small block is factored (L D L'), its Schur complement taken from the trunk's 6x6,
-// which is factored in turn; then the legs' accelerations follow. No pivots: the matrix is positive definite.
+// Block-arrow elimination: each leg's small block is factored (L D L'), its Schur complement taken from the
+// trunk's 6x6, which is factored in turn; then the legs' accelerations follow. No pivots: the matrix is
+// positive definite.
 #pragma once
 
 #include "hal_stub/dynamics/motion.h"

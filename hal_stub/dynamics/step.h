@@ -1,5 +1,6 @@
-// One step of the body: inertia and bias, drives and end stops, contacts, solve, integrate (semi-implicit Euler, first
-// order). The trunk's velocity is kept in world axes, so that linear momentum has no drift of its own.
+// One step of the body: inertia and bias, drives and end stops, contacts, solve, integrate (semi-implicit
+// Euler, first order). The trunk's velocity is kept in world axes, so that linear momentum has no drift of
+// its own.
 #pragma once
 
 #include "hal_stub/dynamics/contact.h"
@@ -30,7 +31,8 @@ inline void add_loads(const Tree<Constant<S>>& tree, const BodyState<S>& state, 
       const S over = max(angle - joint.angle_max, zero) + min(angle - joint.angle_min, zero);
       const S along_here = select(abs(over) > zero, S(along), zero);
       LegWork<S>& leg = work.leg[n];
-      leg.force[k] = leg.force[k] + loads[n][k].torque - over * tree.stop_stiffness - along_here * state.speed[n][k];
+      leg.force[k] =
+          leg.force[k] + loads[n][k].torque - over * tree.stop_stiffness - along_here * state.speed[n][k];
       leg.inertia[i][i] = leg.inertia[i][i] + loads[n][k].inertia + along_here * dt;
     }
   }
@@ -70,9 +72,9 @@ inline void press_point(const Tree<Constant<S>>& tree, const Ground<S>& ground, 
 }
 
 template <int K, class S>
-inline void grip_point(const Ground<S>& ground, const Below<S>& below, const Vec3<S>& centre, Constant<S> radius,
-                       std::size_t l, std::size_t point, Constant<S> dt, const Work<S>& work,
-                       BodyState<S>& state) noexcept {
+inline void grip_point(const Ground<S>& ground, const Below<S>& below, const Vec3<S>& centre,
+                       Constant<S> radius, std::size_t l, std::size_t point, Constant<S> dt,
+                       const Work<S>& work, BodyState<S>& state) noexcept {
   const S depth = S(radius) - below.height - dot(below.normal, centre);
   S& grip = state.grip.leg[l][point];
   if (!any(depth > S(0))) {
@@ -94,8 +96,8 @@ inline void grip_point(const Ground<S>& ground, const Below<S>& below, const Vec
 
 /// Foot and knee of every leg: `press` (before solving) or `grip` (after).
 template <bool kPress, class S>
-inline void touch_legs(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below, Constant<S> dt,
-                       BodyState<S>& state, Work<S>& work) noexcept {
+inline void touch_legs(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
+                       Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
     const auto& leg = tree.leg[n];
@@ -121,8 +123,8 @@ inline auto trunk_near(const Tree<Constant<S>>& tree, const Below<S>& below) noe
 }
 
 template <bool kPress, class S>
-inline void touch_trunk(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below, Constant<S> dt,
-                        BodyState<S>& state, Work<S>& work) noexcept {
+inline void touch_trunk(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
+                        Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
   if (!any(trunk_near(tree, below))) {
     if constexpr (!kPress) state.grip.corner.fill(S(0));
     return;
@@ -146,7 +148,8 @@ inline void touch_trunk(const Tree<Constant<S>>& tree, const Ground<S>& ground, 
 
 /// New speeds, then new places with the new speeds.
 template <class S>
-inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<S>& work, BodyState<S>& state) noexcept {
+inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<S>& work,
+                      BodyState<S>& state) noexcept {
   const auto* a = work.acceleration;
   state.rate = state.rate + Vec3<S>{a[0], a[1], a[2]} * S(dt);
   state.velocity = state.velocity + work.body * Vec3<S>{a[3], a[4], a[5]} * S(dt);
@@ -161,8 +164,8 @@ inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<
   }
 }
 
-/// One step of `dt` seconds. `work` holds this step's accelerations afterwards ([angular; linear] of the trunk's origin
-/// in trunk axes, gravity included), which is what an IMU feels.
+/// One step of `dt` seconds. `work` holds this step's accelerations afterwards ([angular; linear] of the
+/// trunk's origin in trunk axes, gravity included), which is what an IMU feels.
 template <class S>
 inline void step_body(const Tree<Constant<S>>& tree, const Surroundings<S>& around, const Loads<S>& loads,
                       Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {

@@ -1,4 +1,5 @@
-// Vectors, rotations and symmetric matrices over the scalar S, written out so that the compiler sees every product.
+// Vectors, rotations and symmetric matrices over the scalar S, written out so that the compiler sees every
+// product.
 #pragma once
 
 #include "hal_stub/dynamics/scalar.h"
@@ -120,8 +121,9 @@ inline Quat<S> operator*(const Quat<S>& a, const Quat<S>& b) noexcept {
           a.w * b.y - a.x * b.z + a.y * b.w + a.z * b.x, a.w * b.z + a.x * b.y - a.y * b.x + a.z * b.w};
 }
 
-/// q turned on by the rotation vector `v` (body axes, rad), normalised. Series of the half-angle sine and cosine, exact
-/// to 1e-13 for |v| < 0.1 rad, which is 100 rad/s at 1 ms; normalising takes the rest of the length's error.
+/// q turned on by the rotation vector `v` (body axes, rad), normalised. Series of the half-angle sine and
+/// cosine, exact to 1e-13 for |v| < 0.1 rad, which is 100 rad/s at 1 ms; normalising takes the rest of the
+/// length's error.
 template <class S>
 inline Quat<S> turned_by(const Quat<S>& q, const Vec3<S>& v) noexcept {
   using C = Constant<S>;

@@ -1,5 +1,5 @@
-// Everything that varies in a simulated robot, over the scalar S, and one step of it: drives, body, heat, pack. Plain
-// numbers only, so that it can be saved as bytes.
+// Everything that varies in a simulated robot, over the scalar S, and one step of it: drives, body, heat,
+// pack. Plain numbers only, so that it can be saved as bytes.
 #pragma once
 
 #include <cstdint>
@@ -33,8 +33,9 @@ struct SiteFigures {
   PackSite<S> pack;
 };
 
-/// What the drives are told in a step; `wanted` by joint order. The drive acts on the wanted torque times `on`, minus
-/// the damping that it does by itself times `damping`; a forced torque is one that ignores commands (a fault).
+/// What the drives are told in a step; `wanted` by joint order. The drive acts on the wanted torque times
+/// `on`, minus the damping that it does by itself times `damping`; a forced torque is one that ignores
+/// commands (a fault).
 template <class S>
 struct Told {
   PerDrive<S> wanted{};
@@ -75,8 +76,9 @@ inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<
       const S amps = torque * (C(1) / drive.per_amp);
       const S loss = amps * amps * drive.resistance * copper_ratio(d.winding[k]);
       const S viscosity = gear_viscosity(site.drives.damping[k], site.drives.coulomb[k], rotor_speed);
-      work.loads[n][i] = load_of(drive, figures.teeth, real, viscosity, site.drives.half_gap[k],
-                                 state.body.angle[n][i], speed, d.rotor_angle[k], rotor_speed, dt, work.coupling[k]);
+      work.loads[n][i] =
+          load_of(drive, figures.teeth, real, viscosity, site.drives.half_gap[k], state.body.angle[n][i],
+                  speed, d.rotor_angle[k], rotor_speed, dt, work.coupling[k]);
       work.power = work.power + real * rotor_speed + loss;
       work.mechanical = work.mechanical + abs(torque * speed);
       heat(drive, loss, site.drives.ambient, dt, d.winding[k], d.housing[k]);

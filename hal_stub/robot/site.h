@@ -1,5 +1,5 @@
-// A site: what is true of a robot and a place on one day. Plain figures; a scenario file, or a draw of training, fills
-// it in. No heap.
+// A site: what is true of a robot and a place on one day. Plain figures; a scenario file, or a draw of
+// training, fills it in. No heap.
 #pragma once
 
 #include <array>
@@ -35,14 +35,15 @@ struct Site {
   double command_delay_s{0.002};
   double command_jitter_s{0};  ///< a command is late by delay + jitter * uniform(0, 1)
   double sensor_delay_s{0};
-  double push_m_per_s{0};  ///< sd of one change of the trunk's speed, each walk, at a random time and direction
+  double push_m_per_s{
+      0};  ///< sd of one change of the trunk's speed, each walk, at a random time and direction
   double start_scatter_rad{0};
   double ambient_c{20};
   double winding_start_c{25};
   std::array<double, 3> imu_tilt_rad{};  ///< mounting error about x, y, z
   bool position_source{false};
-  double sensor_noise_ratio{1};  ///< times the robot file's noise and bias
-  std::array<double, safety::kMaxJoints> strength{};             ///< times the drive's torque
+  double sensor_noise_ratio{1};                                   ///< times the robot file's noise and bias
+  std::array<double, safety::kMaxJoints> strength{};              ///< times the drive's torque
   std::array<double, safety::kMaxJoints> damping_nm_s_per_rad{};  ///< of the joint
   std::array<double, safety::kMaxJoints> coulomb_nm{};
   std::array<double, safety::kMaxJoints> backlash_rad{};     ///< full width of the gap
@@ -51,8 +52,8 @@ struct Site {
   std::array<Fault, kMaxFaults> fault{};
 };
 
-/// Everything as in the robot file: strength 1, the drives' own friction, level rubber-on-concrete floor, no pushes, no
-/// scatter.
+/// Everything as in the robot file: strength 1, the drives' own friction, level rubber-on-concrete floor, no
+/// pushes, no scatter.
 [[nodiscard]] Site nominal_site(const Model& model);
 
 /// The site of a checked scenario file; what the file does not name is nominal.

@@ -1,0 +1,90 @@
+// Scenario file -> site.
+#include "hal_stub/robot/site.h"
+
+#include <algorithm>
+
+#include "hal_stub/robot/model.h"
+
+namespace pastern::stub {
+namespace {
+
+template <class T, class U>
+void take(bool present, const T& found, U& figure) {
+  if (present) figure = found;
+}
+
+void take_xyz(bool present, const v1::Xyz& found, std::array<double, 3>& figure) {
+  if (present) figure = {found.x(), found.y(), found.z()};
+}
+
+void take_wear(const v1::Scenario& scenario, const Model& model, Site& site) {
+  for (const auto& wear : scenario.wear()) {
+    const int index = model.joint_index(wear.joint());
+    if (index < 0) continue;
+    const auto j = static_cast<std::size_t>(index);
+    take(wear.has_strength(), wear.strength(), site.strength[j]);
+    take(wear.has_backlash_rad(), wear.backlash_rad(), site.backlash_rad[j]);
+    take(wear.has_zero_offset_rad(), wear.zero_offset_rad(), site.zero_offset_rad[j]);
+  }
+}
+
+void take_friction_of_joints(const v1::Scenario& scenario, const Model& model, Site& site) {
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
+    take(scenario.has_joint_damping_nm_s_per_rad(), scenario.joint_damping_nm_s_per_rad(),
+         site.damping_nm_s_per_rad[j]);
+    if (scenario.has_joint_damping_ratio()) site.damping_nm_s_per_rad[j] *= scenario.joint_damping_ratio();
+    take(scenario.has_joint_coulomb_nm(), scenario.joint_coulomb_nm(), site.coulomb_nm[j]);
+  }
+}
+
+void take_faults(const v1::Scenario& scenario, const Model& model, Site& site) {
+  for (const auto& fault : scenario.faults()) {
+    if (site.fault_count == kMaxFaults) break;
+    site.fault[static_cast<std::size_t>(site.fault_count++)] = {
+        fault.kind(), model.joint_index(fault.joint()), fault.begins_s(), fault.begins_s() + fault.lasts_s(),
+        fault.size()};
+  }
+}
+
+}  // namespace
+
+Site nominal_site(const Model& model) {
+  Site site;
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
+    site.strength[j] = 1;
+    site.damping_nm_s_per_rad[j] = model.damping()[j];
+    site.coulomb_nm[j] = model.coulomb()[j];
+  }
+  return site;
+}
+
+Site site_of(const v1::Scenario& scenario, const Model& model) {
+  Site site = nominal_site(model);
+  take(scenario.has_load_kg(), scenario.load_kg(), site.load_kg);
+  take_xyz(scenario.has_load_at_m(), scenario.load_at_m(), site.load_at_m);
+  take(scenario.has_pack_voltage_ratio(), scenario.pack_voltage_ratio(), site.pack_voltage_ratio);
+  take(scenario.has_pack_resistance_ratio(), scenario.pack_resistance_ratio(), site.pack_resistance_ratio);
+  take(scenario.has_friction(), scenario.friction(), site.friction);
+  take(scenario.has_slope_rad(), scenario.slope_rad(), site.slope_rad);
+  take(scenario.has_command_delay_s(), scenario.command_delay_s(), site.command_delay_s);
+  take(scenario.has_command_jitter_s(), scenario.command_jitter_s(), site.command_jitter_s);
+  take(scenario.has_sensor_delay_s(), scenario.sensor_delay_s(), site.sensor_delay_s);
+  take(scenario.has_ground_stiffness_n_per_m(), scenario.ground_stiffness_n_per_m(),
+       site.ground_stiffness_n_per_m);
+  take(scenario.has_ground_damping_n_s_per_m(), scenario.ground_damping_n_s_per_m(),
+       site.ground_damping_n_s_per_m);
+  take(scenario.has_push_m_per_s(), scenario.push_m_per_s(), site.push_m_per_s);
+  take(scenario.has_start_scatter_rad(), scenario.start_scatter_rad(), site.start_scatter_rad);
+  take(scenario.has_ambient_c(), scenario.ambient_c(), site.ambient_c);
+  site.winding_start_c = scenario.has_ambient_c() ? scenario.ambient_c() : site.winding_start_c;
+  take(scenario.has_winding_start_c(), scenario.winding_start_c(), site.winding_start_c);
+  take_xyz(scenario.has_imu_tilt_rad(), scenario.imu_tilt_rad(), site.imu_tilt_rad);
+  take(scenario.has_position_source(), scenario.position_source(), site.position_source);
+  take(scenario.has_sensor_noise_ratio(), scenario.sensor_noise_ratio(), site.sensor_noise_ratio);
+  take_friction_of_joints(scenario, model, site);
+  take_wear(scenario, model, site);
+  take_faults(scenario, model, site);
+  return site;
+}
+
+}  // namespace pastern::stub
