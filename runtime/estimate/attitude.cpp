@@ -63,17 +63,18 @@ Angles angles_of(const Eigen::Quaterniond& attitude) noexcept {
   const double x = attitude.x();
   const double y = attitude.y();
   const double z = attitude.z();
-  // Entries of the rotation matrix: sin pitch, cos pitch sin roll, cos pitch cos roll.
-  const double sine = std::clamp(2.0 * (w * y - x * z), -1.0, 1.0);
+  // Entries of the rotation matrix times the squared norm, so that a quaternion a little off one unit does no
+  // harm: sin pitch, cos pitch sin roll, cos pitch cos roll.
+  const double sine = 2.0 * (w * y - x * z);
   const double across = 2.0 * (w * x + y * z);
-  const double upward = 1.0 - 2.0 * (x * x + y * y);
+  const double upward = w * w - x * x - y * y + z * z;
   const double cosine = std::hypot(across, upward);
   if (cosine < kPole) {
     // Only roll -+ yaw can be told: q = cos, sin of half of it stand in w and x.
     return {std::remainder(2.0 * std::atan2(x, w), 2.0 * M_PI), std::copysign(M_PI / 2, sine), 0.0};
   }
   return {std::atan2(across, upward), std::atan2(sine, cosine),
-          std::atan2(2.0 * (w * z + x * y), 1.0 - 2.0 * (y * y + z * z))};
+          std::atan2(2.0 * (w * z + x * y), w * w + x * x - y * y - z * z)};
 }
 
 Eigen::Quaterniond attitude_of(const Angles& angles) noexcept {

@@ -15,7 +15,7 @@ namespace {
 
 // Regularises J J^T, m^2: a direction in which the foot moves less than this for a radian carries no torque
 // that could be measured (a straight leg; the sideways direction of a leg without abduction).
-constexpr double kLeastArm_m = 0.03;
+constexpr double kLeastArm_m = 0.015;
 
 Eigen::Vector3d vector(const v1::Xyz& xyz) { return {xyz.x(), xyz.y(), xyz.z()}; }
 

@@ -46,7 +46,10 @@ void Odometry::update(const safety::SensorFrame& frame, const Eigen::Quaterniond
   const LegView legs = look(frame, attitude, rate_rad_s, dt_s);
   const Eigen::Vector3d force(frame.acceleration.x, frame.acceleration.y, frame.acceleration.z);
   velocity_ += (attitude * force - kGravity_m_per_s2 * Eigen::Vector3d::UnitZ()) * dt_s;
-  velocity_ += legs.weight * lag(dt_s, gains_.velocity_s) * (legs.velocity_m_s - velocity_);
+  // A source of place knows of slipping feet: while it speaks, the legs tell the vertical only.
+  const bool external = external_known_ && external_age_s_ < gains_.external_stale_s;
+  const Eigen::Vector3d trust(external ? 0.0 : 1.0, external ? 0.0 : 1.0, 1.0);
+  velocity_ += legs.weight * lag(dt_s, gains_.velocity_s) * trust.cwiseProduct(legs.velocity_m_s - velocity_);
   position_ += velocity_ * dt_s;
   position_.z() += lag(dt_s, gains_.height_s) * (legs.height_m - position_.z());
   follow_external(frame, dt_s);
@@ -87,9 +90,10 @@ void Odometry::judge_stance(double lowest_m, double dt_s) noexcept {
   // lowest feet are taken to stand, as far as the push is missing.
   const double blind = 1.0 - ramp(pushed, gains_.light_share * weight_n_, gains_.firm_share * weight_n_);
   for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
-    const double low = 1.0 - ramp(foot_height_m_[i] - lowest_m, gains_.level_m, gains_.raised_m);
+    const double over = foot_height_m_[i] - lowest_m;
     const double firm = ramp(push_n_[i], gains_.light_share * weight_n_, gains_.firm_share * weight_n_);
-    stance_[i] = low * std::max(firm, blind);
+    stance_[i] = std::max(firm * (1.0 - ramp(over, 0.5 * gains_.raised_m, gains_.raised_m)),
+                          blind * (1.0 - ramp(over, 0.5 * gains_.blind_m, gains_.blind_m)));
   }
 }
 

@@ -17,8 +17,8 @@ struct OdometryGains {
   double push_s{0.006};           ///< low-pass of each foot's push
   double light_share{0.06};       ///< of the robot's weight: a foot that pushes less does not stand ...
   double firm_share{0.22};        ///< ... one that pushes more does
-  double level_m{0.015};          ///< a foot within this of the lowest may stand ...
-  double raised_m{0.045};         ///< ... one higher than this does not
+  double raised_m{0.03};          ///< a foot this much over the lowest does not stand, however it pushes
+  double blind_m{0.01};           ///< the same when no foot is known to push
   double external_s{0.08};        ///< time constant of the filter on an external place
   double external_stale_s{0.25};  ///< an external place older than this is not relied on
 };
