@@ -1,0 +1,171 @@
+// The loop, status and telemetry. Sequence numbers of telemetry rise over restarts too: they are reserved in
+// the journal by blocks, so that one is never given twice.
+#include "runtime/onboard/program.h"
+
+#include <cstdio>
+#include <ctime>
+#include <utility>
+
+namespace pastern::onboard {
+namespace {
+
+constexpr std::chrono::milliseconds kIdle{20};
+constexpr std::chrono::milliseconds kStatusEvery{200};
+constexpr std::uint64_t kBlock = 10'000;
+constexpr const char* kReservedKey = "telemetry_reserved";
+
+}  // namespace
+
+std::string now_utc() {
+  const std::time_t now = std::time(nullptr);
+  std::tm parts{};
+  gmtime_r(&now, &parts);
+  char text[32];
+  const std::size_t length = std::strftime(text, sizeof text, "%Y-%m-%dT%H:%M:%SZ", &parts);
+  return {text, length};
+}
+
+Program::Program(Parts parts)
+    : parts_(std::move(parts)), runner_(parts_.robot, parts_.mover, parts_.journal, *this) {
+  const std::optional<std::string> reserved = parts_.journal.get(kReservedKey);
+  sequence_ = reserved ? std::strtoull(reserved->c_str(), nullptr, 10) : parts_.journal.last_sequence();
+  reserved_ = sequence_;
+}
+
+void Program::run() {
+  publish_missed();
+  while (!leave()) {
+    serve();
+    rest_when_asked();
+    if (busy()) {
+      do_job();
+    } else {
+      parts_.exchange.wait(kIdle);
+    }
+  }
+  show_status(true);
+}
+
+void Program::do_job() {
+  const Job job = std::exchange(job_, Job{});
+  session::Ended ended;
+  switch (job.kind) {
+    case Job::Kind::session:
+      ended = runner_.run(*job.setup);
+      break;
+    case Job::Kind::resume:
+      ended = runner_.resume();
+      break;
+    case Job::Kind::walk:
+      ended = runner_.walk(parts_.policy, job.duration_s, job.draw);
+      break;
+    case Job::Kind::none:
+      return;
+  }
+  // A session says these things itself; a walk outside one, and what was refused, does not.
+  const bool said = job.kind != Job::Kind::walk && ended.how != session::Ended::How::refused;
+  if (!said && !ended.words.empty()) on_note(ended.words);
+  show_status(true);
+}
+
+void Program::serve() {
+  Asked asked;
+  while (parts_.exchange.take(asked)) {
+    if (const auto* command = std::get_if<v1::Command>(&asked.what)) {
+      answer(asked, *command);
+    } else {
+      answer(asked, std::get<v1::Fetch>(asked.what));
+    }
+    show_status(false);
+  }
+  if (std::chrono::steady_clock::now() - shown_ >= kStatusEvery) show_status(true);
+}
+
+bool Program::wait(const std::string& what) {
+  (void)what;  // the status says it: Runner::fill
+  show_status(false);
+  parts_.exchange.wait(kIdle);
+  serve();
+  rest_when_asked();
+  return true;
+}
+
+// At stepped pace nothing ticks while the robot rests; a stop must be seen by the gate all the same.
+void Program::rest_when_asked() {
+  if (parts_.mover.pace() != session::Pace::stepped) return;
+  const session::Signals& signals = parts_.mover.signals();
+  const bool stop =
+      signals.stop.load(std::memory_order_acquire) || signals.halt.load(std::memory_order_acquire);
+  if (!stop || parts_.mover.report().phase == safety::Phase::off) return;
+  runner_.rest();
+  show_status(true);
+}
+
+void Program::show_status(bool to_all) {
+  v1::Status status;
+  runner_.fill(status);
+  status.set_policy_sha256_hex(files::hex(parts_.policy.sha256()));
+  if (!runner_.first_start_missing().empty()) status.set_waiting_for("first-start confirmation");
+  status.set_last_sequence(sequence_);
+  if (server_ != nullptr) status.set_baton_holder(server_->baton_holder());
+  parts_.exchange.show(status);
+  if (!to_all) return;
+  shown_ = std::chrono::steady_clock::now();
+  v1::Telemetry telemetry = numbered();
+  status.set_last_sequence(telemetry.sequence());
+  *telemetry.mutable_status() = status;
+  publish(std::move(telemetry), false);
+}
+
+v1::Telemetry Program::numbered() {
+  if (sequence_ >= reserved_) {
+    reserved_ = sequence_ + kBlock;
+    (void)parts_.journal.put(kReservedKey, std::to_string(reserved_)).ok;
+  }
+  v1::Telemetry telemetry;
+  telemetry.set_sequence(++sequence_);
+  return telemetry;
+}
+
+void Program::publish(v1::Telemetry telemetry, bool kept) {
+  if (kept) (void)parts_.journal.store_telemetry(telemetry).ok;
+  if (server_ != nullptr) server_->publish(telemetry);
+}
+
+// A power cut may have come between the walk's record and its telemetry.
+void Program::publish_missed() {
+  const std::optional<journal::SessionRow> row = parts_.journal.last_session();
+  if (!row) return;
+  const std::uint64_t last = parts_.journal.last_walk(row->session);
+  if (last == 0) return;
+  for (const v1::Telemetry& told : parts_.journal.telemetry(1, parts_.journal.last_sequence())) {
+    if (told.has_episode() && told.episode().session() == row->session && told.episode().walk() == last)
+      return;
+  }
+  for (const journal::Journal::Finished& walk : parts_.journal.finished(row->session)) {
+    if (walk.episode.walk() == last) on_episode(walk.episode);
+  }
+}
+
+void Program::on_episode(const v1::Episode& episode) {
+  v1::Telemetry telemetry = numbered();
+  *telemetry.mutable_episode() = episode;
+  publish(std::move(telemetry), true);
+  show_status(false);
+}
+
+void Program::on_verdict(const v1::Verdict& verdict) {
+  v1::Telemetry telemetry = numbered();
+  *telemetry.mutable_verdict() = verdict;
+  publish(std::move(telemetry), true);
+}
+
+void Program::on_note(const std::string& words) {
+  std::printf("%s\n", words.c_str());
+  std::fflush(stdout);
+  v1::Telemetry telemetry = numbered();
+  telemetry.set_note(words);
+  publish(std::move(telemetry), true);
+}
+
+}  // namespace pastern::onboard
