@@ -22,6 +22,27 @@ std::string words_of(const std::string& what, const journal::Written& written) {
   return what + ": " + written.words + "; no further walk";
 }
 
+Parameters parameters_of(const files::PolicyFile& file) {
+  const auto& parameters = file.policy().parameters();
+  return {parameters.begin(), parameters.end()};
+}
+
+SessionStart start_of(const SessionSetup& setup) {
+  SessionStart start{setup.plan, parameters_of(setup.start), policy::groups_of(setup.start.policy()), {}};
+  if (setup.candidate) start.candidate = parameters_of(*setup.candidate);
+  return start;
+}
+
+// Same network on the same observation and actions: parameters of one may stand in for those of the other.
+bool same_structure(v1::Policy a, v1::Policy b) {
+  for (v1::Policy* policy : {&a, &b}) {
+    policy->clear_name();
+    policy->clear_parameters();
+    policy->clear_provenance();
+  }
+  return a.SerializeAsString() == b.SerializeAsString();
+}
+
 }  // namespace
 
 Runner::Runner(const files::RobotFile& robot, Mover& mover, journal::Journal& journal, Hooks& hooks)
@@ -48,14 +69,10 @@ std::string Runner::refusal_of(const SessionSetup& setup) const {
   const std::string missing = first_start_missing();
   if (!missing.empty()) return missing;
   if (!journal_.failure().empty()) return journal_.failure();
-  return refusal(
-      {setup.plan,
-       Parameters(setup.start.policy().parameters().begin(), setup.start.policy().parameters().end()),
-       policy::groups_of(setup.start.policy()),
-       setup.candidate
-           ? std::optional<Parameters>(std::in_place, setup.candidate->policy().parameters().begin(),
-                                       setup.candidate->policy().parameters().end())
-           : std::nullopt});
+  if (setup.candidate && !same_structure(setup.start.policy(), setup.candidate->policy())) {
+    return "candidate policy: its channels, layers, legs, rates or groups differ from the start policy's";
+  }
+  return refusal(start_of(setup));
 }
 
 std::uint64_t Runner::interrupted_session() const {
@@ -70,9 +87,7 @@ Ended Runner::run(const SessionSetup& setup) {
   row.plan_text = setup.plan_text;
   row.robot_sha256_hex = robot_sha_;
   row.start_policy_sha256_hex = files::hex(setup.start.sha256());
-  const auto& parameters = setup.start.policy().parameters();
-  row.start_parameters_sha256_hex =
-      files::hex(journal::parameters_sha256(Parameters(parameters.begin(), parameters.end())));
+  row.start_parameters_sha256_hex = files::hex(journal::parameters_sha256(parameters_of(setup.start)));
   row.software = software();
   journal::Written written = journal_.store_policy(setup.start.bytes(), row.start_policy_sha256_hex);
   if (written.ok && setup.candidate) {
@@ -142,11 +157,7 @@ bool Runner::begin(const SessionSetup& setup, std::uint64_t number) {
 
 // Also after an operator declared a finished walk void: the state machine is told the record anew.
 bool Runner::replay(std::string& words) {
-  const auto list = [](const files::PolicyFile& file) {
-    return Parameters(file.policy().parameters().begin(), file.policy().parameters().end());
-  };
-  SessionStart start{setup_->plan, list(setup_->start), policy::groups_of(setup_->start.policy()), {}};
-  if (setup_->candidate) start.candidate = list(*setup_->candidate);
+  SessionStart start = start_of(*setup_);
   words = refusal(start);
   if (!words.empty()) return false;
   session_ = std::make_unique<Session>(std::move(start));
@@ -187,7 +198,7 @@ Ended Runner::walk(const files::PolicyFile& policy, double duration_s, std::uint
   order.part = Part::single;
   order.duration_s = duration_s;
   order.draw = draw;
-  order.parameters.assign(policy.policy().parameters().begin(), policy.policy().parameters().end());
+  order.parameters = parameters_of(policy);
   Ended ended;
   if (!allowed(false, ended) || !make_ready(order, ended) || !perform(order, ended)) return ended;
   return {Ended::How::verdict, "walk " + std::to_string(order.walk) + " is recorded"};
