@@ -76,8 +76,7 @@ void SimulatedRobot::take_site() {
   imu_axes_ = rotation_by(site_.imu_tilt_rad);
   const double late = (site_.command_delay_s + site_.command_jitter_s) / model_->period_s();
   command_rows_ = static_cast<std::size_t>(std::ceil(late)) + 3;
-  const auto width = static_cast<std::size_t>(model_->joint_count()) + 1;
-  if (commands_.size() < command_rows_ * width) commands_.resize(command_rows_ * width);
+  if (commands_.size() < command_rows_) commands_.resize(command_rows_);
   if (command_ticks_.size() < command_rows_) command_ticks_.resize(command_rows_);
   const auto rows = static_cast<std::size_t>(std::lround(site_.sensor_delay_s / model_->period_s())) + 1;
   samples_.resize(rows);
@@ -117,6 +116,7 @@ void SimulatedRobot::place_lying(std::uint64_t draw) {
 void SimulatedRobot::place(const std::vector<double>& pose, double scatter, std::uint64_t draw) {
   clock_.placed = clock_.tick;
   clock_.draw = draw;
+  clock_.told = 0;
   clock_.sent = clock_.acting = clock_.arrived = -1;
   std::fill(command_ticks_.begin(), command_ticks_.end(), -1);
   std::array<double, safety::kMaxJoints> angle{};
@@ -159,14 +159,19 @@ void SimulatedRobot::place(const std::vector<double>& pose, double scatter, std:
 void SimulatedRobot::command(const safety::Torques<>& torque, bool torque_on) {
   if (!bus_sound()) return;
   const auto tick = static_cast<std::int64_t>(clock_.tick);
-  const auto joints = static_cast<std::size_t>(model_->joint_count());
   const auto row = static_cast<std::size_t>(tick) % command_rows_;
-  double* values = commands_.data() + row * (joints + 1);
-  for (std::size_t j = 0; j < joints; ++j) {
-    const double wanted = torque.values[j];
-    values[j] = std::isfinite(wanted) ? wanted : 0;
+  Message& message = commands_[row];
+  if (clock_.told == 0) {  // nobody reads: the command answers what is so now
+    answered_.angle = state_.drives.rotor_angle;
+    answered_.speed = state_.drives.rotor_speed;
   }
-  values[joints] = torque_on ? 1 : 0;
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model_->joint_count()); ++j) {
+    const double wanted = torque.values[j];
+    message.torque[j] = std::isfinite(wanted) ? wanted : 0;
+    message.angle[j] = answered_.angle[j];
+    message.speed[j] = answered_.speed[j];
+  }
+  message.on = torque_on ? 1 : 0;
   command_ticks_[row] = tick;
   clock_.sent = tick;
 }
@@ -191,36 +196,34 @@ void SimulatedRobot::hear() {
   }
 }
 
-void SimulatedRobot::tell_drives(double dt) {
-  const auto joints = static_cast<std::size_t>(model_->joint_count());
+void SimulatedRobot::hold_stance() {
+  told_.on = 1;
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model_->joint_count()); ++j) {
+    told_.wanted[j] = model_->hold_stiffness()[j] * (model_->stance()[j] - state_.drives.rotor_angle[j]) -
+                      model_->hold_damping()[j] * state_.drives.rotor_speed[j];
+  }
+}
+
+void SimulatedRobot::tell_drives() {
   told_.on = 0;
   told_.damping = 0;
   told_.forced.fill(0);
-  if (clock_.holding != 0) {
-    told_.on = 1;
-    const auto& tree = model_->figures().tree;
-    for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
-      for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[l].joint_count); ++i) {
-        const auto j = static_cast<std::size_t>(tree.leg[l].joint[i].order);
-        told_.wanted[j] = model_->hold_stiffness()[j] * (model_->stance()[j] - state_.body.angle[l][i]) -
-                          model_->hold_damping()[j] * state_.body.speed[l][i];
-      }
-    }
-    return;
-  }
+  if (clock_.holding != 0) return hold_stance();
   if (clock_.acting < 0) return;
-  const double* values =
-      commands_.data() + (static_cast<std::size_t>(clock_.acting) % command_rows_) * (joints + 1);
-  const double silent = static_cast<double>(static_cast<std::int64_t>(clock_.tick) - clock_.arrived) * dt;
-  if (!(values[joints] > 0)) return;
-  if (silent > model_->drive_timeout_s() + kLetGoAfter_s + 1e-9) return;
+  const Message& message = commands_[static_cast<std::size_t>(clock_.acting) % command_rows_];
+  const double silent =
+      static_cast<double>(static_cast<std::int64_t>(clock_.tick) - clock_.arrived) * model_->period_s();
+  if (!(message.on > 0) || silent > model_->drive_timeout_s() + kLetGoAfter_s + 1e-9) return;
   if (silent > model_->drive_timeout_s() + 1e-9) {
     told_.damping = 1;
-    told_.on = 0;
     return;
   }
   told_.on = 1;
-  for (std::size_t j = 0; j < joints; ++j) told_.wanted[j] = values[j];
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model_->joint_count()); ++j) {
+    told_.wanted[j] = message.torque[j] +
+                      model_->hold_stiffness()[j] * (message.angle[j] - state_.drives.rotor_angle[j]) +
+                      model_->hold_damping()[j] * (message.speed[j] - state_.drives.rotor_speed[j]);
+  }
 }
 
 bool SimulatedRobot::acts(const Fault& fault) const {
@@ -280,7 +283,7 @@ void SimulatedRobot::step() {
   const int substeps = model_->substeps();
   hear();
   for (int n = 0; n < substeps; ++n) {
-    tell_drives(period);
+    tell_drives();
     if (site_.fault_count > 0) apply_faults();
     figures_.around.push = push_now();
     step_robot(model_->figures(), figures_, told_, period / substeps, state_, work_);

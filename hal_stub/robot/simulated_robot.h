@@ -58,7 +58,11 @@ class SimulatedRobot {
   /// The same, lying in the parked pose; the push then comes after the robot has had time to rise.
   void place_lying(std::uint64_t draw);
 
-  /// Sent now; the drives act on it after the bus's delay. Non-finite torque counts as zero.
+  /// Sent now, in answer to the frame that read() gave last; the drives act on it after the bus's delay.
+  /// Non-finite torque counts as zero. Each drive corrects the torque by its own encoder for what its joint
+  /// has moved since that frame, with the joint's stiffness and damping of the robot file: a late bus then
+  /// delays the targets and does not shake the joints (common practice, no source). Its peak torque bounds
+  /// the sum.
   void command(const safety::Torques<>& torque, bool torque_on);
   /// One period of the cycle. Without a command for `drive_timeout_s` the drives damp, 0.5 s later they let
   /// go.
@@ -104,12 +108,23 @@ class SimulatedRobot {
     std::uint64_t placed{0};  ///< tick of the last placing
     std::uint64_t draw{0};
     std::uint64_t samples{0};
-    std::uint64_t told{0};     ///< number of the last frame that read() gave
+    std::uint64_t told{0};     ///< number of the last frame that read() gave; 0: none since placed
     std::int64_t sent{-1};     ///< tick of the newest command; -1: none since placed
     std::int64_t acting{-1};   ///< tick of the command that the drives act on
     std::int64_t arrived{-1};  ///< tick at which it arrived
     std::uint64_t holding{0};  ///< 1: placed standing, and no command has arrived yet
     std::uint64_t lying{0};    ///< 1: placed lying
+  };
+  /// A command on its way, and what the answered frame said of the joints (without noise).
+  struct Message {
+    PerDrive<double> torque{};
+    PerDrive<double> angle{};
+    PerDrive<double> speed{};
+    double on{0};
+  };
+  struct Answered {
+    PerDrive<double> angle{};
+    PerDrive<double> speed{};
   };
   /// Values that last as long as a fault does.
   struct Kept {
@@ -123,7 +138,8 @@ class SimulatedRobot {
   void switch_on();
   void place(const std::vector<double>& pose, double scatter, std::uint64_t draw);
   void hear();
-  void tell_drives(double dt);
+  void hold_stance();
+  void tell_drives();
   void apply_faults();
   void apply_drive_fault(const Fault& fault);
   [[nodiscard]] Vec3<double> push_now() const;
@@ -142,12 +158,13 @@ class SimulatedRobot {
   Told<double> told_;
   Clock clock_;
   Kept kept_;
+  Answered answered_;
   Vec3<double> rate_bias_{};
   Rotation<double> imu_axes_{};
   Vec3<double> push_{};      ///< force of this walk's push, N
   double push_begins_s_{0};  ///< since placed
   std::size_t command_rows_{1};
-  std::vector<double> commands_;  ///< rows of joint_count torques and the torque-on flag, by tick modulo rows
+  std::vector<Message> commands_;  ///< by tick modulo rows
   std::vector<std::int64_t> command_ticks_;
   std::vector<Sample> samples_;  ///< by number modulo size
 };

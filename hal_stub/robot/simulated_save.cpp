@@ -46,17 +46,17 @@ class Reader {
 }  // namespace
 
 std::string SimulatedRobot::save() const {
-  const auto width = static_cast<std::size_t>(model_->joint_count()) + 1;
   std::string body;
   put(body, state_);
   put(body, clock_);
   put(body, kept_);
+  put(body, answered_);
   put(body, push_);
   put(body, push_begins_s_);
   put(body, figures_.pack.open_scale);
   put(body, rate_bias_);
   put(body, seed_);
-  put_all(body, commands_, command_rows_ * width);
+  put_all(body, commands_, command_rows_);
   put_all(body, command_ticks_, command_rows_);
   put_all(body, samples_, samples_.size());
   std::string bytes(kMark, sizeof kMark);
@@ -84,17 +84,17 @@ bool SimulatedRobot::restore(const std::string& bytes, std::string& error) {
       bytes.substr(signed_bytes)) {
     return refuse("found a wrong checksum");
   }
-  const auto width = static_cast<std::size_t>(model_->joint_count()) + 1;
   Reader reader(bytes.data() + kHead);
   reader.get(state_);
   reader.get(clock_);
   reader.get(kept_);
+  reader.get(answered_);
   reader.get(push_);
   reader.get(push_begins_s_);
   reader.get(figures_.pack.open_scale);
   reader.get(rate_bias_);
   reader.get(seed_);
-  reader.get_all(commands_, command_rows_ * width);
+  reader.get_all(commands_, command_rows_);
   reader.get_all(command_ticks_, command_rows_);
   reader.get_all(samples_, samples_.size());
   return true;

@@ -109,6 +109,8 @@ bool SimulatedRobot::read(safety::SensorFrame& frame) {
   } else {
     kept_.is_frozen = 0;
   }
+  answered_.angle = from->angle;
+  answered_.speed = from->speed;
   frame.counter = clock_.samples;
   frame.time.value = std::llround(static_cast<double>(clock_.tick) * model_->period_s() * 1e9);
   frame.joint_count = model_->joint_count();
