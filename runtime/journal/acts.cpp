@@ -18,8 +18,8 @@ std::optional<std::string> Journal::robot_state() const {
 }
 
 Written Journal::put(const std::string& key, const std::string& value) {
-  return impl_->write_one(key, "INSERT OR REPLACE INTO kept_values (name, bytes) VALUES (?, ?)", key,
-                          Blob{value});
+  return impl_->write_one(key, "INSERT OR REPLACE INTO kept_values (name, bytes, seal) VALUES (?, ?, ?)", key,
+                          Blob{value}, seal_of({key, value}));
 }
 
 std::optional<std::string> Journal::get(const std::string& key) const {

@@ -70,7 +70,8 @@ class Query {
   [[nodiscard]] bool done() { return !row() && !failed_; }
 
   [[nodiscard]] std::int64_t integer(int column) const { return sqlite3_column_int64(statement_, column); }
-  /// TEXT or BLOB, copied.
+  [[nodiscard]] int columns() const { return sqlite3_column_count(statement_); }
+  /// TEXT or BLOB, copied; a number as SQLite writes it; empty for NULL.
   [[nodiscard]] std::string bytes(int column) const;
 
  private:

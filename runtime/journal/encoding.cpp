@@ -41,6 +41,12 @@ std::optional<Parameters> parameters_of(std::string_view bytes) {
 
 std::string sum_hex(std::string_view bytes) { return files::hex(files::sha256(bytes)); }
 
+std::string seal_of(const std::vector<std::string>& texts) {
+  Encoding encoding;
+  for (const std::string& value : texts) encoding.text(value);
+  return sum_hex(encoding.bytes());
+}
+
 std::string parameters_sha256(const Parameters& parameters) {
   return files::raw(files::sha256(bytes_of(parameters)));
 }

@@ -5,6 +5,7 @@
 #include <optional>
 #include <string>
 #include <string_view>
+#include <vector>
 
 #include "runtime/types/parameters.h"
 
@@ -28,5 +29,8 @@ class Encoding {
 
 /// Lower-case hex of SHA-256.
 [[nodiscard]] std::string sum_hex(std::string_view bytes);
+
+/// The seal of a row: SHA-256 of its texts, each with its length.
+[[nodiscard]] std::string seal_of(const std::vector<std::string>& texts);
 
 }  // namespace pastern::journal

@@ -39,7 +39,4 @@ struct Journal::Impl {
   bool sound(const Query& query, const std::string& what);
 };
 
-/// SHA-256 that ties an episode's bytes to its place.
-[[nodiscard]] std::string seal_of(std::int64_t session, std::int64_t walk, std::string_view episode_bytes);
-
 }  // namespace pastern::journal

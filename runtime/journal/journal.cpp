@@ -1,9 +1,11 @@
 // Opening, creating and checking a journal; the one way to write to it.
 #include "runtime/journal/journal.h"
 
+#include <fcntl.h>
 #include <unistd.h>
 
 #include <filesystem>
+#include <fstream>
 
 #include "runtime/journal/encoding.h"
 #include "runtime/journal/impl.h"
@@ -56,19 +58,64 @@ std::string objection_to(Database& database, bool& fresh) {
   return verdict == "ok" ? "" : "damaged: " + verdict;
 }
 
-// Each walk's seal: SQLite itself would not notice a changed byte inside a value.
-std::string objection_to_walks(Database& database) {
-  Query query(database, "SELECT session, walk, episode_message, seal FROM walks ORDER BY session, walk");
+// First row of `sql` whose texts do not match its seal: the first column names the row, the last one is the
+// seal.
+std::string first_unsealed(Database& database, const char* sql) {
+  Query query(database, sql);
   while (query.row()) {
-    if (seal_of(query.integer(0), query.integer(1), query.bytes(2)) == query.bytes(3)) continue;
-    return "damaged: walk " + std::to_string(query.integer(1)) + " of session " +
-           std::to_string(query.integer(0)) + " does not match its seal";
+    std::vector<std::string> texts;
+    const int seal = query.columns() - 1;
+    for (int column = 1; column < seal; ++column) texts.push_back(query.bytes(column));
+    if (seal_of(texts) != query.bytes(seal)) return "damaged: " + query.bytes(0) + " does not match its seal";
   }
   return query.failed() ? "damaged: " + database.message() : "";
 }
 
+// SQLite itself would not notice a changed byte inside a value.
+std::string objection_to_rows(Database& database) {
+  for (const char* sql :
+       {"SELECT 'session ' || session, plan_text, robot_sha256, start_policy_sha256, start_parameters_sha256,"
+        " candidate_sha256, software, ended, verdict_message, seal FROM sessions",
+        "SELECT 'walk ' || walk || ' of session ' || session, session, walk, episode_message, seal FROM "
+        "walks",
+        "SELECT 'carried state', bytes, seal FROM carried_state",
+        "SELECT 'kept value ' || name, name, bytes, seal FROM kept_values"}) {
+    if (std::string words = first_unsealed(database, sql); !words.empty()) return words;
+  }
+  return "";
+}
+
+// SQLite takes a file of under 512 bytes for an empty one and fills a torn last page up with zeros. Where no
+// log stands beside the file (a power cut leaves one), such a file has been cut short.
+std::string objection_to_file(const std::string& path) {
+  const auto size_of = [](const std::string& name) -> std::uintmax_t {
+    std::error_code missing;
+    const auto size = std::filesystem::file_size(name, missing);
+    return missing ? 0 : size;
+  };
+  const std::uintmax_t size = size_of(path);
+  if (size == 0 || size_of(path + "-wal") > 0 || size_of(path + "-journal") > 0) return "";
+  std::string head(18, '\0');
+  std::ifstream(path, std::ios::binary).read(head.data(), static_cast<std::streamsize>(head.size()));
+  if (head.substr(0, 16) != std::string("SQLite format 3\0", 16))
+    return "not a journal: found another kind of file";
+  const auto at = [&](std::size_t i) { return static_cast<unsigned char>(head[i]); };
+  const std::uintmax_t page = at(16) * 256U + at(17) == 1 ? 65536 : at(16) * 256U + at(17);
+  if (page >= 512 && size % page == 0) return "";
+  return "damaged: cut short, found " + std::to_string(size) + " bytes";
+}
+
+bool insert_session_zero(Database& database) {
+  return Query(database,
+               "INSERT INTO sessions (session, plan_text, robot_sha256, start_policy_sha256, words, seal)"
+               " VALUES (0, '', '', '', 'walks outside sessions', ?)",
+               seal_of({"", "", "", "", "", "", "0", ""}))
+      .done();
+}
+
 bool create_schema(Database& database) {
   const bool made = database.run("BEGIN IMMEDIATE") && database.run(kSchemaText) &&
+                    insert_session_zero(database) &&
                     database.run(("PRAGMA application_id = " + std::to_string(kApplicationId)).c_str()) &&
                     database.run(("PRAGMA user_version = " + std::to_string(kSchemaVersion)).c_str()) &&
                     database.run("COMMIT");
@@ -89,7 +136,8 @@ bool open_for_reading(Database& database, const std::string& path, const std::st
   std::error_code ignored;
   const auto log_size = std::filesystem::file_size(path + "-wal", ignored);
   const bool log = !ignored && log_size > 0;
-  const bool writable = ::access(std::filesystem::path(path).parent_path().c_str(), W_OK) == 0;
+  const bool writable =
+      ::faccessat(AT_FDCWD, std::filesystem::path(path).parent_path().c_str(), W_OK, AT_EACCESS) == 0;
   if (log || writable || !vfs.empty()) return database.open(path, SQLITE_OPEN_READONLY, vfs);
   std::string name;
   for (const char c : path)
@@ -98,10 +146,6 @@ bool open_for_reading(Database& database, const std::string& path, const std::st
 }
 
 }  // namespace
-
-std::string seal_of(std::int64_t session, std::int64_t walk, std::string_view episode_bytes) {
-  return sum_hex(std::to_string(session) + " " + std::to_string(walk) + " " + std::string(episode_bytes));
-}
 
 const std::string& Journal::Impl::fail(const std::string& what, const std::string& why) {
   if (failure.empty()) failure = path + ": " + what + ": " + one_line(why);
@@ -146,6 +190,7 @@ std::unique_ptr<Journal> Journal::open(const std::string& folder, std::string& e
   if (!read_only && !impl.lock.take(folder, error)) return nullptr;
 
   Database& database = impl.database;
+  if (const std::string words = objection_to_file(impl.path); !words.empty()) return refuse(words);
   const bool opened = read_only ? open_for_reading(database, impl.path, vfs)
                                 : database.open(impl.path, SQLITE_OPEN_READWRITE | SQLITE_OPEN_CREATE, vfs);
   if (!opened) return refuse("cannot be opened: " + database.message());
@@ -162,7 +207,7 @@ std::unique_ptr<Journal> Journal::open(const std::string& folder, std::string& e
       return refuse("cannot be written: " + database.message());
     if (fresh && !sync_folder(folder, error)) return nullptr;
   }
-  if (const std::string words = objection_to_walks(database); !words.empty()) return refuse(words);
+  if (const std::string words = objection_to_rows(database); !words.empty()) return refuse(words);
   return journal;
 }
 

@@ -8,7 +8,9 @@
 -- Unsigned 64-bit numbers (draw) are stored as the signed integer of the same bits. SHA-256 sums are lower-case
 -- hex, 64 characters. Times ending in _utc are the computer's clock, for people only; nothing is computed from
 -- them. Messages (BLOB columns named after a message) are protobuf, see proto/pastern/v1. What is not a number
--- in a return is NULL in its column.
+-- in a return is NULL in its column. A seal is the SHA-256 of what the program relies on in its row, in the
+-- encoding of runtime/journal/encoding.h; a row that does not match its seal is damaged or was changed by hand,
+-- and the journal is refused.
 
 CREATE TABLE sessions (
   session                 INTEGER PRIMARY KEY,      -- 1, 2, 3 ...; 0 gathers the walks outside sessions
@@ -29,7 +31,8 @@ CREATE TABLE sessions (
   effect_high             REAL,
   interval_level          REAL,
   words                   TEXT,
-  verdict_message         BLOB                      -- pastern.v1.Verdict
+  verdict_message         BLOB,                     -- pastern.v1.Verdict: what counts; the columns repeat it
+  seal                    TEXT NOT NULL             -- of plan_text to software, ended, verdict_message
 );
 
 -- Policy parameters that walked: little-endian IEEE 754 doubles in the policy file's order.
@@ -69,7 +72,7 @@ CREATE TABLE walks (
   parameters_sha256  TEXT NOT NULL REFERENCES parameters (sha256),
   finished_utc       TEXT NOT NULL DEFAULT (strftime('%Y-%m-%dT%H:%M:%SZ', 'now')),
   episode_message    BLOB NOT NULL,                 -- pastern.v1.Episode: what counts; the columns repeat it
-  seal               TEXT NOT NULL,                 -- SHA-256 of "session walk " and episode_message
+  seal               TEXT NOT NULL,                 -- of session, walk, episode_message
   PRIMARY KEY (session, walk)
 ) WITHOUT ROWID;
 
@@ -78,13 +81,15 @@ CREATE TABLE carried_state (
   one     INTEGER PRIMARY KEY CHECK (one = 1),
   session INTEGER NOT NULL,
   walk    INTEGER NOT NULL,
-  bytes   BLOB NOT NULL
+  bytes   BLOB NOT NULL,
+  seal    TEXT NOT NULL                             -- of bytes
 );
 
 -- Small named values that outlive a restart, such as the gate's winding temperatures.
 CREATE TABLE kept_values (
   name  TEXT PRIMARY KEY,
-  bytes BLOB NOT NULL
+  bytes BLOB NOT NULL,
+  seal  TEXT NOT NULL                               -- of name, bytes
 ) WITHOUT ROWID;
 
 CREATE TABLE policies (
@@ -127,6 +132,3 @@ CREATE TABLE notes (
   words   TEXT NOT NULL,
   at_utc  TEXT NOT NULL DEFAULT (strftime('%Y-%m-%dT%H:%M:%SZ', 'now'))
 );
-
-INSERT INTO sessions (session, plan_text, robot_sha256, start_policy_sha256, words)
-VALUES (0, '', '', '', 'walks outside sessions');

@@ -76,6 +76,16 @@ std::string objection_to(Database& database, const v1::Episode& episode) {
   return "found walk " + std::to_string(episode.walk()) + ", expected walk " + std::to_string(last + 1);
 }
 
+std::string walk_seal(std::uint64_t session, std::uint64_t walk, const std::string& episode_bytes) {
+  return seal_of({std::to_string(session), std::to_string(walk), episode_bytes});
+}
+
+std::string session_seal(const SessionRow& row, const std::string& verdict_bytes) {
+  return seal_of({row.plan_text, row.robot_sha256_hex, row.start_policy_sha256_hex,
+                  row.start_parameters_sha256_hex, row.candidate_sha256_hex, row.software,
+                  row.ended ? "1" : "0", verdict_bytes});
+}
+
 bool insert_walk(Database& database, const v1::Episode& episode, const std::string& parameters_hex) {
   const std::string bytes = episode.SerializeAsString();
   const v1::ReturnTerms& terms = episode.terms();
@@ -93,8 +103,7 @@ bool insert_walk(Database& database, const v1::Episode& episode, const std::stri
       summary.mean_speed_m_per_s(), summary.energy_j(), std::uint32_t{summary.moved_forward()},
       summary.cost_of_transport(), summary.roll_max_rad(), summary.pitch_max_rad(), summary.winding_max_c(),
       summary.pack_min_v(), episode.trip().cause(), episode.started_s(), parameters_hex, Blob{bytes},
-      seal_of(static_cast<std::int64_t>(episode.session()), static_cast<std::int64_t>(episode.walk()),
-              bytes));
+      walk_seal(episode.session(), episode.walk(), bytes));
   return query.done();
 }
 
@@ -115,13 +124,15 @@ SessionRow session_of(const Query& query) {
 
 Written Journal::begin_session(SessionRow& row) {
   std::int64_t number = 0;
+  SessionRow fresh = row;
+  fresh.ended = false;
   Written written = impl_->write("new session", [&](std::string&) {
     Query insert(
         impl_->database,
         "INSERT INTO sessions (plan_text, robot_sha256, start_policy_sha256, start_parameters_sha256,"
-        " candidate_sha256, software) VALUES (?,?,?,?,?,?)",
+        " candidate_sha256, software, seal) VALUES (?,?,?,?,?,?,?)",
         row.plan_text, row.robot_sha256_hex, row.start_policy_sha256_hex, row.start_parameters_sha256_hex,
-        row.candidate_sha256_hex, row.software);
+        row.candidate_sha256_hex, row.software, session_seal(fresh, ""));
     const bool done = insert.done();
     number = sqlite3_last_insert_rowid(impl_->database.handle());
     return done;
@@ -153,18 +164,22 @@ Written Journal::end_session(std::uint64_t session, const v1::Verdict& verdict) 
     else if (has_ended(impl_->database, session))
       objection = "it has ended already";
     if (!objection.empty()) return false;
+    SessionRow row;
+    for (SessionRow& candidate : sessions())
+      if (candidate.session == session) row = std::move(candidate);
+    if (row.session != session) objection = "there is no such session";
+    if (!objection.empty()) return false;
+    row.ended = true;
     const std::string bytes = verdict.SerializeAsString();
     Query update(
         impl_->database,
         "UPDATE sessions SET ended = 1, ended_utc = strftime('%Y-%m-%dT%H:%M:%SZ', 'now'), verdict = ?,"
         " p_value = ?, pairs = ?, effect = ?, effect_low = ?, effect_high = ?, interval_level = ?,"
-        " words = ?, verdict_message = ? WHERE session = ?",
+        " words = ?, verdict_message = ?, seal = ? WHERE session = ?",
         verdict.kind() == v1::Verdict::ADOPT ? "adopt" : "keep", verdict.p_value(), verdict.pairs(),
         verdict.effect(), verdict.effect_low(), verdict.effect_high(), verdict.interval_level(),
-        verdict.words(), Blob{bytes}, session);
-    const bool done = update.done();
-    if (done && sqlite3_changes(impl_->database.handle()) != 1) objection = "there is no such session";
-    return done;
+        verdict.words(), Blob{bytes}, session_seal(row, bytes), session);
+    return update.done();
   });
 }
 
@@ -200,8 +215,9 @@ std::optional<Committed<Evaluation>> Journal::commit(const v1::Episode& episode,
                insert_walk(database, finished, sum) &&
                (robot_state.empty() ||
                 Query(database,
-                      "INSERT OR REPLACE INTO carried_state (one, session, walk, bytes) VALUES (1, ?, ?, ?)",
-                      finished.session(), finished.walk(), Blob{robot_state})
+                      "INSERT OR REPLACE INTO carried_state (one, session, walk, bytes, seal) VALUES (1, ?, "
+                      "?, ?, ?)",
+                      finished.session(), finished.walk(), Blob{robot_state}, seal_of({robot_state}))
                     .done());
       });
   if (!written.ok) {
@@ -218,7 +234,7 @@ std::vector<Journal::Finished> Journal::finished(std::uint64_t session) const {
   while (query.row()) {
     const std::string bytes = query.bytes(0);
     v1::Episode episode;
-    if (seal_of(static_cast<std::int64_t>(session), query.integer(2), bytes) != query.bytes(1) ||
+    if (walk_seal(session, static_cast<std::uint64_t>(query.integer(2)), bytes) != query.bytes(1) ||
         !episode.ParseFromString(bytes)) {
       impl_->fail(walk_words(session, static_cast<std::uint64_t>(query.integer(2))),
                   "damaged: does not match its seal");
@@ -260,9 +276,7 @@ Written Journal::mark_void(std::uint64_t session, std::uint64_t walk, const std:
     Query update(database,
                  "UPDATE walks SET outcome = 'void', void_reason = ?, episode_message = ?, seal = ?"
                  " WHERE session = ? AND walk = ?",
-                 reason, Blob{bytes},
-                 seal_of(static_cast<std::int64_t>(session), static_cast<std::int64_t>(walk), bytes), session,
-                 walk);
+                 reason, Blob{bytes}, walk_seal(session, walk, bytes), session, walk);
     return update.done();
   });
 }
