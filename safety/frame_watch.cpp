@@ -125,11 +125,6 @@ bool same_values(const SensorFrame& a, const SensorFrame& b, int joint_count) no
 
 }  // namespace
 
-int joints_of(const Limits& limits) noexcept {
-  if (limits.joint_count < 0) return 0;
-  return limits.joint_count > kMaxJoints ? kMaxJoints : limits.joint_count;
-}
-
 FrameWatch::FrameWatch(const Limits& limits) noexcept
     : stale_ticks_(ticks_within(limits.frame_stale_s, sound_tick_s(limits.tick_s))),
       tick_s_(sound_tick_s(limits.tick_s)) {}

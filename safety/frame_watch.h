@@ -58,6 +58,9 @@ class FrameWatch {
 };
 
 /// min(max(joint_count, 0), kMaxJoints).
-[[nodiscard]] int joints_of(const Limits& limits) noexcept;
+[[nodiscard]] constexpr int joints_of(const Limits& limits) noexcept {
+  if (limits.joint_count < 0) return 0;
+  return limits.joint_count > kMaxJoints ? kMaxJoints : limits.joint_count;
+}
 
 }  // namespace pastern::safety

@@ -1,0 +1,33 @@
+// A cycle round the looped plug-in, as benches use it: a shipped robot file, a policy of a fixed shape, no
+// simulation.
+#pragma once
+
+#include <memory>
+#include <string>
+
+#include "proto/files/robot_file.h"
+#include "runtime/session/cycle.h"
+#include "tests/bench/rig/looped_hal.h"
+
+namespace pastern::bench {
+
+/// Reads hal_stub/robots/NAME.robot.txtpb; ends the program with a line when it is not sound.
+[[nodiscard]] files::RobotFile shipped_robot(const std::string& name);
+
+/// Inputs one, roll, pitch, three rates, joint offsets, phase; 32 tanh units; all actions of all legs;
+/// double. Small fixed weights: the robot in the loop cannot fall anyway. The heaviest kind that is meant to
+/// be shipped.
+[[nodiscard]] v1::Policy policy_of_fixed_shape(const v1::Robot& robot);
+
+/// Options of the looped plug-in for this robot.
+[[nodiscard]] std::string looped_options(const v1::Robot& robot);
+/// Path of the looped plug-in.
+[[nodiscard]] std::string looped_plugin();
+
+[[nodiscard]] std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& robot,
+                                                            session::Pace pace);
+
+/// The plug-in's times of the last tick.
+[[nodiscard]] const looped_times& plugin_times();
+
+}  // namespace pastern::bench

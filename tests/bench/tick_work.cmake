@@ -1,0 +1,5 @@
+if(NOT TARGET bench_rig)
+  add_subdirectory(${CMAKE_CURRENT_SOURCE_DIR}/rig)
+endif()
+pastern_bench(tick_work SOURCES tick_work.cpp LINKS bench_rig bench_counting CLI11::CLI11)
+set_target_properties(bench_tick_work PROPERTIES ENABLE_EXPORTS ON)
