@@ -41,14 +41,14 @@ wire::Socket Dial::socket(int type, int port, std::string& error) {
   return {};
 }
 
-bool Caller::open() {
+bool Caller::open(bool watched) {
   if (socket_.open()) return true;
   socket_ = dial_.bare(ZMQ_DEALER, trouble_);
   if (!socket_.open()) return false;
   const std::string name = "inproc://events-" + std::to_string(wire::random_u64());
-  if (zmq_socket_monitor(socket_.raw(), name.c_str(), kWatched) == 0) {
+  if (watched && zmq_socket_monitor(socket_.raw(), name.c_str(), kWatched) == 0) {
     events_ = wire::Socket(dial_.context, ZMQ_PAIR);
-    if (events_.open() && zmq_connect(events_.raw(), name.c_str()) != 0) events_.close();
+    if (!events_.open() || zmq_connect(events_.raw(), name.c_str()) != 0) stop_watching();
   }
   const std::string address = wire::address(dial_.host, port_);
   if (zmq_connect(socket_.raw(), address.c_str()) == 0) return true;
@@ -57,13 +57,18 @@ bool Caller::open() {
   return false;
 }
 
-void Caller::hang_up() {
+// In this order: an event that nobody can take makes ZeroMQ's own thread wait, and with it all sockets.
+void Caller::stop_watching() {
   if (socket_.open()) (void)zmq_socket_monitor(socket_.raw(), nullptr, 0);
   events_.close();
+}
+
+void Caller::hang_up() {
+  stop_watching();
   socket_.close();
 }
 
-bool Caller::tell(const std::string& message) { return open() && wire::send(socket_, {message}); }
+bool Caller::tell(const std::string& message) { return open(false) && wire::send(socket_, {message}); }
 
 std::optional<std::string> Caller::heard() {
   wire::Incoming incoming;
@@ -108,11 +113,15 @@ bool Caller::exchange(const std::string& question, int timeout_ms, int again_ms,
   connected_ = shaken_ = key_refused_ = shake_failed_ = false;
   const std::int64_t end = wire::now_ns() + std::int64_t{timeout_ms} * 1'000'000;
   while (true) {
-    if (!open()) return false;
+    if (!open(true)) return false;
     // A connection that cannot take it is as good as one that does not answer.
     (void)wire::send(socket_, {question});
     const std::int64_t again = wire::now_ns() + std::int64_t{std::max(again_ms, 1)} * 1'000'000;
-    if (wait_for_answer(std::min(again, end), stubborn, is_answer)) return true;
+    if (wait_for_answer(std::min(again, end), stubborn, is_answer)) {
+      // The connection stands; events that nobody reads would only pile up.
+      stop_watching();
+      return true;
+    }
     // What comes late belongs to the old connection and is never taken for a later answer.
     hang_up();
     if (wire::now_ns() >= end || (key_refused_ && !stubborn)) break;

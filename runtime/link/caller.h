@@ -29,6 +29,9 @@ struct Dial {
 class Caller {
  public:
   Caller(Dial& dial, int port) : dial_(dial), port_(port) {}
+  ~Caller() { hang_up(); }
+  Caller(const Caller&) = delete;
+  Caller& operator=(const Caller&) = delete;
 
   /// `is_answer` judges what comes in; what it turns down is thrown away. A key that the robot turns down
   /// ends the waiting early unless `stubborn`.
@@ -43,8 +46,9 @@ class Caller {
   [[nodiscard]] const std::string& trouble() const { return trouble_; }
 
  private:
-  [[nodiscard]] bool open();
+  [[nodiscard]] bool open(bool watched);
   void watch_events();
+  void stop_watching();
   void say_why(int timeout_ms);
   [[nodiscard]] bool wait_for_answer(std::int64_t until_ns, bool stubborn,
                                      const std::function<bool(const std::string&)>& is_answer);

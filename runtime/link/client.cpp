@@ -48,6 +48,7 @@ std::unique_ptr<Client> Client::connect(const ClientConfig& config, std::string&
     error = "link: found port " + std::to_string(port) + ", expected 1 to 65535";
     return nullptr;
   }
+  wire::silence_protobuf();
   std::unique_ptr<Client> client(new Client);
   client->impl_ = std::make_unique<Impl>(config);
   Impl& impl = *client->impl_;

@@ -6,6 +6,8 @@
 #include <limits>
 #include <string_view>
 
+#include "runtime/link/wire.h"
+
 namespace pastern::link {
 namespace {
 
@@ -64,7 +66,9 @@ v1::Answer made(bool accepted, const std::string& words) {
 }  // namespace
 
 Desk::Desk(Line& line, std::int64_t baton_lapse_ns, std::uint64_t first_baton)
-    : line_(line), baton_(first_baton, baton_lapse_ns) {}
+    : line_(line), baton_(first_baton, baton_lapse_ns) {
+  wire::silence_protobuf();
+}
 
 void Desk::serve(std::vector<Mail>& mails, std::int64_t now_ns) {
   std::vector<Opened> opened(mails.size());

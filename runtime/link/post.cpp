@@ -9,7 +9,7 @@ namespace {
 
 constexpr char kZapEndpoint[] = "inproc://zeromq.zap.01";  // RFC 27
 constexpr int kMostZapPerTurn = 32;
-constexpr int kHandshakeMs = 2000;
+constexpr int kHandshakeMs = 1000;
 constexpr int kBacklog = 32;
 // ZMQ_ZAP_ENFORCE_DOMAIN: in libzmq since 4.3, but its header shows the name to draft builds only.
 constexpr int kEnforceDomain = 93;

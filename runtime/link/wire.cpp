@@ -2,11 +2,13 @@
 #include "runtime/link/wire.h"
 
 #include <arpa/inet.h>
+#include <google/protobuf/stubs/logging.h>
 #include <signal.h>
 
 #include <array>
 #include <cerrno>
 #include <chrono>
+#include <mutex>
 #include <random>
 
 namespace pastern::link::wire {
@@ -111,6 +113,11 @@ std::int64_t now_ns() {
   return std::chrono::duration_cast<std::chrono::nanoseconds>(
              std::chrono::steady_clock::now().time_since_epoch())
       .count();
+}
+
+void silence_protobuf() {
+  static std::once_flag once;
+  std::call_once(once, [] { google::protobuf::SetLogHandler(nullptr); });
 }
 
 void block_signals() {

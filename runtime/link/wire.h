@@ -83,6 +83,11 @@ bool send(Socket& socket, const std::vector<std::string_view>& frames);
 /// CLOCK_MONOTONIC, nanoseconds.
 [[nodiscard]] std::int64_t now_ns();
 
+/// Protobuf writes a line to stderr for each message with damaged text. Whoever sends many would make the
+/// link thread wait for a terminal or a disk: it stays silent, in the whole process; the answer says what is
+/// wrong.
+void silence_protobuf();
+
 /// No signal is delivered to the calling thread: they belong to the main thread.
 void block_signals();
 
