@@ -129,15 +129,13 @@ std::string pairs_chart(const Facts& facts) {
   const std::vector<Pair> pairs = facts.pairs();
   if (pairs.empty()) return "";
   const double rows = static_cast<double>(pairs.size());
-  Sheet sheet(980, 84 + 20 * (rows + 2), "Differences of the confirmation's pairs");
+  Sheet sheet(980, 54 + 20 * (rows + 2), "Differences of the confirmation's pairs");
   Range x{0, 0};
   for (const Pair& pair : pairs) x.hold(pair.adapted - pair.start);
   const bool judged = facts.verdict && facts.verdict->pairs() > 0;
   if (judged) x.hold(facts.verdict->effect_low()), x.hold(facts.verdict->effect_high());
   Plot plot(sheet, {140, 10}, 780, 20 * (rows + 2), x.padded(0.08), {0, rows + 2});
-  plot.axes("adapted less start policy, return of a walk", "");
-  // The rows are named, not numbered: hide what the axis wrote there.
-  sheet.box({0, 0}, 136, 20 * (rows + 2) + 16, "#ffffff", {"#ffffff", 1, ""});
+  plot.x_axis("adapted less start policy, return of a walk");
   const double top = plot.corner().y;
   const double bottom = top + plot.height();
   sheet.line({plot.x(0), top}, {plot.x(0), bottom}, {"#1a1a1a", 1, ""});

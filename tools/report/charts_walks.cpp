@@ -40,11 +40,9 @@ std::vector<Point> curve_of(const v1::Trace& trace, Column x, Column y, double s
   return points;
 }
 
-std::string heading(const char* policy, const Facts& facts, const Walks& walks) {
+std::string heading(const char* policy, const Walks& walks) {
   if (walks.empty()) return fmt::format("{}: did not walk", policy);
-  const bool baseline = walks.front()->part() == v1::BASELINE && !facts.walks.empty();
-  return fmt::format("{}: {} walks of the {}; bold: walk {}, return in the middle", policy, walks.size(),
-                     baseline ? "baseline" : "confirmation", middle(walks)->walk());
+  return fmt::format("{}: {} walks; bold: walk {}", policy, walks.size(), middle(walks)->walk());
 }
 
 void hold_column(Range& range, const Walks& walks, Column column, double scale) {
@@ -82,8 +80,8 @@ std::string attitude_chart(const Facts& facts) {
     panel(60, before, kStartBold);
     panel(546, after, kAdaptedBold);
   };
-  sheet.text({60, 16}, heading("start policy", facts, before), Align::left, 12, true);
-  sheet.text({546, 16}, heading("adapted policy", facts, after), Align::left, 12, true);
+  sheet.text({60, 16}, heading("start policy", before), Align::left, 12, true);
+  sheet.text({546, 16}, heading("adapted policy", after), Align::left, 12, true);
   row(28, "roll, degrees", &v1::Trace::roll_rad);
   row(216, "pitch, degrees", &v1::Trace::pitch_rad);
   return sheet.svg();
@@ -93,7 +91,7 @@ std::string path_chart(const Facts& facts) {
   const Walks before = facts.before();
   const Walks after = facts.after();
   if (before.empty()) return "";
-  Sheet sheet(980, 372, "Path from above, before and after");
+  Sheet sheet(980, 462, "Path from above, before and after");
   Range x{0, 0.5};
   Range y{-0.1, 0.1};
   for (const Walks& walks : {before, after}) {
@@ -102,11 +100,11 @@ std::string path_chart(const Facts& facts) {
   }
   const double lane = facts.robot ? facts.robot->lane().half_width_m() : 0;
   double most = std::max(-y.low, y.high) * 1.1;
-  if (lane > 0 && lane < 3 * most) most = std::max(most, lane * 1.05);
+  if (lane > 0 && lane < 1.6 * most) most = std::max(most, lane * 1.05);
   const auto panel = [&](double top, const char* name, const Walks& walks, const Pen& bold) {
-    Plot plot(sheet, {60, top}, 890, 120, x.padded(0.02), {-most, most});
+    Plot plot(sheet, {60, top}, 890, 150, x.padded(0.02), {-most, most});
     plot.axes(top > 100 ? "along the lane, m" : "", "across, m");
-    sheet.text({60, top - 10}, heading(name, facts, walks), Align::left, 12, true);
+    sheet.text({60, top - 10}, heading(name, walks), Align::left, 12, true);
     sheet.line({plot.x(x.padded(0.02).low), plot.y(0)}, {plot.x(x.padded(0.02).high), plot.y(0)},
                {"#9a9a9a", 1, ""});
     for (const double edge : {-lane, lane}) {
@@ -126,13 +124,13 @@ std::string path_chart(const Facts& facts) {
     }
   };
   panel(26, "start policy", before, kStartBold);
-  panel(202, "adapted policy", after, kAdaptedBold);
-  const double scale = (120 / (2 * most)) / (890 / (x.padded(0.02).high - x.padded(0.02).low));
-  sheet.text({950, 366},
-             fmt::format(
-                 "left is up; across drawn {:.1f} times as large as along; dot: end of a walk, cross: fell{}",
-                 scale, lane > 0 && lane <= most ? "; dash-dot: lane's edge" : ""),
-             Align::right, 11);
+  panel(236, "adapted policy", after, kAdaptedBold);
+  const double scale = (150 / (2 * most)) / (890 / (x.padded(0.02).high - x.padded(0.02).low));
+  sheet.text(
+      {950, 452},
+      fmt::format("left is up; scale across is {:.1f} times that along; dot: end of a walk, cross: fell{}",
+                  scale, lane > 0 && lane <= most ? "; dash-dot: lane's edge" : ""),
+      Align::right, 11);
   return sheet.svg();
 }
 
@@ -150,8 +148,7 @@ std::string terms_chart(const Facts& facts) {
   for (const auto& [name, values] : rows) x.hold(values.first), x.hold(values.second);
   Sheet sheet(980, 306, "Terms of the return, mean of a walk");
   Plot plot(sheet, {120, 8}, 790, 228, x.padded(0.09), {0, 6});
-  plot.axes("mean of a walk, return units", "");
-  sheet.box({0, 0}, 116, 252, "#ffffff", {"#ffffff", 1, ""});
+  plot.x_axis("mean of a walk, return units");
   for (std::size_t i = 0; i < rows.size(); ++i) {
     const double y = 8 + 38 * static_cast<double>(i);
     sheet.text({110, y + 23}, rows[i].first, Align::right, 12, rows[i].first == "return");

@@ -17,8 +17,9 @@ namespace {
 
 constexpr double kDegree = 3.14159265358979323846 / 180.0;
 
-std::string two(double value) { return fmt::format("{:.2f}", value); }
-std::string signed_two(double value) { return fmt::format("{:+.2f}", value); }
+/// Two decimals; what rounds to nothing has no sign.
+std::string two(double value) { return fmt::format("{:.2f}", std::abs(value) < 0.005 ? 0.0 : value); }
+std::string signed_two(double value) { return fmt::format("{:+.2f}", std::abs(value) < 0.005 ? 0.0 : value); }
 std::string degrees(double rad) { return fmt::format("{:.1f}", rad / kDegree); }
 std::string dash_if(bool empty, const std::string& otherwise) { return empty ? "-" : otherwise; }
 
@@ -46,8 +47,9 @@ std::vector<std::string> grounds(const Facts& facts) {
     lines.push_back(fmt::format("Rule: {}; p = {:.4f} from {} pairs, level {:g}.", v.rule(), v.p_value(),
                                 v.pairs(), v.level()));
   }
-  if (facts.verdict && !facts.verdict->words().empty())
-    lines.push_back("The robot's own words: " + facts.verdict->words() + ".");
+  if (facts.verdict && facts.verdict->pairs() == 0 && !facts.verdict->words().empty()) {
+    lines.push_back("The robot's words: " + facts.verdict->words() + ".");
+  }
   const std::size_t counted = facts.walks.size() - facts.count(v1::VOID);
   lines.push_back(fmt::format("{} walks counted: {} fell, {} left the lane; {} void besides.", counted,
                               facts.count(v1::FELL), facts.count(v1::LEFT_LANE), facts.count(v1::VOID)));
@@ -211,6 +213,7 @@ void record_section(Document& document, const Facts& facts) {
   };
   fact("journal", facts.source);
   fact("session", fmt::format("{}{}", facts.row.session, facts.row.ended ? "" : " (not ended)"));
+  if (facts.verdict) fact("verdict as written", facts.verdict->words());
   fact("software", facts.row.software);
   fact("report by", fmt::format("pastern {}", PASTERN_VERSION));
   fact("robot", robot_name(facts));

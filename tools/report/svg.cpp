@@ -181,17 +181,21 @@ void Plot::axes(const std::string& x_name, const std::string& y_name, bool whole
     sheet_.line({corner_.x, y(v)}, {corner_.x + width_, y(v)}, kGrid);
     sheet_.text({corner_.x - 6, y(v) + 4}, tick_text(v, y_step), Align::right, 11);
   }
-  double x_step = tick_step(x_, std::max(2, static_cast<int>(width_ / 70)));
-  if (whole_x) x_step = std::max(1.0, x_step);
-  const double bottom = corner_.y + height_;
-  for (double v = std::ceil(x_.low / x_step - 1e-9) * x_step; v <= x_.high + x_step * 1e-9; v += x_step) {
-    sheet_.line({x(v), bottom}, {x(v), bottom + 4}, kAxis);
-    sheet_.text({x(v), bottom + 17}, tick_text(v, x_step), Align::middle, 11);
-  }
-  sheet_.line({corner_.x, corner_.y}, {corner_.x, bottom}, kAxis);
-  sheet_.line({corner_.x, bottom}, {corner_.x + width_, bottom}, kAxis);
-  if (!x_name.empty()) sheet_.text({corner_.x + width_ / 2, bottom + 34}, x_name, Align::middle);
+  x_axis(x_name, whole_x);
+  sheet_.line({corner_.x, corner_.y}, {corner_.x, corner_.y + height_}, kAxis);
   if (!y_name.empty()) sheet_.text_up({corner_.x - 42, corner_.y + height_ / 2}, y_name);
+}
+
+void Plot::x_axis(const std::string& name, bool whole) {
+  double step = tick_step(x_, std::max(2, static_cast<int>(width_ / 70)));
+  if (whole) step = std::max(1.0, step);
+  const double bottom = corner_.y + height_;
+  for (double v = std::ceil(x_.low / step - 1e-9) * step; v <= x_.high + step * 1e-9; v += step) {
+    sheet_.line({x(v), bottom}, {x(v), bottom + 4}, kAxis);
+    sheet_.text({x(v), bottom + 17}, tick_text(v, step), Align::middle, 11);
+  }
+  sheet_.line({corner_.x, bottom}, {corner_.x + width_, bottom}, kAxis);
+  if (!name.empty()) sheet_.text({corner_.x + width_ / 2, bottom + 34}, name, Align::middle);
 }
 
 void Plot::curve(const std::vector<Point>& data, const Pen& pen) {

@@ -62,6 +62,7 @@ class Plot {
   Plot(Sheet& sheet, Point corner, double width, double height, Range x, Range y);
   /// Ticks, numbers and names. `whole_x`: only whole numbers along x.
   void axes(const std::string& x_name, const std::string& y_name, bool whole_x = false);
+  void x_axis(const std::string& name, bool whole = false);
   [[nodiscard]] double x(double value) const;
   [[nodiscard]] double y(double value) const;  ///< clipped to the plot's area
   [[nodiscard]] Point at(double x_value, double y_value) const { return {x(x_value), y(y_value)}; }

@@ -1,0 +1,179 @@
+// The report from a made-up session: every walk is there, nothing comes from elsewhere, text and page tell
+// the same.
+#include <gtest/gtest.h>
+
+#include <algorithm>
+#include <filesystem>
+#include <fstream>
+#include <iterator>
+#include <regex>
+
+#include "tests/tools/run.h"
+#include "tests/tools/synthetic.h"
+
+namespace pastern::testing {
+namespace {
+
+std::string contents(const std::string& path) {
+  std::ifstream file(path, std::ios::binary);
+  return {std::istreambuf_iterator<char>(file), {}};
+}
+
+class ReportTest : public ::testing::Test {
+ protected:
+  void write(const Story& story) { ASSERT_TRUE(write_session(folder_.path(), story)); }
+  std::string page() {
+    const std::string path = folder_.path() + "/page.html";
+    const Ran ran = run({"report", "--journal", folder_.path(), "--out", path});
+    EXPECT_EQ(ran.exit, 0) << ran.err;
+    EXPECT_NE(ran.out.find(path), std::string::npos);
+    return contents(path);
+  }
+  std::string text() {
+    const Ran ran = run({"report", "--journal", folder_.path(), "--text"});
+    EXPECT_EQ(ran.exit, 0) << ran.err;
+    return ran.out.substr(0, ran.out.rfind("next: "));
+  }
+  Folder folder_;
+};
+
+TEST_F(ReportTest, PageComesFromNowhereElse) {
+  write({});
+  const std::string html = page();
+  for (const char* word :
+       {"http:", "https:", "//", "src=", "href=", "url(", "@import", "<script", "<link", "<iframe"}) {
+    EXPECT_EQ(html.find(word), std::string::npos) << word;
+  }
+}
+
+TEST_F(ReportTest, VerdictStandsFirst) {
+  write({});
+  const std::string read = text_of_page(page());
+  const std::size_t verdict = read.find("Adopt the adapted policy");
+  ASSERT_NE(verdict, std::string::npos);
+  EXPECT_LT(verdict, read.find("Returns of the session"));
+  EXPECT_LT(read.find("not a certified safety function"), read.find("Returns of the session"));
+}
+
+TEST_F(ReportTest, EveryWalkIsInTableAndPicture) {
+  const Story story;
+  write(story);
+  const std::string html = page();
+  const std::size_t walks = 5 + story.search_walks + 2 * story.pairs;
+  const std::size_t table = html.find("<table class=\"long\">");
+  ASSERT_NE(table, std::string::npos);
+  for (std::size_t walk = 1; walk <= walks; ++walk) {
+    EXPECT_NE(html.find("<tr><td class=\"number\">" + std::to_string(walk) + "</td>", table),
+              std::string::npos)
+        << walk;
+  }
+  // First picture: a mark a walk, and seven in the legend.
+  const std::string picture = html.substr(html.find("<svg"), html.find("</svg>") - html.find("<svg"));
+  const std::regex mark("<path ");
+  EXPECT_EQ(std::distance(std::sregex_iterator(picture.begin(), picture.end(), mark), std::sregex_iterator()),
+            static_cast<std::ptrdiff_t>(walks + 7));
+}
+
+TEST_F(ReportTest, FallsAndVoidsAreCountedAndNamed) {
+  write({});
+  const std::string read = text();
+  EXPECT_NE(read.find("70 walks counted: 1 fell, 1 left the lane; 1 void besides."), std::string::npos)
+      << read;
+  EXPECT_NE(read.find("somebody bumped it"), std::string::npos);
+  EXPECT_NE(read.find("roll: 0.93 rad, limit 0.9 rad"), std::string::npos);
+}
+
+TEST_F(ReportTest, TextAndPageHoldTheSameNumbers) {
+  for (const double gain : {0.6, 0.0}) {
+    Folder folder;
+    Story story;
+    story.gain = gain;
+    ASSERT_TRUE(write_session(folder.path(), story));
+    const std::string path = folder.path() + "/page.html";
+    ASSERT_EQ(run({"report", "--journal", folder.path(), "--out", path}).exit, 0);
+    const Ran ran = run({"report", "--journal", folder.path(), "--text"});
+    std::vector<std::string> in_text = numbers_in(ran.out.substr(0, ran.out.rfind("next: ")));
+    std::vector<std::string> in_page = numbers_in(text_of_page(contents(path)));
+    ASSERT_GT(in_text.size(), 71U * 12U);
+    // Captions of pictures stand in the page only, and hold no number; the rest is the same, in the same
+    // order.
+    EXPECT_EQ(in_text, in_page);
+  }
+}
+
+TEST_F(ReportTest, MeansAreThoseOfTheWalksInItsOwnTable) {
+  write({});
+  const std::vector<std::string> lines = lines_of(text());
+  double sum = 0;
+  int rows = 0;
+  double told = 0;
+  const std::regex walk("^ +[0-9]+ +confirm, adapted +completed +(-?[0-9.]+) .*");
+  const std::regex mean("^ +confirmation, adapted policy +8 +0 +(-?[0-9.]+) .*");
+  for (const std::string& line : lines) {
+    std::smatch match;
+    if (std::regex_match(line, match, walk)) sum += std::stod(match[1]), ++rows;
+    if (std::regex_match(line, match, mean)) told = std::stod(match[1]);
+  }
+  ASSERT_EQ(rows, 8);
+  // Eight values rounded to 0.01 each: their mean is off by 0.005 at most, the told one by 0.005 again.
+  EXPECT_NEAR(told, sum / rows, 0.0101);
+}
+
+TEST_F(ReportTest, HostileWordsStayWords) {
+  Story story;
+  story.void_reason = "<script>alert('x')</script> & \"so\"";
+  write(story);
+  const std::string html = page();
+  EXPECT_EQ(html.find("<script"), std::string::npos);
+  EXPECT_NE(html.find("&lt;script&gt;"), std::string::npos);
+}
+
+TEST_F(ReportTest, SessionWithoutConfirmationOrEndIsToldAsSuch) {
+  Story story;
+  story.confirm = false;
+  write(story);
+  EXPECT_NE(text().find("Keep the start policy: there was no confirmation."), std::string::npos);
+  Folder other;
+  story.end = false;
+  story.search_walks = 0;
+  ASSERT_TRUE(write_session(other.path(), story));
+  const Ran ran = run({"report", "--journal", other.path(), "--text"});
+  EXPECT_EQ(ran.exit, 0);
+  EXPECT_NE(ran.out.find("No verdict: the session has not ended."), std::string::npos);
+}
+
+TEST_F(ReportTest, WhatIsNotAJournalIsOneLineAndAFile) {
+  const Ran none = run({"report", "--journal", folder_.path() + "/nowhere"});
+  EXPECT_EQ(none.exit, 3);
+  EXPECT_EQ(lines_of(none.err).size(), 1U) << none.err;
+  std::ofstream(folder_.path() + "/pastern.journal") << "not a database";
+  const Ran damaged = run({"report", "--journal", folder_.path()});
+  EXPECT_EQ(damaged.exit, 3);
+  EXPECT_EQ(lines_of(damaged.err).size(), 1U) << damaged.err;
+}
+
+TEST_F(ReportTest, SessionThatIsNotThereIsNamed) {
+  write({});
+  const Ran ran = run({"report", "--journal", folder_.path(), "--session", "4", "--text"});
+  EXPECT_EQ(ran.exit, 3);
+  EXPECT_NE(ran.err.find("no session 4, expected one of 1 to 1"), std::string::npos) << ran.err;
+}
+
+TEST_F(ReportTest, ReadingLeavesTheJournalUntouched) {
+  write({});
+  const std::string before = contents(folder_.path() + "/pastern.journal");
+  (void)text();
+  EXPECT_EQ(contents(folder_.path() + "/pastern.journal"), before);
+}
+
+TEST_F(ReportTest, PageThatCannotBeWrittenLeavesNothingBehind) {
+  write({});
+  const Ran ran =
+      run({"report", "--journal", folder_.path(), "--out", folder_.path() + "/no/such/page.html"});
+  EXPECT_EQ(ran.exit, 3);
+  EXPECT_EQ(lines_of(ran.err).size(), 1U);
+  EXPECT_FALSE(std::filesystem::exists(folder_.path() + "/no"));
+}
+
+}  // namespace
+}  // namespace pastern::testing
