@@ -15,7 +15,7 @@ struct AttitudeGains {
   double ki{0.02};  ///< 1/s^2
   double rest_kp{2.0};
   double rest_ki{0.6};
-  double rest_yaw{0.5};  ///< 1/s, with which the yaw gyro's bias is taken from what it shows at rest
+  double rest_yaw{2.0};  ///< 1/s, with which the yaw gyro's bias is taken from what it shows at rest
 };
 
 class AttitudeFilter {

@@ -11,6 +11,8 @@ namespace pastern::estimate {
 namespace {
 
 constexpr double kGravity_m_per_s2 = 9.80665;
+constexpr double kNothing = 1e-9;
+constexpr double kStands = 0.05;  // of stance: from here a leg is asked
 
 /// Share of the way that a first-order lag of time constant tau goes in dt.
 double lag(double dt_s, double tau_s) noexcept { return 1.0 - std::exp(-dt_s / tau_s); }
@@ -18,6 +20,15 @@ double lag(double dt_s, double tau_s) noexcept { return 1.0 - std::exp(-dt_s / t
 /// 0 at and below `from`, 1 at and above `to`.
 double ramp(double value, double from, double to) noexcept {
   return std::clamp((value - from) / (to - from), 0.0, 1.0);
+}
+
+/// How far a foot whose word is `apart` from what was expected is believed: one that slides or swings under
+/// load says the trunk is slow. Weight of the bisquare's kin with long tails, (1 + (d/c)^2)^-2: never quite
+/// zero.
+double agreement(double apart_m_per_s, double slip_m_per_s) noexcept {
+  const double ratio = apart_m_per_s / slip_m_per_s;
+  const double weight = 1.0 / (1.0 + ratio * ratio);
+  return weight * weight;
 }
 
 Eigen::Vector3d vector(const safety::Vector3<safety::Metre, safety::World>& v) noexcept {
@@ -43,9 +54,9 @@ void Odometry::begin(const safety::SensorFrame& frame, const Eigen::Quaterniond&
 
 void Odometry::update(const safety::SensorFrame& frame, const Eigen::Quaterniond& attitude,
                       const Eigen::Vector3d& rate_rad_s, double dt_s) noexcept {
-  const LegView legs = look(frame, attitude, rate_rad_s, dt_s);
   const Eigen::Vector3d force(frame.acceleration.x, frame.acceleration.y, frame.acceleration.z);
   velocity_ += (attitude * force - kGravity_m_per_s2 * Eigen::Vector3d::UnitZ()) * dt_s;
+  const LegView legs = look(frame, attitude, rate_rad_s, dt_s);
   // A source of place knows of slipping feet: while it speaks, the legs tell the vertical only.
   const bool external = external_known_ && external_age_s_ < gains_.external_stale_s;
   const Eigen::Vector3d trust(external ? 0.0 : 1.0, external ? 0.0 : 1.0, 1.0);
@@ -65,18 +76,45 @@ Odometry::LegView Odometry::look(const safety::SensorFrame& frame, const Eigen::
     lowest = std::min(lowest, foot_height_m_[i]);
   }
   judge_stance(lowest, dt_s);
-  LegView view;
-  double sum = 0;
-  double height = 0;
+  return put_together(attitude, rate_rad_s, -lowest);
+}
+
+Odometry::LegView Odometry::put_together(const Eigen::Quaterniond& attitude,
+                                         const Eigen::Vector3d& rate_rad_s, double height_m) const noexcept {
+  std::array<Eigen::Vector3d, kMostLegs> told;
+  std::array<double, kMostLegs> apart{};
+  double least_apart = std::numeric_limits<double>::infinity();
+  double standing = 0;
   for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
     // A foot that stands still: trunk velocity + rate x foot + foot's own velocity against the trunk = 0.
-    view.velocity_m_s -= stance_[i] * (rate_rad_s.cross(foot_[i].at_m) + foot_[i].velocity_m_s);
-    height -= stance_[i] * foot_height_m_[i];
-    sum += stance_[i];
+    told[i] = attitude * -(rate_rad_s.cross(foot_[i].at_m) + foot_[i].velocity_m_s);
+    apart[i] = (told[i] - velocity_).norm();
+    if (stance_[i] > kStands) {
+      least_apart = std::min(least_apart, apart[i]);
+    }
+    standing += stance_[i];
   }
-  view.weight = std::min(sum, 1.0);
-  view.velocity_m_s = attitude * (view.velocity_m_s / std::max(sum, 1e-9));
-  view.height_m = sum > 1e-9 ? height / sum : -lowest;
+  LegView view;
+  view.height_m = height_m;
+  if (!(standing > kStands)) {
+    return view;
+  }
+  // Legs are weighed against the one that agrees best, and all of them against what was expected.
+  least_apart = std::isfinite(least_apart) ? least_apart : 0.0;
+  double sum = 0;
+  double height = 0;
+  Eigen::Vector3d velocity = Eigen::Vector3d::Zero();
+  for (std::size_t i = 0; i < static_cast<std::size_t>(legs_.count); ++i) {
+    const double weight = stance_[i] * agreement(std::max(apart[i] - least_apart, 0.0), gains_.slip_m_per_s);
+    velocity += weight * told[i];
+    height -= stance_[i] * foot_height_m_[i];
+    sum += weight;
+  }
+  view.velocity_m_s = velocity / std::max(sum, kNothing);
+  view.height_m = height / standing;
+  // Were the expectation wrong and not the legs, it must come back: slowly, but it must.
+  view.weight =
+      std::min(sum, 1.0) * std::max(agreement(least_apart, gains_.slip_m_per_s), gains_.least_belief);
   return view;
 }
 

@@ -12,13 +12,15 @@
 namespace pastern::estimate {
 
 struct OdometryGains {
-  double velocity_s{0.015};       ///< time constant towards the legs' velocity while a leg stands
+  double velocity_s{0.06};        ///< time constant towards the legs' velocity while a leg stands
   double height_s{0.02};          ///< towards the legs' height
   double push_s{0.006};           ///< low-pass of each foot's push
   double light_share{0.06};       ///< of the robot's weight: a foot that pushes less does not stand ...
-  double firm_share{0.22};        ///< ... one that pushes more does
+  double firm_share{0.4};         ///< ... one that pushes more does
   double raised_m{0.03};          ///< a foot this much over the lowest does not stand, however it pushes
   double blind_m{0.01};           ///< the same when no foot is known to push
+  double slip_m_per_s{0.15};      ///< a foot that contradicts the rest by this much is believed a quarter
+  double least_belief{0.15};      ///< of the legs together, however far they are from what was expected
   double external_s{0.08};        ///< time constant of the filter on an external place
   double external_stale_s{0.25};  ///< an external place older than this is not relied on
 };
@@ -48,6 +50,8 @@ class Odometry {
   };
   [[nodiscard]] LegView look(const safety::SensorFrame& frame, const Eigen::Quaterniond& attitude,
                              const Eigen::Vector3d& rate_rad_s, double dt_s) noexcept;
+  [[nodiscard]] LegView put_together(const Eigen::Quaterniond& attitude, const Eigen::Vector3d& rate_rad_s,
+                                     double height_m) const noexcept;
   void judge_stance(double lowest_m, double dt_s) noexcept;
   void follow_external(const safety::SensorFrame& frame, double dt_s) noexcept;
 

@@ -190,8 +190,8 @@ TEST(Attitude, YawDriftsByBiasTimesTimeWhileMovingAndNotAtRest) {
     still.update({0, 0, .004}, {0, 0, kG}, 1e-3, true);
   }
   EXPECT_NEAR(angles_of(moving.attitude()).yaw_rad, .004 * 60, 1e-9);
-  // At rest the bias is learned with 0.5 /s: what was turned before is bias / 0.5.
-  EXPECT_NEAR(angles_of(still.attitude()).yaw_rad, .004 / .5, 1e-5);
+  // At rest the bias is learned with 2 /s: what was turned before is bias / 2.
+  EXPECT_NEAR(angles_of(still.attitude()).yaw_rad, .004 / 2, 1e-5);
   EXPECT_NEAR(still.bias_rad_s().z(), .004, 1e-9);
 }
 
