@@ -8,10 +8,12 @@
 #include <cmath>
 #include <filesystem>
 #include <fstream>
+#include <iterator>
 #include <limits>
 #include <sstream>
+#include <vector>
 
-#include "safety/gate.h"
+#include "tests/safety/fixture.h"
 
 namespace pastern::hal {
 namespace {
@@ -219,6 +221,66 @@ TEST(Drives, APluginThatNeverHasRoomForItsStateIsRefused) {
   EXPECT_FALSE(drives->save(state));
   EXPECT_EQ(state, "before");
   EXPECT_STREQ(drives->error_text(), "two lines");
+}
+
+/// Lines of the playback plug-in's record of commands, as numbers: tick, torque_on, torques.
+std::vector<std::vector<double>> written_commands(const Folder& folder) {
+  std::vector<std::vector<double>> lines;
+  std::ifstream file(folder.file("commands.txt"));
+  for (std::string line; std::getline(file, line);) {
+    std::istringstream words(line);
+    lines.emplace_back(std::istream_iterator<double>(words), std::istream_iterator<double>());
+  }
+  return lines;
+}
+
+TEST(Drives, WhatTheGateMadeArrivesAndNothingElse) {
+  const Folder folder;
+  std::string error;
+  const auto drives = Drives::open(playback_config(folder, kRecording), error);
+  ASSERT_NE(drives, nullptr) << error;
+  safety::test::Loop loop(safety::test::some_limits(2));
+  loop.wanted[0] = 3.5;
+  loop.wanted[1] = -2.25;
+  loop.ticks(5);
+  const safety::DriveCommand on = loop.tick();
+  ASSERT_TRUE(on.torque_on());
+  EXPECT_TRUE(drives->write(on));
+  loop.flags.halt = true;
+  const safety::DriveCommand off = loop.tick();
+  ASSERT_FALSE(off.torque_on());
+  EXPECT_TRUE(drives->write(off));
+
+  const auto lines = written_commands(folder);
+  ASSERT_EQ(lines.size(), 2u);
+  EXPECT_EQ(lines[0],
+            (std::vector<double>{static_cast<double>(on.tick()), 1, on.torque()[0], on.torque()[1]}));
+  EXPECT_EQ(on.torque()[0], 3.5);
+  EXPECT_EQ(lines[1], (std::vector<double>{static_cast<double>(off.tick()), 0, 0, 0}));
+}
+
+TEST(Drives, ACommandForAnotherRobotIsWrittenAsTorqueOff) {
+  const Folder folder;
+  std::string error;
+  const auto drives = Drives::open(playback_config(folder, kRecording), error);
+  ASSERT_NE(drives, nullptr) << error;
+  safety::test::Loop loop(safety::test::some_limits(3));
+  loop.wanted[0] = 3;
+  loop.ticks(5);
+  const safety::DriveCommand command = loop.tick();
+  ASSERT_TRUE(command.torque_on());
+  EXPECT_FALSE(drives->write(command));
+  EXPECT_STREQ(drives->error_text(), "command: found 3 joints, expected 2; torque off was written");
+  const auto lines = written_commands(folder);
+  ASSERT_EQ(lines.size(), 1u);
+  EXPECT_EQ(lines[0], (std::vector<double>{static_cast<double>(command.tick()), 0, 0, 0}));
+}
+
+TEST(Drives, AnAnswerThatIsNotOfTheContractIsAFailedWrite) {
+  const auto drives = open_damaged(14);
+  ASSERT_NE(drives, nullptr);
+  safety::test::Loop loop(safety::test::some_limits(2));
+  EXPECT_FALSE(drives->write(loop.tick()));
 }
 
 }  // namespace
