@@ -1,5 +1,5 @@
 // Promise: power cut at every sync point of a session of 12 walks, nothing lost, everything readable.
-// Usage: bench_power_cut [--seeds N] [--first-seed N] [--quick]
+// Usage: bench_power_cut [--seed N] [--seeds N] [--quick]
 #include <stdlib.h>
 
 #include <CLI/CLI.hpp>
@@ -16,7 +16,7 @@ int main(int argc, char** argv) {
   std::uint64_t first = 1;
   bool quick = false;
   app.add_option("--seeds", seeds, "how many ways to tear at each sync point, of each of three kinds");
-  app.add_option("--first-seed", first, "where the seeds begin");
+  app.add_option("--seed", first, "where the seeds begin");
   app.add_flag("--quick", quick, "one seed");
   CLI11_PARSE(app, argc, argv);
   if (quick) seeds = 1;

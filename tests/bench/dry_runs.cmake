@@ -1,0 +1,1 @@
+pastern_bench(dry_runs SOURCES dry_runs.cpp LINKS pastern_session CLI11::CLI11 Threads::Threads)
