@@ -82,7 +82,8 @@ void Runner::fill(v1::Status& status) {
   }
   const bool stopped = report.phase != safety::Phase::armed;
   status.set_robot_state(stopped ? v1::TRIPPED : state_ == v1::TRIPPED ? v1::PARKED : state_);
-  status.set_waiting_for(waiting_for_.empty() && stopped ? "release" : waiting_for_);
+  // A trip within a session may be one that the session gets up from; it says so when it waits for a person.
+  status.set_waiting_for(waiting_for_.empty() && stopped && !session_ ? "release" : waiting_for_);
   status.clear_trip();
   if (stopped) *status.mutable_trip() = record_of(report.trip);
   status.set_robot(robot_.robot().name());

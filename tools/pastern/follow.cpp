@@ -41,6 +41,12 @@ std::optional<std::string> typed_line() {
   return line;
 }
 
+/// Traces are for pictures; they would make a line of JSON a thousand numbers long.
+v1::Telemetry without_trace(v1::Telemetry telemetry) {
+  if (telemetry.has_episode()) telemetry.mutable_episode()->clear_trace();
+  return telemetry;
+}
+
 class Follower {
  public:
   Follower(RobotLine& line, const FollowChoice& choice) : line_(line), choice_(choice) {}
@@ -57,6 +63,7 @@ class Follower {
   void wipe_progress();
   void prompt();
   void look_at_once();
+  [[nodiscard]] bool ours() const;
   [[nodiscard]] std::optional<Exit> ended() const;
   [[nodiscard]] std::optional<Exit> tripped() const;
   [[nodiscard]] Exit close(Exit exit);
@@ -72,7 +79,8 @@ class Follower {
   bool progress_shown_{false};
   bool single_done_{false};
   bool silent_{false};
-  std::uint64_t prompted_{~0ULL};  ///< walks_done when "go" was last asked for
+  bool introduced_{false};
+  std::string prompted_;  ///< what was last asked for
 };
 
 void Follower::wipe_progress() {
@@ -90,7 +98,7 @@ void Follower::show_progress() {
 }
 
 void Follower::take(const v1::Episode& episode) {
-  seen_ = true;
+  seen_ = seen_ || (episode.session() != 0 && episode.session() >= choice_.session);
   single_done_ = single_done_ || episode.part() == v1::SINGLE;
   if (choice_.json || choice_.quiet) return;
   if (!head_said_) say(walk_head());
@@ -104,7 +112,7 @@ void Follower::take(const v1::Episode& episode) {
 void Follower::take(const v1::Telemetry& telemetry) {
   last_word_ = std::chrono::steady_clock::now();
   wipe_progress();
-  if (choice_.json) say(json(telemetry));
+  if (choice_.json) say(json(without_trace(telemetry)));
   switch (telemetry.what_case()) {
     case v1::Telemetry::kStatus:
       notice(telemetry.status());
@@ -113,7 +121,7 @@ void Follower::take(const v1::Telemetry& telemetry) {
       take(telemetry.episode());
       break;
     case v1::Telemetry::kVerdict:
-      verdict_ = telemetry.verdict();
+      if (!choice_.single) verdict_ = telemetry.verdict();
       break;
     case v1::Telemetry::kNote:
       if (!choice_.json && !choice_.quiet) say("      " + telemetry.note());
@@ -139,29 +147,50 @@ void Follower::look_at_once() {
 
 void Follower::notice(const v1::Status& status) {
   status_ = status;
-  progress_.update(status_.walks_done(), status_.walks_planned(), last_word_);
   const v1::SessionPart part = status_.session_part();
   const bool running = part == v1::IN_BASELINE || part == v1::IN_SEARCH || part == v1::IN_CONFIRMATION;
-  seen_ = seen_ || running || (choice_.session != 0 && status_.session() == choice_.session);
+  if (ours() && (running || (choice_.resumed && part == v1::ENDED))) seen_ = true;
+  if (!seen_ || choice_.single) return;
+  progress_.update(status_.walks_done(), status_.walks_planned(), last_word_);
+  if (introduced_ || choice_.json || choice_.quiet || !running) return;
+  introduced_ = true;
+  say(fmt::format("session {} on {} ({}, {} pace), {} walks at the most as planned", status_.session(),
+                  status_.robot(), status_.simulated() ? "simulated" : "real drives", status_.pace(),
+                  status_.walks_planned()));
 }
 
+/// The session to follow, and not one before it that the robot still tells of.
+bool Follower::ours() const { return status_.session() != 0 && status_.session() >= choice_.session; }
+
+/// What the robot waits for a person to do, said once each time.
 void Follower::prompt() {
-  if (status_.waiting_for() != "go" || prompted_ == status_.walks_done()) return;
-  prompted_ = status_.walks_done();
-  wipe_progress();
-  if (!choice_.commander || !can_ask()) {
-    if (!choice_.json) suggest("go", fmt::format("walk {} waits for it", status_.walks_done() + 1));
+  const std::string waits = !seen_ || !ours() ? "" : status_.waiting_for();
+  const std::string about = waits + fmt::format(" {}", status_.walks_done());
+  if ((waits != "go" && waits != "release") || about == prompted_) {
+    if (waits != "go" && waits != "release") prompted_.clear();
     return;
   }
-  say(fmt::format("walk {}: Enter = go; v = the last walk is void; e = end the session; s = stop",
-                  prompted_ + 1));
+  prompted_ = about;
+  wipe_progress();
+  if (choice_.json) return;
+  if (waits == "release") say("tripped: " + trip_words(status_.trip()));
+  const std::uint64_t next = status_.walks_done() + 1;
+  if (!choice_.commander || !can_ask()) {
+    const bool go = waits == "go";
+    suggest(waits, go ? fmt::format("walk {} waits for it", next) : "the session waits for it");
+  } else if (waits == "go") {
+    say(fmt::format("walk {}: Enter = go; v = the last walk is void; e = end the session; s = stop", next));
+  } else {
+    say("when its cause is gone and nobody is in reach: r = release, and the session goes on; e = end the "
+        "session");
+  }
 }
 
 void Follower::send(const v1::Command& command, const std::string& done) {
   v1::Answer answer;
   if (line_.ask(command, answer) == Exit::done)
     say("      " + (answer.words().empty() ? done : answer.words()));
-  prompted_ = ~0ULL;
+  prompted_.clear();
 }
 
 void Follower::obey(const std::string& typed) {
@@ -174,7 +203,9 @@ void Follower::obey(const std::string& typed) {
     command.mutable_mark_void()->set_walk(status_.walks_done());
     command.mutable_mark_void()->set_reason(typed.size() > 2 ? typed.substr(2) : "marked by the operator");
     send(command, "marked void");
-  } else if (status_.waiting_for() == "go") {
+  } else if (typed == "r") {
+    send(command_of(&v1::Command::mutable_release), "released");
+  } else if (typed.empty() && status_.waiting_for() == "go") {
     send(command_of(&v1::Command::mutable_go), "go");
   }
 }
@@ -183,14 +214,16 @@ void Follower::obey(const std::string& typed) {
 std::optional<Exit> Follower::ended() const {
   if (choice_.forever) return std::nullopt;
   if (choice_.single) return single_done_ ? std::optional(Exit::done) : tripped();
-  if (choice_.walks_from && status_.walks_done() > *choice_.walks_from) return Exit::done;
   if (!seen_) return std::nullopt;
+  if (choice_.walks_from && ours() && status_.walks_done() > *choice_.walks_from) return Exit::done;
   if (verdict_) return verdict_->kind() == v1::Verdict::ADOPT ? Exit::done : Exit::findings;
+  if (!ours()) return std::nullopt;
   if (status_.session_part() == v1::ENDED) {
     return status_.verdict().kind() == v1::Verdict::ADOPT ? Exit::done : Exit::findings;
   }
   if (status_.session_part() == v1::INTERRUPTED) return tripped().value_or(Exit::refused);
-  return tripped();
+  // A person at this terminal can release it here; a script is told by the exit status.
+  return choice_.commander && !can_ask() ? tripped() : std::nullopt;
 }
 
 /// A trip that waits for a person; a fall that the session itself gets up from is none.

@@ -47,7 +47,8 @@ struct FollowChoice {
   bool commander{false};     ///< holds the baton: may say go, void, end; Ctrl-C stops the robot
   bool single{false};        ///< ends after one walk that is no part of a session
   bool forever{false};       ///< does not end with the session
-  std::uint64_t session{0};  ///< the one to follow; 0: the one under way
+  std::uint64_t session{0};  ///< the first number to follow; 0: any
+  bool resumed{false};       ///< the session was begun before; it may be over already
   std::optional<std::uint64_t> walks_from;  ///< ends when more walks than these are done
 };
 

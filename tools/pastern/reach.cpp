@@ -102,7 +102,8 @@ Exit RobotLine::ask(const v1::Command& command, v1::Answer& answer) {
   }
   answer = *got;
   if (answer.accepted()) return Exit::done;
-  complain(fmt::format("pastern {}: refused: {}", verb_, answer.words()));
+  const bool said = answer.words().rfind("refused", 0) == 0;
+  complain(fmt::format("pastern {}: {}{}", verb_, said ? "" : "refused: ", answer.words()));
   const std::optional<v1::Answer> now =
       ask_quietly(command_of(&v1::Command::mutable_ask_status), reach_.wait_s);
   return now && now->status().robot_state() == v1::TRIPPED ? Exit::tripped : Exit::refused;

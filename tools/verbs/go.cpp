@@ -30,6 +30,7 @@ class Go final : public LinkVerb {
     say(answer.words().empty() ? "go" : answer.words());
     FollowChoice choice;
     choice.commander = !line.baton_shared();
+    choice.session = before.session();
     choice.walks_from = before.walks_done();
     return line.baton_shared() ? Exit::done : follow(line, choice);
   }

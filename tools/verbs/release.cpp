@@ -1,5 +1,6 @@
 // release: clears a latched trip; the operator's act.
 #include "tools/pastern/link_verb.h"
+#include "tools/pastern/words.h"
 
 namespace pastern::tools {
 namespace {
@@ -11,13 +12,32 @@ class Release final : public LinkVerb {
   const char* group() const override { return "On the robot"; }
   std::vector<std::string> examples() const override {
     return {"pastern release", "",
-            "A release never moves the robot: the torque stays off until the next order."};
+            "Outside a session a release moves nothing. A session that waits for it goes on, under the baton "
+            "held here."};
   }
 
  protected:
   Exit run_on(RobotLine& line) override {
-    return command_and_suggest(line, command_of(&v1::Command::mutable_release),
-                               "released: torque is off, nothing moves");
+    Exit exit = line.hold_baton();
+    if (exit != Exit::done) return exit;
+    v1::Answer answer;
+    exit = line.ask(command_of(&v1::Command::mutable_release), answer);
+    if (exit != Exit::done) return exit;
+    say(answer.words().empty() ? "released: nothing moves by itself" : answer.words());
+    v1::Status status;
+    exit = line.status(status);
+    if (exit != Exit::done) return exit;
+    const v1::SessionPart part = status.session_part();
+    const bool running = part == v1::IN_BASELINE || part == v1::IN_SEARCH || part == v1::IN_CONFIRMATION;
+    if (running && !line.baton_shared()) {
+      // The session goes on under the baton that this process holds.
+      FollowChoice choice;
+      choice.commander = true;
+      choice.session = status.session();
+      return follow(line, choice);
+    }
+    suggest_after(status);
+    return Exit::done;
   }
 };
 

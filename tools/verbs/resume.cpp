@@ -22,15 +22,20 @@ class Resume final : public LinkVerb {
   Exit run_on(RobotLine& line) override {
     Exit exit = line.hold_baton();
     if (exit != Exit::done) return exit;
-    v1::Answer answer;
-    exit = line.ask(command_of(&v1::Command::mutable_resume), answer);
-    if (exit != Exit::done) return exit;
-    if (!choice_.json) say(answer.words().empty() ? "the session goes on" : answer.words());
     v1::Status status;
     exit = line.status(status);
     if (exit != Exit::done) return exit;
+    const v1::SessionPart part = status.session_part();
+    // A session whose ground tool has gone waits for the baton: taking it up again is all that it needs.
+    const bool running = part == v1::IN_BASELINE || part == v1::IN_SEARCH || part == v1::IN_CONFIRMATION;
+    v1::Answer answer;
+    if (!running) exit = line.ask(command_of(&v1::Command::mutable_resume), answer);
+    if (exit != Exit::done) return exit;
+    if (!choice_.json && !choice_.quiet)
+      say(running ? "the session is under way; its baton is held here" : answer.words());
     choice_.commander = true;
     choice_.session = status.session();
+    choice_.resumed = !running;
     return follow(line, choice_);
   }
 

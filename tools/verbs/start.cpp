@@ -42,7 +42,6 @@ class Start final : public LinkVerb {
   std::string plan_path_;
   std::string candidate_path_;
   v1::Command command_;
-  v1::Plan plan_;
   FollowChoice choice_;
 };
 
@@ -67,7 +66,6 @@ Exit Start::before() {
     for (const files::Defect& defect : defects) complain(defect.line());
     return Exit::file_wrong;
   }
-  plan_ = *plan;
   command_.mutable_start_session()->set_plan_text(*text);
   if (candidate) command_.mutable_start_session()->set_candidate_policy(*candidate);
   return Exit::done;
@@ -76,24 +74,18 @@ Exit Start::before() {
 Exit Start::run_on(RobotLine& line) {
   Exit exit = line.hold_baton();
   if (exit != Exit::done) return exit;
+  v1::Status before;
+  exit = line.status(before);
+  if (exit != Exit::done) return exit;
   v1::Answer answer;
   exit = line.ask(command_, answer);
   if (exit != Exit::done) {
-    v1::Status status;
-    if (line.status(status) == Exit::done) suggest_after(status);
+    suggest_after(before);
     return exit;
   }
-  v1::Status status;
-  exit = line.status(status);
-  if (exit != Exit::done) return exit;
-  if (!choice_.json) {
-    say(fmt::format("session {} on {} ({}, {} pace): {} + {} + 2 x {} walks of {:g} s", status.session(),
-                    status.robot(), status.simulated() ? "simulated" : "real drives", status.pace(),
-                    plan_.baseline_walks(), plan_.search_walks(), plan_.confirmation_pairs(),
-                    plan_.walk_s()));
-  }
+  if (!choice_.json && !choice_.quiet) say(answer.words());
   choice_.commander = true;
-  choice_.session = status.session();
+  choice_.session = before.session() + 1;
   return follow(line, choice_);
 }
 
