@@ -271,7 +271,12 @@ bool Runner::make_ready(const Order& order, Ended& ended) {
   }
   (void)move(Motion::parked, kOnTheMark_s, v1::PARKED);
   while (true) {
-    if (tripped() && !out_of_trip(ended)) return false;
+    if (!tripped()) {
+      // A release takes a tick. A resumed session is no longer tripped and must meet the same ticks.
+      (void)move(Motion::parked, 0, v1::PARKED);
+    } else if (!out_of_trip(ended)) {
+      return false;
+    }
     if (!cool_down(ended)) return false;
     if (!tripped()) return true;
   }

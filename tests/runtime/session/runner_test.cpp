@@ -1,0 +1,316 @@
+// Whole sessions on the puppet: the same content twice, and after being left and resumed at every walk.
+#include "runtime/session/runner.h"
+
+#include <google/protobuf/text_format.h>
+#include <gtest/gtest.h>
+
+#include "tests/runtime/session/setting.h"
+
+namespace pastern::session {
+namespace {
+
+struct Case {
+  Case() : robot(test::shipped_robot("dunlin12")), policy(test::trot_file(robot)) {
+    given.robot = &robot;
+    given.start = &policy;
+    given.plan = test::short_plan();
+    given.plugin = test::puppet_path();
+    given.plugin_options = test::puppet_options(robot.robot());
+    given.plugin_seed = 3;
+  }
+  void fault(const std::string& text) { given.plugin_options = test::puppet_options(robot.robot(), text); }
+
+  files::RobotFile robot;
+  files::PolicyFile policy;
+  InProcess given;
+};
+
+TEST(Runner, WalksASessionToItsVerdictTheSameTwice) {
+  const Case once;
+  const InProcessResult first = run_session_in_process(once.given);
+  const InProcessResult second = run_session_in_process(once.given);
+  ASSERT_EQ(first.ended.how, Ended::How::verdict) << first.ended.words;
+  ASSERT_TRUE(first.verdict);
+  EXPECT_EQ(first.episodes.size(), 2U + 8U + 10U);
+  EXPECT_FALSE(first.digest.empty());
+  EXPECT_EQ(first.digest, second.digest);
+  for (const v1::Episode& episode : first.episodes) {
+    EXPECT_EQ(episode.outcome(), v1::COMPLETED);
+    EXPECT_GT(episode.terms().forward(), 0);
+    EXPECT_EQ(episode.parameters_sha256().size(), 32U);
+  }
+  EXPECT_NE(first.episodes[0].terms().total(), first.episodes[1].terms().total());  // draws differ
+  EXPECT_GT(first.episodes[1].started_s(), first.episodes[0].started_s() + 0.6);
+}
+
+TEST(Runner, AnotherSeedIsAnotherSession) {
+  Case once;
+  const InProcessResult first = run_session_in_process(once.given);
+  once.given.plan.set_seed(8);
+  EXPECT_NE(run_session_in_process(once.given).digest, first.digest);
+}
+
+// Faults make some walks void and some falls, so that these are resumed over as well.
+TEST(Runner, LeftAndResumedAfterEveryWalkItEndsWithTheSameContent) {
+  Case once;
+  once.given.plan.set_max_falls(20);
+  once.fault("fault=tilt;at=2300;for=400;only_draw=3");
+  const InProcessResult whole = run_session_in_process(once.given);
+  ASSERT_EQ(whole.ended.how, Ended::How::verdict) << whole.ended.words;
+  int falls = 0;
+  for (const v1::Episode& episode : whole.episodes) falls += episode.outcome() == v1::FELL ? 1 : 0;
+  EXPECT_GT(falls, 0);
+
+  const test::TestFolder folder;
+  InProcess pieces = once.given;
+  pieces.journal_folder = folder.path();
+  pieces.after_walk = [](const v1::Episode&) { return false; };
+  InProcessResult last = run_session_in_process(pieces);
+  pieces.resume = true;
+  std::size_t walks = last.episodes.size();
+  while (last.ended.how == Ended::How::interrupted && walks < 100) {
+    last = run_session_in_process(pieces);
+    walks += last.episodes.size();
+  }
+  ASSERT_EQ(last.ended.how, Ended::How::verdict) << last.ended.words;
+  EXPECT_EQ(walks, whole.episodes.size());
+  EXPECT_EQ(last.digest, whole.digest);
+}
+
+TEST(Runner, AFaultThatHasNothingToDoWithWalkingMakesVoidWalks) {
+  Case once;
+  once.given.plan.set_max_void_repeats(20);
+  once.fault("fault=lost;at=2300;for=60;only_draw=4");
+  const InProcessResult result = run_session_in_process(once.given);
+  ASSERT_EQ(result.ended.how, Ended::How::verdict) << result.ended.words;
+  int voids = 0;
+  for (const v1::Episode& episode : result.episodes) {
+    if (episode.outcome() != v1::VOID) continue;
+    ++voids;
+    EXPECT_EQ(episode.void_reason(), "frame_stale");
+    EXPECT_EQ(episode.trip().cause(), "frame_stale");
+    EXPECT_EQ(episode.trip().unit(), "s");
+  }
+  EXPECT_GT(voids, 0);
+  EXPECT_EQ(result.episodes.size(), 20U + static_cast<std::size_t>(voids));
+}
+
+TEST(Runner, ATripBeforeTheWalkIsAVoidWalkToo) {
+  Case once;
+  once.fault("fault=nan;at=400;for=5");
+  const InProcessResult result = run_session_in_process(once.given);
+  EXPECT_EQ(result.ended.how, Ended::How::verdict);
+  EXPECT_EQ(result.episodes.size(), 4U);  // the first walk and three repeats
+  EXPECT_EQ(result.episodes[0].void_reason(), "tripped before the walk: frame_not_finite");
+  EXPECT_EQ(result.verdict->kind(), v1::Verdict::KEEP);
+}
+
+TEST(Runner, AnEmergencyStopWaitsForAPerson) {
+  Case once;
+  once.fault("fault=estop;at=2300;for=10");
+  const InProcessResult result = run_session_in_process(once.given);
+  EXPECT_EQ(result.ended.how, Ended::How::interrupted);
+  EXPECT_NE(result.ended.words.find("release"), std::string::npos) << result.ended.words;
+  EXPECT_EQ(result.episodes.size(), 1U);
+}
+
+TEST(Runner, WaitsForWarmWindingsInSimulatedTime) {
+  Case once;
+  once.fault("fault=hot;at=0;for=5000");
+  once.given.plan.set_search_walks(0);
+  once.given.plan.set_baseline_walks(1);
+  const InProcessResult result = run_session_in_process(once.given);
+  ASSERT_EQ(result.ended.how, Ended::How::verdict) << result.ended.words;
+  ASSERT_EQ(result.episodes.size(), 1U);
+  EXPECT_GE(result.episodes[0].started_s(), 4.9);
+}
+
+TEST(Runner, APackBelowItsFloorEndsTheWaitInWords) {
+  Case once;
+  once.fault("fault=low_pack;at=0;for=100000000");
+  const InProcessResult result = run_session_in_process(once.given);
+  EXPECT_EQ(result.ended.how, Ended::How::interrupted);
+  EXPECT_NE(result.ended.words.find("pack"), std::string::npos) << result.ended.words;
+  EXPECT_TRUE(result.episodes.empty());
+}
+
+TEST(Runner, AnOfferedCandidateOfAnotherStructureIsRefused) {
+  Case once;
+  v1::Policy other = once.policy.policy();
+  other.set_gait_hz(2);
+  const files::PolicyFile candidate = test::policy_file(once.robot, other);
+  once.given.plan = test::short_plan(v1::Adaptation::OFFERED_CANDIDATE);
+  once.given.candidate = &candidate;
+  const InProcessResult result = run_session_in_process(once.given);
+  EXPECT_EQ(result.ended.how, Ended::How::refused);
+  EXPECT_NE(result.ended.words.find("differ"), std::string::npos) << result.ended.words;
+}
+
+TEST(Runner, InProcessRefusesRealDrives) {
+  Case once;
+  once.given.plugin = test::real_puppet_path();
+  EXPECT_EQ(run_session_in_process(once.given).ended.how, Ended::How::refused);
+}
+
+// Hooks of a person at operator pace.
+class Person final : public Hooks {
+ public:
+  bool wait(const std::string& what) override {
+    waits.push_back(what);
+    return act && act(what);
+  }
+  void on_episode(const v1::Episode& episode) override { episodes.push_back(episode); }
+  void on_verdict(const v1::Verdict& verdict) override { verdicts.push_back(verdict); }
+
+  std::function<bool(const std::string&)> act;
+  std::vector<std::string> waits;
+  std::vector<v1::Episode> episodes;
+  std::vector<v1::Verdict> verdicts;
+};
+
+struct Desk {
+  explicit Desk(bool confirmed = true)
+      : robot(test::shipped_robot("dunlin12")),
+        policy(test::trot_file(robot)),
+        cycle(robot.robot(), policy.policy(), test::puppet(robot)),
+        mover(make_stepped_mover(cycle)) {
+    std::string error;
+    journal = journal::Journal::open(folder.path(), error);
+    if (confirmed) (void)journal->confirm_first_start({files::hex(robot.sha256()), "test", "now"}).ok;
+    runner = std::make_unique<Runner>(robot, *mover, *journal, person);
+    plan = test::short_plan();
+    plan.set_go_by(v1::Plan::OPERATOR);
+    plan.set_search_walks(1);  // no batch fits: baseline, then the verdict
+    person.act = [this](const std::string& what) {
+      if (what == "go") runner->go();
+      return what == "go";
+    };
+  }
+  Ended run() {
+    std::string text;
+    EXPECT_TRUE(google::protobuf::TextFormat::PrintToString(plan, &text));
+    return runner->run({plan, text, policy, std::nullopt});
+  }
+
+  test::TestFolder folder;
+  files::RobotFile robot;
+  files::PolicyFile policy;
+  Cycle cycle;
+  std::unique_ptr<Mover> mover;
+  std::unique_ptr<journal::Journal> journal;
+  Person person;
+  std::unique_ptr<Runner> runner;
+  v1::Plan plan;
+};
+
+TEST(Runner, NothingWalksBeforeTheFirstStartIsConfirmed) {
+  Desk desk(false);
+  EXPECT_EQ(desk.run().how, Ended::How::refused);
+  EXPECT_EQ(desk.runner->walk(desk.policy, 1, 1).how, Ended::How::refused);
+  EXPECT_EQ(desk.runner->resume().how, Ended::How::refused);
+  EXPECT_EQ(desk.cycle.report().ticks, 0U);
+  EXPECT_FALSE(desk.journal->last_session());
+}
+
+TEST(Runner, AtOperatorPaceEveryWalkAndTheVerdictWaitForGo) {
+  Desk desk;
+  EXPECT_EQ(desk.run().how, Ended::How::verdict);
+  EXPECT_EQ(desk.person.episodes.size(), 2U);
+  EXPECT_EQ(desk.person.waits, (std::vector<std::string>{"go", "go", "go"}));
+  EXPECT_EQ(desk.person.verdicts.size(), 1U);
+}
+
+TEST(Runner, AFinishedWalkCanBeDeclaredVoidUntilTheNextBegins) {
+  Desk desk;
+  bool marked = false;
+  desk.person.act = [&](const std::string& what) {
+    if (what != "go") return false;
+    std::string words;
+    if (desk.person.episodes.size() == 2 && !marked) {
+      marked = true;
+      EXPECT_FALSE(desk.runner->mark_void(1, "bumped", words)) << words;
+      EXPECT_TRUE(desk.runner->mark_void(2, "bumped", words)) << words;
+      EXPECT_FALSE(desk.runner->mark_void(2, "bumped", words)) << words;
+    }
+    desk.runner->go();
+    return true;
+  };
+  EXPECT_EQ(desk.run().how, Ended::How::verdict);
+  const auto finished = desk.journal->finished(1);
+  ASSERT_EQ(finished.size(), 3U);
+  EXPECT_EQ(finished[1].episode.outcome(), v1::VOID);
+  EXPECT_EQ(finished[1].episode.void_reason(), "bumped");
+  EXPECT_EQ(finished[2].episode.index(), 1U);
+  EXPECT_NE(finished[2].episode.draw(), finished[1].episode.draw());
+  // Published: walks 1 and 2, walk 2 again as void, walk 3.
+  ASSERT_EQ(desk.person.episodes.size(), 4U);
+  EXPECT_EQ(desk.person.episodes[2].outcome(), v1::VOID);
+}
+
+TEST(Runner, AnOperatorsStopMakesTheWalkVoidAndWaitsForRelease) {
+  Desk desk;
+  bool stopped = false;
+  desk.person.act = [&](const std::string& what) {
+    std::string words;
+    if (what == "release") {
+      EXPECT_TRUE(desk.runner->release(words)) << words;
+      return true;
+    }
+    if (desk.person.episodes.size() == 1 && !stopped) {
+      stopped = true;
+      desk.mover->signals().stop.store(true);
+      desk.runner->rest();
+      return true;
+    }
+    desk.runner->go();
+    return true;
+  };
+  EXPECT_EQ(desk.run().how, Ended::How::verdict);
+  EXPECT_EQ(desk.person.episodes.size(), 2U);
+  EXPECT_NE(std::find(desk.person.waits.begin(), desk.person.waits.end(), "release"),
+            desk.person.waits.end());
+}
+
+TEST(Runner, WithoutTheBatonNothingBeginsAtSteppedPace) {
+  Desk desk;
+  desk.mover->signals().baton_lost.store(true);
+  EXPECT_EQ(desk.run().how, Ended::How::interrupted);
+  EXPECT_TRUE(desk.person.episodes.empty());
+  EXPECT_EQ(desk.person.waits, (std::vector<std::string>{"baton"}));
+  v1::Status status;
+  desk.runner->fill(status);
+  EXPECT_EQ(status.session_part(), v1::INTERRUPTED);
+  desk.mover->signals().baton_lost.store(false);
+  const Ended resumed = desk.runner->resume();
+  EXPECT_EQ(resumed.how, Ended::How::verdict) << resumed.words;
+}
+
+TEST(Runner, EndedByTheOperatorIsKeepAndCannotBeResumed) {
+  Desk desk;
+  desk.person.act = [&](const std::string&) {
+    if (desk.person.episodes.size() == 1) {
+      desk.runner->end();
+    } else {
+      desk.runner->go();
+    }
+    return true;
+  };
+  EXPECT_EQ(desk.run().how, Ended::How::verdict);
+  ASSERT_EQ(desk.person.verdicts.size(), 1U);
+  EXPECT_EQ(desk.person.verdicts[0].kind(), v1::Verdict::KEEP);
+  EXPECT_EQ(desk.runner->resume().how, Ended::How::refused);
+}
+
+TEST(Runner, ASingleWalkIsRecordedOutsideSessions) {
+  Desk desk;
+  EXPECT_EQ(desk.runner->walk(desk.policy, 0.5, 9).how, Ended::How::verdict);
+  EXPECT_EQ(desk.runner->walk(desk.policy, 0.5, 10).how, Ended::How::verdict);
+  const auto finished = desk.journal->finished(0);
+  ASSERT_EQ(finished.size(), 2U);
+  EXPECT_EQ(finished[1].episode.part(), v1::SINGLE);
+  EXPECT_EQ(finished[1].episode.walk(), 2U);
+  EXPECT_EQ(desk.runner->interrupted_session(), 0U);
+}
+
+}  // namespace
+}  // namespace pastern::session
