@@ -70,6 +70,10 @@ v1::Policy policy_of_fixed_shape(const v1::Robot& robot) {
   }
   add_layer(policy, policy.channels_size(), 32, v1::Layer::TANH);
   add_layer(policy, 32, actions, v1::Layer::IDENTITY);
+  v1::ParameterGroup& all = *policy.add_groups();
+  all.set_name("all");
+  all.set_count(static_cast<std::uint32_t>(policy.parameters_size()));
+  all.set_perturbation_scale(0.05);
   return policy;
 }
 

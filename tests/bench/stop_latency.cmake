@@ -1,0 +1,5 @@
+if(NOT TARGET bench_rig)
+  add_subdirectory(${CMAKE_CURRENT_SOURCE_DIR}/rig)
+endif()
+pastern_bench(stop_latency SOURCES stop_latency.cpp LINKS bench_rig pastern_link CLI11::CLI11)
+add_dependencies(bench_stop_latency pastern-onboard)
