@@ -178,7 +178,8 @@ struct Desk {
     journal = journal::Journal::open(folder.path(), error);
     if (confirmed) (void)journal->confirm_first_start({files::hex(robot.sha256()), "test", "now"}).ok;
     runner = std::make_unique<Runner>(robot, *mover, *journal, person);
-    plan = test::short_plan();
+    plan = test::short_plan(v1::Adaptation::SEQUENTIAL_HILL_CLIMBING);
+    plan.mutable_adaptation()->clear_batch();
     plan.set_go_by(v1::Plan::OPERATOR);
     plan.set_search_walks(1);  // no batch fits: baseline, then the verdict
     person.act = [this](const std::string& what) {
