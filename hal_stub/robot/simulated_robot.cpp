@@ -295,6 +295,11 @@ void SimulatedRobot::step() {
 
 bool SimulatedRobot::bus_sound() const { return !faulty(v1::Fault::BUS_BROKEN); }
 
+TorqueMode SimulatedRobot::torque_mode() const {
+  if (told_.on > 0) return TorqueMode::on;
+  return told_.damping > 0 ? TorqueMode::damping : TorqueMode::off;
+}
+
 double SimulatedRobot::time_s() const { return static_cast<double>(clock_.tick) * model_->period_s(); }
 
 bool SimulatedRobot::fallen() const {

@@ -44,6 +44,9 @@ struct Truth {
   double power_w{0};   ///< sum of |torque * joint speed|
 };
 
+/// What the drives do: nothing, what they are told, or damp by themselves because commands have stopped.
+enum class TorqueMode : std::uint8_t { off = 0, on, damping };
+
 class SimulatedRobot {
  public:
   SimulatedRobot(std::shared_ptr<const Model> model, const Site& site, std::uint64_t seed);
@@ -73,7 +76,8 @@ class SimulatedRobot {
   [[nodiscard]] bool bus_sound() const;
 
   [[nodiscard]] Truth truth() const;
-  [[nodiscard]] bool fallen() const;  ///< cheaper than truth().fallen
+  [[nodiscard]] bool fallen() const;             ///< cheaper than truth().fallen
+  [[nodiscard]] TorqueMode torque_mode() const;  ///< in the last step
   [[nodiscard]] double time_s() const;
   [[nodiscard]] const Model& model() const { return *model_; }
   [[nodiscard]] const Site& site() const { return site_; }
