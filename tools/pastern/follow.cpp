@@ -101,12 +101,15 @@ void Follower::take(const v1::Episode& episode) {
   seen_ = seen_ || (episode.session() != 0 && episode.session() >= choice_.session);
   single_done_ = single_done_ || episode.part() == v1::SINGLE;
   if (choice_.json || choice_.quiet) return;
-  if (!head_said_) say(walk_head());
-  head_said_ = true;
-  const bool tell =
-      !at_terminal() && !choice_.single && progress_.seconds_to_go() && episode.walk() % 10 == 0;
-  say(walk_line(episode));
-  if (tell) say("      " + progress_.line());
+  const bool tenth = !at_terminal() && !choice_.single && episode.walk() % 10 == 0;
+  if (!choice_.brief) {
+    if (!head_said_) say(walk_head());
+    head_said_ = true;
+    say(walk_line(episode));
+  }
+  if (tenth)
+    say(fmt::format("{}{}, return {:.2f}", choice_.brief ? "" : "      ", progress_.line(),
+                    episode.terms().total()));
 }
 
 void Follower::take(const v1::Telemetry& telemetry) {
@@ -124,7 +127,7 @@ void Follower::take(const v1::Telemetry& telemetry) {
       if (!choice_.single) verdict_ = telemetry.verdict();
       break;
     case v1::Telemetry::kNote:
-      if (!choice_.json && !choice_.quiet) say("      " + telemetry.note());
+      if (!choice_.json && !choice_.quiet && !choice_.brief) say("      " + telemetry.note());
       break;
     case v1::Telemetry::WHAT_NOT_SET:
       break;

@@ -44,6 +44,7 @@ class Progress {
 struct FollowChoice {
   bool json{false};          ///< each message as one line of JSON
   bool quiet{false};         ///< the verdict only
+  bool brief{false};         ///< progress without a line a walk
   bool commander{false};     ///< holds the baton: may say go, void, end; Ctrl-C stops the robot
   bool single{false};        ///< ends after one walk that is no part of a session
   bool forever{false};       ///< does not end with the session

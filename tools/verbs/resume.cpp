@@ -17,7 +17,8 @@ class Resume final : public LinkVerb {
  protected:
   void more_options(Options& options) override {
     options.flag("--json", choice_.json, "Each message of the robot as one line of JSON")
-        .flag("--quiet", choice_.quiet, "The verdict only");
+        .flag("--quiet", choice_.quiet, "The verdict only")
+        .flag("--brief", choice_.brief, "Progress, without a line a walk");
   }
   Exit run_on(RobotLine& line) override {
     Exit exit = line.hold_baton();

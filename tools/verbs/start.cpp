@@ -33,6 +33,7 @@ class Start final : public LinkVerb {
         .text("--candidate", candidate_path_,
               "Policy file to offer, for a plan that only confirms a candidate")
         .flag("--quiet", choice_.quiet, "The verdict only")
+        .flag("--brief", choice_.brief, "Progress, without a line a walk")
         .flag("--json", choice_.json, "Each message of the robot as one line of JSON");
   }
   Exit before() override;
