@@ -51,6 +51,7 @@ bool testable(const std::vector<double>& differences) {
 
 std::vector<double> shifted(const std::vector<double>& differences, double shift, double sign) {
   std::vector<double> result;
+  result.reserve(differences.size());
   for (const double d : differences) result.push_back(sign * (d - shift));
   return result;
 }
