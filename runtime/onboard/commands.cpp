@@ -46,6 +46,7 @@ void Program::answer(const Asked& asked, const v1::Command& command) {
     answer.set_id(command.id());
     (void)parts_.journal.remember_command(command.id(), answer.SerializeAsString()).ok;
   }
+  show_status(false);  // who asks for the status after this answer sees what the command did
   server_->answer(asked.ticket, answer);
 }
 
@@ -92,7 +93,7 @@ v1::Answer Program::start_session(const v1::StartSession& start) {
   if (!why.empty()) return refused(why);
   if (runner_.interrupted_session() != 0) {
     const journal::Written ended =
-        end_interrupted("keep the start policy: another session was started instead");
+        runner_.end_interrupted("keep the start policy: another session was started instead");
     if (!ended.ok) return refused(ended.words);
   }
   job_.kind = Job::Kind::session;
@@ -219,18 +220,9 @@ v1::Answer Program::end_session(const std::string& who) {
   if (busy() || runner_.interrupted_session() == 0) return refused("no session to end");
   const std::uint64_t number = runner_.interrupted_session();
   const journal::Written written =
-      end_interrupted("keep the start policy: ended by " + who + " before a verdict");
+      runner_.end_interrupted("keep the start policy: ended by " + who + " before a verdict");
   return written.ok ? accepted("session " + std::to_string(number) + " has ended as keep")
                     : refused(written.words);
-}
-
-journal::Written Program::end_interrupted(const std::string& words) {
-  v1::Verdict verdict;
-  verdict.set_kind(v1::Verdict::KEEP);
-  verdict.set_p_value(1);
-  verdict.set_rule("no confirmation");
-  verdict.set_words(words);
-  return parts_.journal.end_session(runner_.interrupted_session(), verdict);
 }
 
 }  // namespace pastern::onboard

@@ -73,7 +73,7 @@ bool take(const std::string& name, const std::string& value, Options& options, s
     error = name + ": found \"" + value + "\", expected " + std::string(option.expected);
     return false;
   }
-  error = "unknown option " + name + "; see pastern-onboard --help";
+  error = "found " + name + ", expected an option that is known; see pastern-onboard --help";
   return false;
 }
 

@@ -76,7 +76,6 @@ void Program::serve() {
     } else {
       answer(asked, std::get<v1::Fetch>(asked.what));
     }
-    show_status(false);
   }
   if (std::chrono::steady_clock::now() - shown_ >= kStatusEvery) show_status(true);
 }
@@ -132,19 +131,24 @@ void Program::publish(v1::Telemetry telemetry, bool kept) {
   if (server_ != nullptr) server_->publish(telemetry);
 }
 
-// A power cut may have come between the walk's record and its telemetry.
+// A power cut may have come between a walk's record, or a verdict's, and its telemetry.
 void Program::publish_missed() {
   const std::optional<journal::SessionRow> row = parts_.journal.last_session();
   if (!row) return;
   const std::uint64_t last = parts_.journal.last_walk(row->session);
-  if (last == 0) return;
+  bool walk_told = last == 0;
+  bool verdict_told = false;
   for (const v1::Telemetry& told : parts_.journal.telemetry(1, parts_.journal.last_sequence())) {
-    if (told.has_episode() && told.episode().session() == row->session && told.episode().walk() == last)
-      return;
+    const bool of_session = told.has_episode() && told.episode().session() == row->session;
+    if (of_session) verdict_told = false;
+    if (of_session && told.episode().walk() == last) walk_told = true;
+    if (told.has_verdict()) verdict_told = true;
   }
   for (const journal::Journal::Finished& walk : parts_.journal.finished(row->session)) {
-    if (walk.episode.walk() == last) on_episode(walk.episode);
+    if (!walk_told && walk.episode.walk() == last) on_episode(walk.episode);
   }
+  const std::optional<v1::Verdict> verdict = parts_.journal.verdict(row->session);
+  if (verdict && (!verdict_told || !walk_told)) on_verdict(*verdict);
 }
 
 void Program::on_episode(const v1::Episode& episode) {

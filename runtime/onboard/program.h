@@ -81,7 +81,6 @@ class Program final : public session::Hooks {
   [[nodiscard]] v1::Answer confirm(const v1::ConfirmFirstStart& confirm, const std::string& who);
   [[nodiscard]] v1::Answer end_session(const std::string& who);
   [[nodiscard]] std::optional<std::string> proposed_sha(std::string& words) const;
-  [[nodiscard]] journal::Written end_interrupted(const std::string& words);
 
   // fetches.cpp
   void answer(const Asked& asked, const v1::Fetch& fetch);

@@ -47,6 +47,7 @@ bool same_structure(v1::Policy a, v1::Policy b) {
 
 Runner::Runner(const files::RobotFile& robot, Mover& mover, journal::Journal& journal, Hooks& hooks)
     : robot_(robot), mover_(mover), journal_(journal), hooks_(hooks), robot_sha_(files::hex(robot.sha256())) {
+  recall_last_session();
   const std::optional<std::string> bytes = journal_.robot_state();
   if (!bytes || bytes->empty()) return;
   v1::CarriedState state;
@@ -445,6 +446,20 @@ Ended Runner::leave_session(Ended::How how, const std::string& words) {
   by_operator_ = true;
   state_ = tripped() ? v1::TRIPPED : v1::PARKED;
   return {how, words};
+}
+
+journal::Written Runner::end_interrupted(const std::string& words) {
+  v1::Verdict verdict;
+  verdict.set_kind(v1::Verdict::KEEP);
+  verdict.set_p_value(1);
+  verdict.set_rule("no confirmation");
+  verdict.set_words(words);
+  const journal::Written written = journal_.end_session(interrupted_session(), verdict);
+  if (written.ok) {
+    recall_last_session();
+    hooks_.on_verdict(verdict);
+  }
+  return written;
 }
 
 bool Runner::mark_void(std::uint64_t walk, const std::string& reason, std::string& words) {

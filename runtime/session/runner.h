@@ -78,6 +78,9 @@ class Runner {
   /// One walk of a policy outside a session; recorded with session 0.
   [[nodiscard]] Ended walk(const files::PolicyFile& policy, double duration_s, std::uint64_t draw);
 
+  /// Ends the journal's interrupted session as "keep", in these words.
+  [[nodiscard]] journal::Written end_interrupted(const std::string& words);
+
   // For commands, from within the hooks or between runs; same thread.
   void go() { go_ = true; }
   void end() { end_ = true; }      ///< the session ends as "keep" as soon as the robot is parked
@@ -117,6 +120,7 @@ class Runner {
                                                            std::string& words) const;
   [[nodiscard]] Ended leave_session(Ended::How how, const std::string& words);
   void say(const std::string& words);
+  void recall_last_session();
   [[nodiscard]] std::int64_t session_ns();
   [[nodiscard]] bool tripped();
   [[nodiscard]] bool releases_itself(const safety::Trip& trip) const;

@@ -61,15 +61,26 @@ void Runner::say(const std::string& words) {
   hooks_.on_note(words);
 }
 
+// What the status says after a restart, until another session begins.
+void Runner::recall_last_session() {
+  const std::optional<journal::SessionRow> row = journal_.last_session();
+  if (!row) return;
+  last_.Clear();
+  last_.set_session(row->session);
+  last_.set_session_part(row->ended ? v1::ENDED : v1::INTERRUPTED);
+  for (const journal::Journal::Finished& walk : journal_.finished(row->session)) {
+    last_.set_walks_done(walk.episode.walk());
+    if (walk.episode.outcome() == v1::FELL) last_.set_falls(last_.falls() + 1);
+    if (walk.episode.outcome() == v1::VOID) last_.set_voids(last_.voids() + 1);
+  }
+  const std::optional<v1::Verdict> verdict = journal_.verdict(row->session);
+  if (verdict) *last_.mutable_verdict() = *verdict;
+}
+
 void Runner::fill(v1::Status& status) {
   const CycleReport report = mover_.report();
   if (!session_) {
-    const v1::Status& last = last_;
-    status.MergeFrom(last);
-    if (last.session_part() == v1::NO_SESSION && interrupted_session() != 0) {
-      status.set_session_part(v1::INTERRUPTED);
-      status.set_session(interrupted_session());
-    }
+    status.MergeFrom(last_);
   } else {
     status.set_session_part(session_->part());
     status.set_session(number_);
