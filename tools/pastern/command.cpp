@@ -81,6 +81,10 @@ int run_command(const std::vector<std::string>& arguments) {
   declare(app, verbs);
   const std::string first = arguments.empty() ? "" : arguments[0];
   if (arguments.empty()) return usage("which verb?", "");
+  const bool general = first == "-h" || first == "--help" || first == "--version";
+  if (!first.empty() && first[0] == '-' && !general) {
+    return usage(fmt::format("found '{}', expected a verb first", first), "");
+  }
   if (!first.empty() && first[0] != '-' && !is_verb(first, verbs)) {
     return usage(no_such_verb(first, verbs), "");
   }

@@ -75,6 +75,8 @@ class Follower {
   std::optional<v1::Verdict> verdict_;
   std::chrono::steady_clock::time_point last_word_{std::chrono::steady_clock::now()};
   bool seen_{false};  ///< the session, or the single walk, has been seen under way
+  bool settled_{
+      false};  ///< status_ is not ahead of the walks that were told: it came in their order, or none is left
   bool head_said_{false};
   bool progress_shown_{false};
   bool single_done_{false};
@@ -119,6 +121,7 @@ void Follower::take(const v1::Telemetry& telemetry) {
   switch (telemetry.what_case()) {
     case v1::Telemetry::kStatus:
       notice(telemetry.status());
+      settled_ = true;
       break;
     case v1::Telemetry::kEpisode:
       take(telemetry.episode());
@@ -136,7 +139,9 @@ void Follower::take(const v1::Telemetry& telemetry) {
 
 /// Asks when telemetry has been silent for a second: at stepped pace nothing is published between orders.
 void Follower::look() {
-  if (std::chrono::steady_clock::now() - last_word_ >= std::chrono::seconds(1)) look_at_once();
+  if (std::chrono::steady_clock::now() - last_word_ < std::chrono::seconds(1)) return;
+  look_at_once();
+  settled_ = !silent_;
 }
 
 void Follower::look_at_once() {
@@ -220,7 +225,7 @@ std::optional<Exit> Follower::ended() const {
   if (!seen_) return std::nullopt;
   if (choice_.walks_from && ours() && status_.walks_done() > *choice_.walks_from) return Exit::done;
   if (verdict_) return verdict_->kind() == v1::Verdict::ADOPT ? Exit::done : Exit::findings;
-  if (!ours()) return std::nullopt;
+  if (!ours() || !settled_) return std::nullopt;
   if (status_.session_part() == v1::ENDED) {
     return status_.verdict().kind() == v1::Verdict::ADOPT ? Exit::done : Exit::findings;
   }

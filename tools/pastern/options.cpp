@@ -4,7 +4,7 @@
 #include <fmt/format.h>
 
 #include <CLI/CLI.hpp>
-#include <cmath>
+#include <type_traits>
 
 namespace pastern::tools {
 namespace {
@@ -14,6 +14,10 @@ CLI::Validator within(T min, T max) {
   return CLI::Validator(
       [min, max](std::string& word) {
         T value{};
+        // A minus before an unsigned number would be wrapped round, not refused.
+        if (std::is_unsigned_v<T> && word.find('-') != std::string::npos) {
+          return fmt::format("found {}, expected {} to {}", word, min, max);
+        }
         if (!CLI::detail::lexical_cast(word, value))
           return fmt::format("found '{}', expected a number", word);
         // Written so that NaN is refused.

@@ -27,7 +27,7 @@ Exit press(RobotLine& line, bool halt, double patience_s) {
   const auto begun = Clock::now();
   int tries = 0;
   bool received = false;
-  for (double left = patience_s; left > 0;
+  for (double left = patience_s; left > 0.05;
        left = patience_s - std::chrono::duration<double>(Clock::now() - begun).count()) {
     // A new id each time: a repeated one would be given the first answer again.
     const v1::Command command =

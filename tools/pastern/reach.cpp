@@ -84,6 +84,7 @@ std::unique_ptr<RobotLine> RobotLine::open(const Reach& reach, const std::string
 
 RobotLine::~RobotLine() {
   if (noted_) unlink(note_path().c_str());
+  if (client_ && client_->baton() != 0) client_->give_baton();
 }
 
 std::optional<v1::Answer> RobotLine::ask_quietly(const v1::Command& command, double wait_s) {

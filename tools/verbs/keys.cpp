@@ -46,7 +46,7 @@ class Keys final : public Verb {
                     "~/.config/pastern/keys", kRobotFolder),
         fmt::format("allow, revoke and list use {}. --folder names another. Hand over .public files only.",
                     kRobotFolder),
-        "The robot reads its keys when pastern-onboard starts."};
+        "The robot reads its list again once a second; its own pair when pastern-onboard starts."};
   }
   void options(Options& options) override {
     options.choice("what", what_, {"make", "trust", "allow", "revoke", "list"}, "What to do", true)
@@ -121,7 +121,7 @@ Exit Keys::allow() {
   if (!key) return Exit::file_wrong;
   std::string error;
   if (!link::allow(folder_, who_, may_ == "command", *key, error)) return wrong(error);
-  say(fmt::format("{} may {} this robot, from the next start of pastern-onboard", who_, may_));
+  say(fmt::format("{} may {} this robot; pastern-onboard sees it within a second or two", who_, may_));
   suggest("keys list --folder " + folder_, "who may do what");
   return Exit::done;
 }
@@ -129,7 +129,7 @@ Exit Keys::allow() {
 Exit Keys::revoke() {
   std::string error;
   if (!link::revoke(folder_, who_, error)) return wrong(error);
-  say(fmt::format("{} is no longer allowed; start pastern-onboard again to shut an open line", who_));
+  say(fmt::format("{} is no longer allowed; pastern-onboard sees it within a second or two", who_));
   suggest("keys list --folder " + folder_, "who may do what");
   return Exit::done;
 }
