@@ -82,7 +82,8 @@ void Runner::fill(v1::Status& status) {
   if (!session_) {
     status.MergeFrom(last_);
   } else {
-    status.set_session_part(session_->part());
+    // It has ended when its verdict is on disk, not before.
+    status.set_session_part(session_->next() ? session_->part() : v1::IN_CONFIRMATION);
     status.set_session(number_);
     status.set_walks_done(session_->walks_done());
     status.set_walks_planned(session_->walks_planned());

@@ -25,6 +25,27 @@ struct Case {
   InProcess given;
 };
 
+struct Pieces {
+  std::size_t walks{0};
+  std::string digest;
+};
+
+// A session in as many processes as it has walks, as far as the robot can tell.
+Pieces left_at_every_walk(InProcess given) {
+  const test::TestFolder folder;
+  given.journal_folder = folder.path();
+  given.after_walk = [](const v1::Episode&) { return false; };
+  InProcessResult last = run_session_in_process(given);
+  given.resume = true;
+  std::size_t walks = last.episodes.size();
+  while (last.ended.how == Ended::How::interrupted && walks < 200) {
+    last = run_session_in_process(given);
+    walks += last.episodes.size();
+  }
+  EXPECT_EQ(last.ended.how, Ended::How::verdict) << last.ended.words;
+  return {walks, last.digest};
+}
+
 TEST(Runner, WalksASessionToItsVerdictTheSameTwice) {
   const Case once;
   const InProcessResult first = run_session_in_process(once.given);
@@ -61,20 +82,23 @@ TEST(Runner, LeftAndResumedAfterEveryWalkItEndsWithTheSameContent) {
   for (const v1::Episode& episode : whole.episodes) falls += episode.outcome() == v1::FELL ? 1 : 0;
   EXPECT_GT(falls, 0);
 
-  const test::TestFolder folder;
-  InProcess pieces = once.given;
-  pieces.journal_folder = folder.path();
-  pieces.after_walk = [](const v1::Episode&) { return false; };
-  InProcessResult last = run_session_in_process(pieces);
-  pieces.resume = true;
-  std::size_t walks = last.episodes.size();
-  while (last.ended.how == Ended::How::interrupted && walks < 100) {
-    last = run_session_in_process(pieces);
-    walks += last.episodes.size();
-  }
-  ASSERT_EQ(last.ended.how, Ended::How::verdict) << last.ended.words;
-  EXPECT_EQ(walks, whole.episodes.size());
+  const Pieces last = left_at_every_walk(once.given);
+  EXPECT_EQ(last.walks, whole.episodes.size());
   EXPECT_EQ(last.digest, whole.digest);
+}
+
+// The same on the simulated robot, with its heat, charge and faults of a cold site.
+TEST(Runner, OnTheSimulatedRobotASessionLeftAtEveryWalkEndsWithTheSameContent) {
+  Case once;
+  once.given.plugin = STUB_PATH;
+  once.given.plugin_options =
+      std::string("scenario=") + PASTERN_SOURCE_DIR + "/hal_stub/scenarios/cold_store.scenario.txtpb";
+  once.given.plan.set_max_falls(1000);
+  once.given.plan.set_walk_s(1);
+  const InProcessResult whole = run_session_in_process(once.given);
+  ASSERT_EQ(whole.ended.how, Ended::How::verdict) << whole.ended.words;
+  EXPECT_EQ(run_session_in_process(once.given).digest, whole.digest);
+  EXPECT_EQ(left_at_every_walk(once.given).digest, whole.digest);
 }
 
 TEST(Runner, AFaultThatHasNothingToDoWithWalkingMakesVoidWalks) {
