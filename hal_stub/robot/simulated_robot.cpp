@@ -5,6 +5,7 @@
 #include <algorithm>
 #include <cmath>
 
+#include "hal_stub/robot/advance.h"
 #include "hal_stub/robot/random.h"
 
 namespace pastern::stub {
@@ -286,7 +287,7 @@ void SimulatedRobot::step() {
     tell_drives();
     if (site_.fault_count > 0) apply_faults();
     figures_.around.push = push_now();
-    step_robot(model_->figures(), figures_, told_, period / substeps, state_, work_);
+    advance(model_->figures(), figures_, told_, period / substeps, state_, work_);
   }
   ++clock_.tick;
   if (faulty(v1::Fault::PACK_CUT)) state_.pack.voltage = state_.pack.current = 0;
