@@ -27,6 +27,7 @@ typedef struct looped {
 } looped;
 
 looped_times looped_last;
+looped_hook looped_on_read;
 
 static int64_t now_ns(void) {
   struct timespec now;
@@ -134,6 +135,7 @@ static void* looped_open(const pastern_hal_config* config, char* error, size_t c
 /* Not static, nor is looped_write: callgrind is told their names. */
 int looped_read(void* handle, pastern_hal_frame* frame) {
   looped* self = handle;
+  if (looped_on_read != NULL) looped_on_read();
   looped_last.read_began = now_ns();
   *frame = self->frames[self->counter % FRAMES];
   frame->struct_size = sizeof(*frame);

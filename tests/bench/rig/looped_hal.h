@@ -20,6 +20,9 @@ typedef struct looped_entry {
   double torque_nm[32];
 } looped_entry;
 
+/* Called at the beginning of each read, in the cycle's thread, when not null: symbol "looped_on_read". */
+typedef void (*looped_hook)(void);
+
 /* The last commands; `written` rises by one with each and is stored last. */
 typedef struct looped_ring {
   uint64_t written;

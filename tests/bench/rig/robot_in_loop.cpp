@@ -17,6 +17,13 @@ namespace {
   std::exit(1);
 }
 
+void* plugin_symbol(const char* name) {
+  void* const handle = dlopen(looped_plugin().c_str(), RTLD_NOW | RTLD_NOLOAD);
+  void* const symbol = handle == nullptr ? nullptr : dlsym(handle, name);
+  if (symbol == nullptr) give_up(std::string("the looped plug-in is not loaded or has no ") + name);
+  return symbol;
+}
+
 void add_channel(v1::Policy& policy, v1::Channel::Kind kind, const std::string& joint = {}) {
   v1::Channel& channel = *policy.add_channels();
   channel.set_kind(kind);
@@ -88,7 +95,9 @@ std::string looped_options(const v1::Robot& robot) {
 std::string looped_plugin() { return PASTERN_LOOPED_HAL; }
 
 std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& file, session::Pace pace) {
-  const v1::Robot& robot = file.robot();
+  v1::Robot robot = file.robot();
+  robot.mutable_lane()->set_half_width_m(50);  // where looped frames seem to lead is of no matter
+  robot.mutable_lane()->set_length_m(500);
   hal::DrivesConfig config;
   config.plugin = looped_plugin();
   for (const v1::Joint& joint : robot.joints()) config.joint_names.push_back(joint.name());
@@ -103,12 +112,10 @@ std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& file, sess
 }
 
 const looped_times& plugin_times() {
-  static const looped_times* const times = [] {
-    void* const handle = dlopen(looped_plugin().c_str(), RTLD_NOW | RTLD_NOLOAD);
-    if (handle == nullptr) give_up("the looped plug-in is not loaded");
-    return static_cast<const looped_times*>(dlsym(handle, "looped_last"));
-  }();
+  static const auto* const times = static_cast<const looped_times*>(plugin_symbol("looped_last"));
   return *times;
 }
+
+void set_plugin_hook(looped_hook hook) { *static_cast<looped_hook*>(plugin_symbol("looped_on_read")) = hook; }
 
 }  // namespace pastern::bench

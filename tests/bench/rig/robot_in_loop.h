@@ -30,4 +30,8 @@ namespace pastern::bench {
 /// The plug-in's times of the last tick.
 [[nodiscard]] const looped_times& plugin_times();
 
+/// Called by the plug-in in the cycle's thread at each read; null for none. Only while the cycle does not
+/// tick.
+void set_plugin_hook(looped_hook hook);
+
 }  // namespace pastern::bench
