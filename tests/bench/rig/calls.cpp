@@ -101,8 +101,9 @@ Watched watch_calls(const std::function<void()>& work, std::string& error) {
   (void)ptrace(PTRACE_SETOPTIONS, child, nullptr, kOptions);
   (void)ptrace(PTRACE_SYSCALL, child, nullptr, nullptr);
   Watched watched = Tracer(child).follow();
-  if (!watched.ended_well) error = "the traced child did not end well";
   if (watched.marks != 2) error = "the traced child was not seen to begin and end its walk";
+  if (!watched.ended_well)
+    error = "the traced child did not end well: its robot tripped, or it could not start";
   return watched;
 }
 
