@@ -111,9 +111,7 @@ void Desk::serve_one(const Opened& opened, std::int64_t now_ns) {
 
 bool Desk::repeated(const Opened& opened, std::int64_t now_ns) {
   const v1::Command& command = opened.command;
-  const std::string& key = opened.mail->sender.key;
-  Asked* asked = recent_.find(key, command.id());
-  if (asked == nullptr) asked = recent_light_.find(key, command.id());
+  Asked* asked = recall({opened.mail->sender.key, command.id()});
   if (asked == nullptr) return false;
   if (asked->digest != digest(opened.mail->bytes)) {
     // Whoever wants to stop is not turned away over an id.
@@ -178,9 +176,7 @@ void Desk::give_baton(const Opened& opened) {
 
 void Desk::submit(const Opened& opened) {
   if (tickets_.size() >= kMostTickets) {
-    std::erase_if(tickets_, [this](const auto& ticket) {
-      return recent_.find(ticket.second.key, ticket.second.id) == nullptr;
-    });
+    std::erase_if(tickets_, [this](const auto& ticket) { return recall(ticket.second) == nullptr; });
   }
   const Ticket ticket = next_ticket();
   const Sender& sender = opened.mail->sender;
@@ -199,7 +195,7 @@ void Desk::answered(Ticket ticket, const v1::Answer& answer) {
   if (found == tickets_.end()) return;
   const Origin origin = found->second;
   tickets_.erase(found);
-  Asked* asked = recent_.find(origin.key, origin.id);
+  Asked* asked = recall(origin);
   if (asked == nullptr || asked->ticket != ticket.number || asked->answered) return;
   conclude(*asked, origin.id, answer);
 }
@@ -247,7 +243,7 @@ void Desk::settle(const Stop& stop, bool confirmed, std::int64_t now_ns) {
                                                  after + ": use the emergency stop");
   answer.set_confirmed(confirmed);
   answer.set_id(stop.id);
-  Asked* asked = stop.origin.id.empty() ? nullptr : recent_.find(stop.origin.key, stop.origin.id);
+  Asked* asked = stop.origin.id.empty() ? nullptr : recall(stop.origin);
   if (asked != nullptr) {
     conclude(*asked, stop.id, answer);
   } else {
@@ -271,13 +267,16 @@ std::int64_t Desk::wake_ns() const {
   return wake;
 }
 
-Recent& Desk::memory_of(const v1::Command& command) {
-  return is_light(command.what_case()) ? recent_light_ : recent_;
+Asked* Desk::recall(const Origin& origin) {
+  Memory& memory = memories_[origin.key];
+  Asked* asked = memory.commands.find(origin.id);
+  return asked != nullptr ? asked : memory.light.find(origin.id);
 }
 
 Asked& Desk::remember(const Opened& opened) {
-  return memory_of(opened.command)
-      .remember(opened.mail->sender.key, opened.command.id(), digest(opened.mail->bytes));
+  Memory& memory = memories_[opened.mail->sender.key];
+  Recent& recent = is_light(opened.command.what_case()) ? memory.light : memory.commands;
+  return recent.remember(opened.command.id(), digest(opened.mail->bytes));
 }
 
 void Desk::reply(const Opened& opened, const v1::Answer& answer) {

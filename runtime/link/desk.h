@@ -11,6 +11,7 @@
 #pragma once
 
 #include <cstdint>
+#include <map>
 #include <optional>
 #include <string>
 #include <unordered_map>
@@ -72,6 +73,10 @@ class Desk {
     std::string key;
     std::string id;
   };
+  struct Memory {
+    Recent commands{4096};
+    Recent light{1024};  ///< signs of life and status, so that they cannot push out the rest
+  };
   struct Stop {
     Origin origin;  ///< of the remembered command; empty id when it is not remembered
     Route route;    ///< used when it is not remembered
@@ -99,7 +104,7 @@ class Desk {
   void judge_baton(std::int64_t now_ns);
 
   Asked& remember(const Opened& opened);
-  [[nodiscard]] Recent& memory_of(const v1::Command& command);
+  [[nodiscard]] Asked* recall(const Origin& origin);
   void reply(const Opened& opened, const v1::Answer& answer);
   void refuse(const Opened& opened, const std::string& words);
   void conclude(const Opened& opened, v1::Answer answer);
@@ -107,8 +112,7 @@ class Desk {
 
   Line& line_;
   Baton baton_;
-  Recent recent_{4096};
-  Recent recent_light_{1024};  ///< signs of life and status, so that they cannot push out the rest
+  std::map<std::string, Memory> memories_;  ///< by public key: nobody pushes out another's
   std::unordered_map<std::uint64_t, Origin> tickets_;
   std::vector<Stop> stops_;
   std::vector<Reply> replies_;

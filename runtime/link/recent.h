@@ -34,12 +34,10 @@ class Recent {
 
   explicit Recent(std::size_t capacity) : capacity_(capacity) {}
 
-  /// Ids of different keys never meet. Null when not known (any more).
-  [[nodiscard]] Asked* find(const std::string& key, const std::string& id);
+  /// Null when not known (any more).
+  [[nodiscard]] Asked* find(const std::string& id);
   /// Forgets the oldest when full. The reference holds until the next call of remember().
-  Asked& remember(const std::string& key, const std::string& id, std::size_t digest);
-  void forget(const std::string& key, const std::string& id);
-  [[nodiscard]] std::size_t size() const { return entries_.size(); }
+  Asked& remember(const std::string& id, std::size_t digest);
 
  private:
   std::size_t capacity_;

@@ -48,8 +48,8 @@ const looped_ring* map_ring(const std::string& path) {
 }  // namespace
 
 std::unique_ptr<OnboardProcess> OnboardProcess::start(const v1::Robot& robot, const std::string& folder,
-                                                      const std::string& more_hal_options,
-                                                      std::string& error) {
+                                                      const std::string& more_hal_options, std::string& error,
+                                                      const std::string& key_folder) {
   std::string text;
   files::Defects defects;
   if (!google::protobuf::TextFormat::PrintToString(robot, &text)) error = "the robot cannot be printed";
@@ -66,23 +66,25 @@ std::unique_ptr<OnboardProcess> OnboardProcess::start(const v1::Robot& robot, co
   }
   std::unique_ptr<OnboardProcess> process(new OnboardProcess(std::move(*file)));
   const std::string options = looped_options(robot) + ";ring=" + folder + "/ring" + more_hal_options;
-  return process->launch(folder, options, error) ? std::move(process) : nullptr;
+  return process->launch(folder, options, key_folder, error) ? std::move(process) : nullptr;
 }
 
-bool OnboardProcess::launch(const std::string& folder, const std::string& hal_options, std::string& error) {
+bool OnboardProcess::launch(const std::string& folder, const std::string& hal_options,
+                            const std::string& key_folder, std::string& error) {
   // A file, not a pipe: nobody reads on while the program goes on printing.
   const std::string out_path = folder + "/out";
   const int out = open(out_path.c_str(), O_WRONLY | O_CREAT | O_TRUNC | O_CLOEXEC, 0600);
-  const std::vector<std::string> words{PASTERN_ONBOARD,
-                                       "--robot=" + robot_.path(),
-                                       "--policy=" + folder + "/bench.policy",
-                                       "--hal=" + looped_plugin(),
-                                       "--hal-options=" + hal_options,
-                                       "--journal=" + folder + "/journal",
-                                       "--pace=wall",
-                                       "--command-port=0",
-                                       "--telemetry-port=0",
-                                       "--fetch-port=0"};
+  std::vector<std::string> words{PASTERN_ONBOARD,
+                                 "--robot=" + robot_.path(),
+                                 "--policy=" + folder + "/bench.policy",
+                                 "--hal=" + looped_plugin(),
+                                 "--hal-options=" + hal_options,
+                                 "--journal=" + folder + "/journal",
+                                 "--pace=wall",
+                                 "--command-port=0",
+                                 "--telemetry-port=0",
+                                 "--fetch-port=0"};
+  if (!key_folder.empty()) words.push_back("--keys=" + key_folder);
   child_ = fork();
   if (child_ == 0) become(words, out);
   (void)close(out);
@@ -113,6 +115,11 @@ void OnboardProcess::look_for_ready(const std::string& out_path) {
     command_port_ = 0;
     last = line;
   }
+}
+
+bool OnboardProcess::alive() {
+  if (child_ > 0 && waitpid(child_, nullptr, WNOHANG) == child_) child_ = -1;
+  return child_ > 0;
 }
 
 OnboardProcess::~OnboardProcess() {

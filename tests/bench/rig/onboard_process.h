@@ -14,15 +14,18 @@ namespace pastern::bench {
 class OnboardProcess {
  public:
   /// Writes robot and policy into `folder`, starts the program there at wall pace and waits until it says
-  /// that it is ready. Null with one line in `error`.
+  /// that it is ready. With a key folder it listens with CURVE. Null with one line in `error`.
   [[nodiscard]] static std::unique_ptr<OnboardProcess> start(const v1::Robot& robot,
                                                              const std::string& folder,
                                                              const std::string& more_hal_options,
-                                                             std::string& error);
+                                                             std::string& error,
+                                                             const std::string& key_folder = {});
   ~OnboardProcess();  ///< SIGTERM, waits, then SIGKILL
   OnboardProcess(const OnboardProcess&) = delete;
   OnboardProcess& operator=(const OnboardProcess&) = delete;
 
+  /// False once the program has ended by itself.
+  [[nodiscard]] bool alive();
   [[nodiscard]] int command_port() const { return command_port_; }
   [[nodiscard]] int telemetry_port() const { return telemetry_port_; }
   [[nodiscard]] int fetch_port() const { return fetch_port_; }
@@ -34,7 +37,8 @@ class OnboardProcess {
 
  private:
   explicit OnboardProcess(files::RobotFile robot) : robot_(std::move(robot)) {}
-  [[nodiscard]] bool launch(const std::string& folder, const std::string& hal_options, std::string& error);
+  [[nodiscard]] bool launch(const std::string& folder, const std::string& hal_options,
+                            const std::string& key_folder, std::string& error);
   void look_for_ready(const std::string& out_path);
 
   files::RobotFile robot_;

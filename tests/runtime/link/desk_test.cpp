@@ -270,6 +270,17 @@ TEST_F(DeskTest, memory_is_bounded_and_signs_of_life_do_not_push_the_rest_out) {
   EXPECT_FALSE(ask(kAnna, first).repeated()) << "forgotten by now: the journal knows";
 }
 
+TEST_F(DeskTest, nobody_pushes_out_what_is_remembered_of_another) {
+  const std::uint64_t anna = take_baton(kAnna);
+  const v1::Command go = named("go", anna);
+  EXPECT_TRUE(post(kAnna, go.SerializeAsString()).empty());
+  desk_.answered(line_.tickets().at(0), v1::Answer{});
+  (void)taken();
+  for (int i = 0; i < 20'000; ++i) (void)ask(kBen, named("go", anna));
+  EXPECT_TRUE(ask(kAnna, go).repeated());
+  EXPECT_EQ(line_.motions, 1);
+}
+
 TEST_F(DeskTest, a_full_queue_is_said_and_the_same_id_may_come_again) {
   const std::uint64_t anna = take_baton(kAnna);
   const v1::Command go = named("go", anna);

@@ -1,0 +1,5 @@
+if(NOT TARGET bench_rig)
+  add_subdirectory(${CMAKE_CURRENT_SOURCE_DIR}/rig)
+endif()
+pastern_bench(link_abuse SOURCES link_abuse.cpp LINKS bench_rig pastern_link CLI11::CLI11)
+add_dependencies(bench_link_abuse pastern-onboard)
