@@ -5,6 +5,7 @@
 
 #include "pastern/v1/robot.pb.h"
 #include "runtime/types/body.h"
+#include "safety/units.h"
 
 namespace pastern::control {
 

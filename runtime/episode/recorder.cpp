@@ -9,9 +9,9 @@ namespace pastern::episode {
 
 namespace {
 
-constexpr double kTracePeriod_s = 0.02;
-constexpr double kGravity_m_per_s2 = 9.80665;
-constexpr double kLowShare = 0.5;  // of the stance height: lower is a fall
+constexpr double kTracePeriod = 0.02;  // s
+constexpr double kGravity = 9.80665;   // m/s^2
+constexpr double kLowShare = 0.5;      // of the stance height: lower is a fall
 
 double mass_kg(const v1::Robot& robot) {
   double mass = robot.trunk().link().mass_kg();
@@ -50,16 +50,16 @@ Outcome outcome_of(const FallRule& rule, const BodyEstimate<>& body) noexcept {
 }
 
 bool cost_of_transport(double energy_j, double mass_kg, double distance_m, double& cost) noexcept {
-  if (!(distance_m >= kLeastDistance_m) || !(mass_kg > 0)) {
+  if (!(distance_m >= kLeastDistance) || !(mass_kg > 0)) {
     return false;
   }
-  cost = energy_j / (mass_kg * kGravity_m_per_s2 * distance_m);
+  cost = energy_j / (mass_kg * kGravity * distance_m);
   return true;
 }
 
 EpisodeRecorder::EpisodeRecorder(const v1::Robot& robot, double longest_s)
     : weights_(weights_of(robot)), mass_kg_(mass_kg(robot)) {
-  samples_.reserve(static_cast<std::size_t>(longest_s / kTracePeriod_s) + 2);
+  samples_.reserve(static_cast<std::size_t>(longest_s / kTracePeriod) + 2);
   begin();
 }
 
@@ -76,7 +76,7 @@ void EpisodeRecorder::begin() noexcept {
 void EpisodeRecorder::add(const TickRecord& tick, double dt_s) noexcept {
   const BodyEstimate<>& body = tick.body;
   // Half a tick of slack: sums of dt are not exact.
-  if (duration_s_ + 0.5 * dt_s >= kTracePeriod_s * static_cast<double>(samples_.size())) {
+  if (duration_s_ + 0.5 * dt_s >= kTracePeriod * static_cast<double>(samples_.size())) {
     keep_sample(body);
   }
   const TickScore<double> score{body.velocity.x, tick.power_w, body.position.y, body.yaw_rad};

@@ -37,11 +37,11 @@ struct FallRule {
 /// `fell` before `left_lane` before `completed`.
 [[nodiscard]] Outcome outcome_of(const FallRule& rule, const BodyEstimate<>& body) noexcept;
 
-/// Cost of transport E / (m g d), dimensionless; false when the robot did not get `kLeastDistance_m` forward,
+/// Cost of transport E / (m g d), dimensionless; false when the robot did not get `kLeastDistance` forward,
 /// since it has no meaning then. g = 9.80665 m/s^2 (standard acceleration of free fall, ISO 80000-3).
 [[nodiscard]] bool cost_of_transport(double energy_j, double mass_kg, double distance_m,
                                      double& cost) noexcept;
-inline constexpr double kLeastDistance_m = 0.05;
+inline constexpr double kLeastDistance = 0.05;  ///< m
 
 /// What one tick of a walk gives to the record.
 struct TickRecord {

@@ -8,7 +8,7 @@ namespace pastern::estimate {
 
 namespace {
 
-constexpr double kGravity_m_per_s2 = 9.80665;
+constexpr double kGravity = 9.80665;    // m/s^2
 constexpr double kMostGravities = 2.0;  // a landing's blow must not turn the filter
 constexpr double kPole = 1e-8;          // of cos pitch
 
@@ -26,7 +26,7 @@ void AttitudeFilter::begin(const Eigen::Vector3d& acceleration_m_s2) noexcept {
   bias_.setZero();
   attitude_.setIdentity();
   const double across = std::hypot(acceleration_m_s2.y(), acceleration_m_s2.z());
-  if (std::isfinite(acceleration_m_s2.norm()) && acceleration_m_s2.norm() > 0.1 * kGravity_m_per_s2) {
+  if (std::isfinite(acceleration_m_s2.norm()) && acceleration_m_s2.norm() > 0.1 * kGravity) {
     const double roll = std::atan2(acceleration_m_s2.y(), acceleration_m_s2.z());
     attitude_ = attitude_of({roll, std::atan2(-acceleration_m_s2.x(), across), 0.0});
   }
@@ -42,7 +42,7 @@ void AttitudeFilter::update(const Eigen::Vector3d& rate_rad_s, const Eigen::Vect
                             double dt_s, bool at_rest) noexcept {
   // The measured direction is acceleration / g, not made a unit vector: over a period of a gait the trunk's
   // own accelerations cancel in it, and they would not in the unit vector.
-  Eigen::Vector3d measured = acceleration_m_s2 / kGravity_m_per_s2;
+  Eigen::Vector3d measured = acceleration_m_s2 / kGravity;
   measured *= std::min(1.0, kMostGravities / std::max(measured.norm(), 1e-9));
   const Eigen::Vector3d expected = attitude_.conjugate() * Eigen::Vector3d::UnitZ();
   const Eigen::Vector3d error = measured.cross(expected);

@@ -13,7 +13,7 @@ namespace pastern::estimate {
 
 namespace {
 
-constexpr double kGravity_m_per_s2 = 9.80665;
+constexpr double kGravity = 9.80665;            // m/s^2
 constexpr std::uint64_t kMostTicksMissed = 20;  // the stale watch trips before
 
 double weight_n(const v1::Robot& robot) {
@@ -21,7 +21,7 @@ double weight_n(const v1::Robot& robot) {
   for (const v1::Joint& joint : robot.joints()) {
     mass += joint.link().mass_kg();
   }
-  return mass * kGravity_m_per_s2;
+  return mass * kGravity;
 }
 
 template <class Unit, class Frame>
@@ -52,18 +52,18 @@ class Rest {
       square += frame.speed[j] * frame.speed[j];
     }
     const double speed = std::sqrt(square / std::max(joint_count, 1));
-    const double force = vector(frame.acceleration).norm() - kGravity_m_per_s2;
+    const double force = vector(frame.acceleration).norm() - kGravity;
     const bool still =
-        speed < kSpeed_rad_s && vector(frame.rate).norm() < kRate_rad_s && std::abs(force) < kForce_m_s2;
+        speed < kStillSpeed && vector(frame.rate).norm() < kStillRate && std::abs(force) < kStillForce;
     still_s_ = still ? still_s_ + dt_s : 0.0;
-    return still_s_ > kHold_s;
+    return still_s_ > kStillFor;
   }
 
  private:
-  static constexpr double kSpeed_rad_s = 0.12;
-  static constexpr double kRate_rad_s = 0.08;
-  static constexpr double kForce_m_s2 = 1.0;
-  static constexpr double kHold_s = 0.1;
+  static constexpr double kStillSpeed = 0.12;  // rad/s, root mean square
+  static constexpr double kStillRate = 0.08;   // rad/s
+  static constexpr double kStillForce = 1.0;   // m/s^2 off gravity
+  static constexpr double kStillFor = 0.1;     // s
   double still_s_{0};
 };
 

@@ -15,7 +15,7 @@ namespace {
 
 // Regularises J J^T, m^2: a direction in which the foot moves less than this for a radian carries no torque
 // that could be measured (a straight leg; the sideways direction of a leg without abduction).
-constexpr double kLeastArm_m = 0.015;
+constexpr double kLeastArm = 0.015;
 
 Eigen::Vector3d vector(const v1::Xyz& xyz) { return {xyz.x(), xyz.y(), xyz.z()}; }
 
@@ -98,7 +98,7 @@ FootState foot_state(const LegGeometry& leg, const safety::SensorFrame& frame,
   }
   // Virtual work of a leg without weight: torque = J^T f, f the force on the ground; least squares for f.
   const Eigen::Matrix3d square =
-      jacobian * jacobian.transpose() + kLeastArm_m * kLeastArm_m * Eigen::Matrix3d::Identity();
+      jacobian * jacobian.transpose() + kLeastArm * kLeastArm * Eigen::Matrix3d::Identity();
   const Eigen::Vector3d force = square.ldlt().solve(jacobian * torque);
   foot.push_n = -force.dot(up);
   return foot;

@@ -10,7 +10,7 @@ namespace pastern::estimate {
 
 namespace {
 
-constexpr double kGravity_m_per_s2 = 9.80665;
+constexpr double kGravity = 9.80665;  // m/s^2
 constexpr double kNothing = 1e-9;
 constexpr double kStands = 0.05;  // of stance: from here a leg is asked
 
@@ -55,7 +55,7 @@ void Odometry::begin(const safety::SensorFrame& frame, const Eigen::Quaterniond&
 void Odometry::update(const safety::SensorFrame& frame, const Eigen::Quaterniond& attitude,
                       const Eigen::Vector3d& rate_rad_s, double dt_s) noexcept {
   const Eigen::Vector3d force(frame.acceleration.x, frame.acceleration.y, frame.acceleration.z);
-  velocity_ += (attitude * force - kGravity_m_per_s2 * Eigen::Vector3d::UnitZ()) * dt_s;
+  velocity_ += (attitude * force - kGravity * Eigen::Vector3d::UnitZ()) * dt_s;
   const LegView legs = look(frame, attitude, rate_rad_s, dt_s);
   // A source of place knows of slipping feet: while it speaks, the legs tell the vertical only.
   const bool external = external_known_ && external_age_s_ < gains_.external_stale_s;

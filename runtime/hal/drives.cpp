@@ -227,8 +227,8 @@ ReadResult Drives::read(safety::SensorFrame& frame) noexcept {
     return ReadResult::failed;
   }
   if (impl.frame.joint_count != static_cast<std::uint32_t>(impl.joint_count)) {
-    std::snprintf(impl.own_text.data(), impl.own_text.size(), "frame: found %u joints, expected %d",
-                  impl.frame.joint_count, impl.joint_count);
+    (void)std::snprintf(impl.own_text.data(), impl.own_text.size(), "frame: found %u joints, expected %d",
+                        impl.frame.joint_count, impl.joint_count);
     return ReadResult::failed;
   }
   copy_frame(impl.frame, frame);
@@ -242,9 +242,9 @@ bool Drives::write(const safety::DriveCommand& command) noexcept {
   copy_command(command, fits && command.torque_on(), impl.joint_count, impl.command);
   const bool written = impl.table->write(impl.handle, &impl.command) == PASTERN_HAL_OK;
   if (command.torque_on() && !fits) {
-    std::snprintf(impl.own_text.data(), impl.own_text.size(),
-                  "command: found %d joints, expected %d; torque off was written", command.joint_count(),
-                  impl.joint_count);
+    (void)std::snprintf(impl.own_text.data(), impl.own_text.size(),
+                        "command: found %d joints, expected %d; torque off was written",
+                        command.joint_count(), impl.joint_count);
     return false;
   }
   return written;
@@ -258,7 +258,7 @@ const char* Drives::error_text() noexcept {
   if (text == nullptr || text[0] == '\0') {
     return "the plug-in gave no reason";
   }
-  std::snprintf(impl_->own_text.data(), impl_->own_text.size(), "%s", text);
+  (void)std::snprintf(impl_->own_text.data(), impl_->own_text.size(), "%s", text);
   for (char& letter : impl_->own_text) {
     letter = letter != '\0' && is_control(letter) ? ' ' : letter;
   }

@@ -37,6 +37,7 @@
 extern "C" {
 #endif
 
+/* The names of a C interface are those of C. NOLINTBEGIN(readability-identifier-naming) */
 #define PASTERN_HAL_VERSION 1u
 #define PASTERN_HAL_MAX_JOINTS 32
 
@@ -111,6 +112,7 @@ typedef struct pastern_hal {
 /* The one symbol that a plug-in exports. Returns null when it cannot serve `version`. */
 const pastern_hal* pastern_hal_entry(uint32_t version);
 typedef const pastern_hal* (*pastern_hal_entry_fn)(uint32_t version);
+/* NOLINTEND(readability-identifier-naming) */
 
 #ifdef __cplusplus
 }

@@ -14,6 +14,7 @@
 #include "pastern/v1/policy.pb.h"
 #include "pastern/v1/robot.pb.h"
 #include "runtime/types/body.h"
+#include "safety/units.h"
 
 namespace pastern::policy {
 
@@ -279,8 +280,8 @@ void map_actions(const Shape<S>& shape, const S* action, JointTarget<S>& target)
   }
 }
 
-/// One step: observation, network, action map.
-template <class S>
+/// One step: observation, network, action map. A parameter for each thing that a policy sees.
+template <class S>  // NOLINTNEXTLINE(readability-function-size)
 [[nodiscard]] JointTarget<S> evaluate(const Shape<S>& shape, const S* parameters, Scratch<S>& scratch,
                                       const BodyEstimate<S>& body, const JointAngles<S>& angle,
                                       const JointSpeeds<S>& speed, const GaitPhase& phase) noexcept {
