@@ -414,7 +414,7 @@ void Bench::report(bool moves_afterwards, const std::string& error) {
   for (const Attack& attack : attacks_) all += attack.messages;
   const std::string lost =
       watch_->missed() == 0 ? "" : fmt::format(", {} commands not seen", watch_->missed());
-  promise(fmt::format("attempts to command by whoever may not, {}: robot moved / process died", all),
+  promise(fmt::format("unauthorised attempts ({}): robot moved / died", all),
           fmt::format("{} / {}{}{}", moved_, alive_ ? 0 : 1, lost,
                       moves_afterwards ? "" : ", and the rightful operator cannot move it either"),
           "0 / 0", moved_ == 0 && alive_ && watch_->missed() == 0 && moves_afterwards);
@@ -442,6 +442,6 @@ int main(int argc, char** argv) {
   const bool measured = Bench(options, folder).run(error);
   std::filesystem::remove_all(folder);
   if (measured) return 0;
-  promise("attempts to command by whoever may not: robot moved / process died", error, "0 / 0", false);
+  promise("unauthorised attempts: robot moved / died", error, "0 / 0", false);
   return 1;
 }
