@@ -153,8 +153,8 @@ v1::Answer Program::resume() {
 }
 
 v1::Answer Program::park() {
-  if (!runner_.in_session()) return accepted("the robot is parked, or will be when its walk ends");
   runner_.pause();
+  if (!runner_.in_session()) return accepted("the robot is parked, or will be when its walk ends");
   return accepted(
       "the robot parks after this walk and the session is left; go on with it later (pastern resume)");
 }

@@ -12,6 +12,7 @@ namespace {
 constexpr std::chrono::milliseconds kIdle{20};
 constexpr std::chrono::milliseconds kStatusEvery{200};
 constexpr std::uint64_t kBlock = 10'000;
+constexpr std::uint64_t kLookBack = 5'000;
 constexpr const char* kReservedKey = "telemetry_reserved";
 
 }  // namespace
@@ -49,6 +50,7 @@ void Program::run() {
 void Program::do_job() {
   const Job job = std::exchange(job_, Job{});
   session::Ended ended;
+  running_ = true;
   switch (job.kind) {
     case Job::Kind::session:
       ended = runner_.run(*job.setup);
@@ -60,8 +62,9 @@ void Program::do_job() {
       ended = runner_.walk(parts_.policy, job.duration_s, job.draw);
       break;
     case Job::Kind::none:
-      return;
+      break;
   }
+  running_ = false;
   // A session says these things itself; a walk outside one, and what was refused, does not.
   const bool said = job.kind != Job::Kind::walk && ended.how != session::Ended::How::refused;
   if (!said && !ended.words.empty()) on_note(ended.words);
@@ -138,7 +141,8 @@ void Program::publish_missed() {
   const std::uint64_t last = parts_.journal.last_walk(row->session);
   bool walk_told = last == 0;
   bool verdict_told = false;
-  for (const v1::Telemetry& told : parts_.journal.telemetry(1, parts_.journal.last_sequence())) {
+  const std::uint64_t end = parts_.journal.last_sequence();
+  for (const v1::Telemetry& told : parts_.journal.telemetry(end > kLookBack ? end - kLookBack : 1, end)) {
     const bool of_session = told.has_episode() && told.episode().session() == row->session;
     if (of_session) verdict_told = false;
     if (of_session && told.episode().walk() == last) walk_told = true;

@@ -65,7 +65,7 @@ class Program final : public session::Hooks {
   [[nodiscard]] v1::Telemetry numbered();
   void publish(v1::Telemetry telemetry, bool kept);
   void publish_missed();
-  [[nodiscard]] bool busy() const { return job_.kind != Job::Kind::none; }
+  [[nodiscard]] bool busy() const { return running_ || job_.kind != Job::Kind::none; }
 
   // commands.cpp
   void answer(const Asked& asked, const v1::Command& command);
@@ -92,6 +92,7 @@ class Program final : public session::Hooks {
   session::Runner runner_;
   link::Server* server_{nullptr};
   Job job_;
+  bool running_{false};
   std::uint64_t sequence_{0};
   std::uint64_t reserved_{0};
   std::string snapshot_;  // of the journal, while it is fetched in pieces

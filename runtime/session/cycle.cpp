@@ -133,7 +133,9 @@ struct Cycle::Impl {
   safety::Trip trip;  // as at the end of the motion; the gate's own may change while the result is read
   bool scoring{false};
   bool fall_seen{false};  // by the estimate; asks the gate for a stop
-  int clipped{0};         // of this tick's policy step
+  bool fall_estimated{false};
+  BodyEstimate<> fall_body;
+  int clipped{0};  // of this tick's policy step
   Outcome outcome{Outcome::completed};
 };
 
@@ -212,6 +214,8 @@ void Cycle::Impl::score(bool clamped) noexcept {
   if (episode::fell(fall_rule, body)) {
     scoring = false;
     fall_seen = true;
+    fall_estimated = true;
+    fall_body = body;
     outcome = Outcome::fell;
     return;
   }
@@ -298,6 +302,7 @@ void Cycle::begin(Motion motion, double duration_s) noexcept {
   s.completed = false;
   s.tripped = false;
   s.fall_seen = false;
+  s.fall_estimated = false;
   s.scoring = false;
   s.outcome = Outcome::completed;
   if (motion != Motion::parked && !s.armed()) {
@@ -346,6 +351,8 @@ MotionResult Cycle::result() const {
   result.trip = s.trip;
   result.outcome = s.outcome;
   if (s.asked != Motion::walk) return result;
+  result.fall_estimated = s.fall_estimated;
+  result.fall_body = s.fall_body;
   result.terms = s.recorder.terms(s.outcome == Outcome::fell);
   result.summary = s.recorder.summary();
   result.trace = s.recorder.trace();

@@ -12,6 +12,7 @@
 #include "pastern/v1/policy.pb.h"
 #include "pastern/v1/robot.pb.h"
 #include "runtime/hal/drives.h"
+#include "runtime/types/body.h"
 #include "runtime/types/episode.h"
 #include "safety/gate.h"
 
@@ -48,6 +49,8 @@ struct MotionResult {
   /// Of a walk: completed; fell (the robot tilted or sank, or its own motion broke a limit); left_lane;
   /// voided (a trip that has nothing to do with how it walked).
   Outcome outcome{Outcome::completed};
+  bool fall_estimated{false};  ///< the estimate saw the fall before the gate did and asked it for a stop
+  BodyEstimate<> fall_body;    ///< as it was then
   EpisodeReturn terms;
   v1::EpisodeSummary summary;
   v1::Trace trace;

@@ -16,6 +16,7 @@ constexpr double kOnTheMark_s = 0.1;  // parked, for the gate's filters to see w
 constexpr double kCoolStep_s = 1.0;
 constexpr double kLongestCool_s = 3600.0;
 constexpr double kLongestPack_s = 600.0;
+constexpr const char* kTripKey = "latched_trip";
 constexpr double kLongestTrip_s = 30.0;  // a simulated robot's fault that does not go away
 
 std::string words_of(const std::string& what, const journal::Written& written) {
@@ -48,6 +49,7 @@ bool same_structure(v1::Policy a, v1::Policy b) {
 Runner::Runner(const files::RobotFile& robot, Mover& mover, journal::Journal& journal, Hooks& hooks)
     : robot_(robot), mover_(mover), journal_(journal), hooks_(hooks), robot_sha_(files::hex(robot.sha256())) {
   recall_last_session();
+  recall_trip();
   const std::optional<std::string> bytes = journal_.robot_state();
   if (!bytes || bytes->empty()) return;
   v1::CarriedState state;
@@ -55,7 +57,7 @@ Runner::Runner(const files::RobotFile& robot, Mover& mover, journal::Journal& jo
     restore_failure_ = "the journal's carried state of the simulated robot was refused by it";
     return;
   }
-  carried_session_ns_ = state.session_ns();
+  carried_ = state;
 }
 
 Runner::~Runner() = default;
@@ -109,7 +111,7 @@ Ended Runner::resume() {
   if (!words.empty()) return {Ended::How::refused, words};
   const std::optional<SessionSetup> setup = recorded_setup(*row, words);
   if (!setup) return {Ended::How::refused, words};
-  clock_base_ns_ = journal_.last_walk(row->session) > 0 ? carried_session_ns_ : 0;
+  clock_base_ns_ = journal_.last_walk(row->session) > 0 ? carried_.session_ns() : 0;
   if (!begin(*setup, row->session)) {
     (void)leave_session(Ended::How::refused, "");
     return {Ended::How::refused,
@@ -241,6 +243,7 @@ bool Runner::interrupted(Ended& ended) {
 bool Runner::wait_for(const std::string& what, Ended& ended) {
   waiting_for_ = what;
   state_ = tripped() ? v1::TRIPPED : v1::PARKED;
+  keep_trip();
   if (hooks_.wait(what)) return true;
   ended = leave_session(Ended::How::interrupted, "nobody there to act: waiting for " + what);
   return false;
@@ -260,6 +263,30 @@ bool Runner::releases_itself(const safety::Trip& trip) const {
       return false;
     default:
       return true;
+  }
+}
+
+// A latch must not be cleared by a restart: the gate of a new process is told to stop before anything else.
+void Runner::recall_trip() {
+  if (journal_.get(kTripKey).value_or("").empty()) return;
+  trip_kept_ = true;
+  mover_.signals().internal_stop.store(true, std::memory_order_release);
+  rest();
+}
+
+void Runner::keep_trip() {
+  if (trip_kept_ || !tripped()) return;
+  trip_kept_ = journal_.put(kTripKey, safety::name(mover_.report().trip.cause)).ok;
+}
+
+// What the next walk would do first. The robot is left as the record has it, so that a session begun now and
+// one begun after a restart are the same.
+void Runner::release_at_end() {
+  std::string words;
+  if (!tripped() || !releases_itself(mover_.report().trip) || !mover_.set_down(0, words)) return;
+  (void)move(Motion::parked, kOnTheMark_s, v1::PARKED);
+  if (mover_.release(words) && mover_.pace() == Pace::stepped && carried_.ticks() > 0) {
+    (void)mover_.restore(carried_);
   }
 }
 
@@ -384,8 +411,7 @@ MotionResult Runner::move(Motion motion, double duration_s, v1::RobotState state
 std::optional<Committed<Evaluation>> Runner::commit(const v1::Episode& episode, const Order& order,
                                                     Ended& ended) {
   v1::CarriedState carried = mover_.save();
-  if (session_) carried_session_ns_ = session_ns();
-  carried.set_session_ns(carried_session_ns_);
+  carried.set_session_ns(session_ ? session_ns() : carried_.session_ns());
   std::string why;
   std::optional<Committed<Evaluation>> proof =
       journal_.commit(episode, order.parameters, carried.SerializeAsString(), why);
@@ -438,12 +464,14 @@ Ended Runner::leave_session(Ended::How how, const std::string& words) {
     if (how != Ended::How::verdict) last_.set_session_part(v1::INTERRUPTED);
     if (!words.empty()) say(words);
   }
+  release_at_end();
   session_.reset();
   setup_.reset();
   number_ = 0;
   voidable_ = 0;
   waiting_for_.clear();
   by_operator_ = true;
+  keep_trip();
   state_ = tripped() ? v1::TRIPPED : v1::PARKED;
   return {how, words};
 }
@@ -506,6 +534,7 @@ bool Runner::release(std::string& words) {
   if (mover_.simulated() && !mover_.set_down(0, words)) return false;
   const std::string cause = safety::name(mover_.report().trip.cause);
   if (!mover_.release(words)) return false;
+  if (trip_kept_) trip_kept_ = !journal_.put(kTripKey, "").ok;
   state_ = v1::PARKED;
   words = "released after " + cause;
   say(words);

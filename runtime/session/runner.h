@@ -125,6 +125,10 @@ class Runner {
   [[nodiscard]] bool tripped();
   [[nodiscard]] bool releases_itself(const safety::Trip& trip) const;
   [[nodiscard]] v1::TripRecord record_of(const safety::Trip& trip) const;
+  void tell_fall(const BodyEstimate<>& body, v1::TripRecord& record) const;
+  void recall_trip();
+  void keep_trip();
+  void release_at_end();
 
   const files::RobotFile& robot_;
   Mover& mover_;
@@ -132,7 +136,8 @@ class Runner {
   Hooks& hooks_;
   std::string robot_sha_;
   std::string restore_failure_;
-  std::int64_t carried_session_ns_{0};
+  v1::CarriedState carried_;  // as it was last written
+  bool trip_kept_{false};     // the journal knows of the trip
 
   std::unique_ptr<SessionSetup> setup_;
   std::unique_ptr<Session> session_;

@@ -1,4 +1,5 @@
 // What the runner tells: episodes, trips, status.
+#include "runtime/episode/recorder.h"
 #include "runtime/session/runner.h"
 
 namespace pastern::session {
@@ -29,6 +30,17 @@ v1::TripRecord Runner::record_of(const safety::Trip& trip) const {
   return record;
 }
 
+// What the estimate saw, in place of the "internal_stop" that it asked the gate for.
+void Runner::tell_fall(const BodyEstimate<>& body, v1::TripRecord& record) const {
+  const episode::FallRule rule = episode::fall_rule_of(robot_.robot());
+  const double tilt = episode::tilt_rad(body.roll_rad, body.pitch_rad);
+  const bool tilted = !(tilt <= rule.tilt_rad);
+  record.set_cause(tilted ? "fall_tilt" : "fall_height");
+  record.set_value(tilted ? tilt : body.position.z);
+  record.set_limit(tilted ? rule.tilt_rad : rule.least_height_m);
+  record.set_unit(tilted ? "rad" : "m");
+}
+
 v1::Episode Runner::episode_of(const Order& order, const MotionResult& result,
                                std::int64_t started_ns) const {
   v1::Episode episode;
@@ -49,6 +61,7 @@ v1::Episode Runner::episode_of(const Order& order, const MotionResult& result,
   *episode.mutable_summary() = result.summary;
   *episode.mutable_trace() = result.trace;
   if (result.tripped) *episode.mutable_trip() = record_of(result.trip);
+  if (result.fall_estimated) tell_fall(result.fall_body, *episode.mutable_trip());
   episode.set_parameters_sha256(journal::parameters_sha256(order.parameters));
   episode.set_started_s(static_cast<double>(started_ns) * 1e-9);
   return episode;

@@ -4,6 +4,7 @@
 #include <google/protobuf/text_format.h>
 #include <gtest/gtest.h>
 
+#include "tests/faults/full_disk_vfs.h"
 #include "tests/runtime/session/setting.h"
 
 namespace pastern::session {
@@ -176,6 +177,40 @@ TEST(Runner, InProcessRefusesRealDrives) {
   EXPECT_EQ(run_session_in_process(once.given).ended.how, Ended::How::refused);
 }
 
+TEST(Runner, AFullDiskEndsTheSessionInOrderAndKeepsAllFinishedWalks) {
+  Case once;
+  const test::TestFolder folder;
+  once.given.journal_folder = folder.path();
+  faults::FullDisk disk;
+  once.given.vfs = disk.vfs();
+  int walks = 0;
+  once.given.after_walk = [&walks, &disk](const v1::Episode&) {
+    if (++walks == 3) disk.leave(0);
+    return true;
+  };
+  const InProcessResult result = run_session_in_process(once.given);
+  disk.leave(-1);
+  EXPECT_EQ(result.ended.how, Ended::How::failed);
+  EXPECT_NE(result.ended.words.find("no further walk"), std::string::npos) << result.ended.words;
+  EXPECT_EQ(walks, 3);
+  std::string error;
+  const auto journal = journal::Journal::open(folder.path(), error);
+  ASSERT_TRUE(journal) << error;
+  EXPECT_EQ(journal->finished(1).size(), 3U);
+}
+
+TEST(Runner, AFallSaysWhatTheEstimateSaw) {
+  Case once;
+  once.given.plan.set_max_falls(1);
+  once.fault("fault=tilt;at=2300;for=400");
+  const InProcessResult result = run_session_in_process(once.given);
+  ASSERT_EQ(result.episodes.size(), 1U);
+  EXPECT_EQ(result.episodes[0].outcome(), v1::FELL);
+  EXPECT_EQ(result.episodes[0].trip().cause(), "fall_tilt");
+  EXPECT_GT(result.episodes[0].trip().value(), result.episodes[0].trip().limit());
+  EXPECT_DOUBLE_EQ(result.episodes[0].terms().fall(), -1);
+}
+
 // Hooks of a person at operator pace.
 class Person final : public Hooks {
  public:
@@ -294,6 +329,29 @@ TEST(Runner, AnOperatorsStopMakesTheWalkVoidAndWaitsForRelease) {
   EXPECT_EQ(desk.person.episodes.size(), 2U);
   EXPECT_NE(std::find(desk.person.waits.begin(), desk.person.waits.end(), "release"),
             desk.person.waits.end());
+}
+
+TEST(Runner, ALatchedTripOutlivesTheProgram) {
+  Desk desk;
+  desk.person.act = [&](const std::string& what) {
+    if (what == "go") desk.mover->signals().stop.store(true);
+    if (what == "go") desk.runner->rest();
+    return what == "go";
+  };
+  EXPECT_EQ(desk.run().how, Ended::How::interrupted);
+  const auto again = [&desk] {
+    return std::make_unique<Cycle>(desk.robot.robot(), desk.policy.policy(), test::puppet(desk.robot));
+  };
+  const auto second_cycle = again();
+  const auto second_mover = make_stepped_mover(*second_cycle);
+  Runner second(desk.robot, *second_mover, *desk.journal, desk.person);
+  EXPECT_EQ(second_cycle->report().phase, safety::Phase::off);
+  std::string words;
+  EXPECT_TRUE(second.release(words)) << words;
+  const auto third_cycle = again();
+  const auto third_mover = make_stepped_mover(*third_cycle);
+  const Runner third(desk.robot, *third_mover, *desk.journal, desk.person);
+  EXPECT_EQ(third_cycle->report().phase, safety::Phase::armed);
 }
 
 TEST(Runner, WithoutTheBatonNothingBeginsAtSteppedPace) {
