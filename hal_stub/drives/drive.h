@@ -74,7 +74,7 @@ inline S made_torque(const DriveFigures<Constant<S>>& drive, const S& wanted, co
   const S cap(drive.peak_torque);
   const S up = max(min((supply_ratio - relative) * warm, cap), S(0));
   const S down = max(min((supply_ratio + relative) * warm, cap), S(0));
-  return max(min(wanted, up), S(0) - down);
+  return select(supply_ratio > S(C(0.25)), max(min(wanted, up), S(0) - down), S(0));
 }
 
 /// Gear friction as a viscosity: viscous and Coulomb, the latter regularised.

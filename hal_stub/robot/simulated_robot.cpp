@@ -118,6 +118,7 @@ void SimulatedRobot::place(const std::vector<double>& pose, double scatter, std:
   clock_.placed = clock_.tick;
   clock_.draw = draw;
   clock_.told = 0;
+  told_.on = told_.damping = 0;
   clock_.sent = clock_.acting = clock_.arrived = -1;
   std::fill(command_ticks_.begin(), command_ticks_.end(), -1);
   std::array<double, safety::kMaxJoints> angle{};

@@ -1,0 +1,253 @@
+// The simulated robot as a whole: it stands, walks, falls and lies; same calls, same bits.
+#include <gtest/gtest.h>
+
+#include "hal_stub/robot/advance.h"
+#include "tests/hal_stub/robots.h"
+
+namespace pastern::stub {
+namespace {
+
+class Robot : public ::testing::TestWithParam<const char*> {
+ protected:
+  files::RobotFile file_ = robot_file(GetParam());
+  std::shared_ptr<const Model> model_ = model_of(file_);
+};
+
+TEST_P(Robot, StandsStillWhenHeldInTheStance) {
+  SimulatedRobot robot(model_, nominal_site(*model_), 1);
+  robot.place_standing(1);
+  Holder holder(file_.robot());
+  holder.run(robot, 3);
+  const Truth before = robot.truth();
+  holder.run(robot, 3);
+  const Truth after = robot.truth();
+  EXPECT_FALSE(after.fallen);
+  EXPECT_NEAR(after.height_m, model_->stance_height_m(), 0.03);
+  EXPECT_LT(after.tilt_rad, 0.03);
+  EXPECT_NEAR(after.position_m[0], before.position_m[0], 0.005);
+  EXPECT_NEAR(after.position_m[1], before.position_m[1], 0.005);
+}
+
+TEST_P(Robot, WeighsOnItsFeetWhatItWeighs) {
+  SimulatedRobot robot(model_, nominal_site(*model_), 1);
+  robot.place_standing(1);
+  Holder holder(file_.robot());
+  holder.run(robot, 3);
+  double sum = 0;
+  for (int k = 0; k < 200; ++k) {
+    holder.tick(robot);
+    for (const auto& leg : robot.state().body.grip.leg) sum += leg[0];
+  }
+  EXPECT_NEAR(sum / 200, model_->mass_kg() * 9.80665, 0.02 * model_->mass_kg() * 9.80665);
+}
+
+TEST_P(Robot, TrotsForwardOpenLoopWithoutFalling) {
+  for (std::uint64_t draw = 1; draw <= 5; ++draw) {
+    Site site = nominal_site(*model_);
+    site.start_scatter_rad = 0.02;
+    SimulatedRobot robot(model_, site, draw);
+    robot.place_standing(draw);
+    Holder holder(file_.robot());
+    holder.trot(robot, 5, 0.25, 0.07);
+    EXPECT_FALSE(robot.fallen());
+    EXPECT_GT(robot.truth().position_m[0], 1.5);
+  }
+}
+
+TEST_P(Robot, RisesFromLyingToTheStance) {
+  SimulatedRobot robot(model_, nominal_site(*model_), 1);
+  robot.place_lying(4);
+  EXPECT_LT(robot.truth().height_m, 0.12);
+  Holder holder(file_.robot());
+  (void)robot.read(holder.frame);
+  const auto from = holder.frame.angle;
+  for (int k = 0; k <= 1000; ++k) {
+    for (int j = 0; j < model_->joint_count(); ++j) {
+      holder.target[j] = from[j] + k / 1000.0 * (file_.robot().joints(j).stance_rad() - from[j]);
+    }
+    holder.tick(robot);
+  }
+  holder.run(robot, 1);
+  EXPECT_FALSE(robot.truth().fallen);
+  EXPECT_NEAR(robot.truth().height_m, model_->stance_height_m(), 0.03);
+}
+
+// Dropped in any attitude, with the torque off, for 3 s: it lies on the ground, at rest, and no point is
+// deeper than five times the depth at which one point would carry the whole robot.
+TEST_P(Robot, LiesAndDoesNotSinkHoweverItFalls) {
+  const double deepest_allowed = 5 * model_->mass_kg() * 9.80665 / 24000;
+  for (int i = 0; i < 12; ++i) {
+    SimulatedRobot robot(model_, nominal_site(*model_), 1);
+    robot.place_standing(1);
+    robot.command({}, false);
+    auto& body = robot.state().body;
+    const double half = i * 3.14159265358979 / 12;
+    const double c = std::cos(i * 1.3);
+    const double s = std::sin(i * 1.3);
+    body.attitude = {std::cos(half), std::sin(half) * c, std::sin(half) * s, 0};
+    body.position.z = 0.6;
+    for (int k = 0; k < 3000; ++k) {
+      robot.command({}, false);
+      robot.step();
+      ASSERT_TRUE(std::isfinite(body.position.z)) << i;
+    }
+    const Rotation<double> r = rotation_of(body.attitude);
+    double deepest = 0;
+    for (const auto& corner : model_->figures().tree.corner) {
+      deepest = std::max(deepest, -(body.position.z + (r * corner).z));
+    }
+    std::array<double, kMaxJoints> angle{};
+    for (std::size_t l = 0; l < 4; ++l) {
+      for (std::size_t j = 0; j < static_cast<std::size_t>(model_->figures().tree.leg[l].joint_count); ++j) {
+        angle[static_cast<std::size_t>(model_->figures().tree.leg[l].joint[j].order)] = body.angle[l][j];
+      }
+    }
+    const double reach =
+        reach_below(model_->figures().tree, angle.data(), turn_back(r, Vec3<double>{0, 0, -1}));
+    deepest = std::max(deepest, reach - body.position.z);
+    EXPECT_LT(deepest, deepest_allowed) << i;
+    EXPECT_GT(deepest, 0) << "it lies on something, " << i;
+    EXPECT_LT(std::sqrt(dot(body.velocity, body.velocity)), 0.1) << i;
+    EXPECT_TRUE(robot.fallen()) << i;
+  }
+}
+
+TEST_P(Robot, SameSeedAndDrawGiveTheSameBitsAndOthersDoNot) {
+  Site site = nominal_site(*model_);
+  site.start_scatter_rad = 0.03;
+  site.push_m_per_s = 0.2;
+  site.command_jitter_s = 0.003;
+  const auto end = [&](std::uint64_t seed, std::uint64_t draw) {
+    SimulatedRobot robot(model_, site, seed);
+    robot.place_standing(draw);
+    Holder holder(file_.robot());
+    holder.trot(robot, 1.5, 0.2, 0.05);
+    return robot.state().body.position.x;
+  };
+  EXPECT_EQ(end(3, 8), end(3, 8));
+  EXPECT_NE(end(3, 8), end(3, 9));
+  EXPECT_NE(end(3, 8), end(4, 8));
+}
+
+TEST_P(Robot, RenewedIsANewRobot) {
+  Site site = nominal_site(*model_);
+  site.push_m_per_s = 0.2;
+  SimulatedRobot used(model_, nominal_site(*model_), 1);
+  used.place_standing(1);
+  Holder warm(file_.robot());
+  warm.trot(used, 2, 0.2, 0.05);
+  used.renew(site, 9);
+  SimulatedRobot fresh(model_, site, 9);
+  for (SimulatedRobot* robot : {&used, &fresh}) {
+    robot->place_standing(2);
+    Holder holder(file_.robot());
+    holder.trot(*robot, 1, 0.2, 0.05);
+  }
+  EXPECT_EQ(used.state().body.position.x, fresh.state().body.position.x);
+  EXPECT_EQ(used.state().pack.charge, fresh.state().pack.charge);
+}
+
+TEST_P(Robot, RestoredGoesOnLikeOneNeverInterrupted) {
+  Site site = nominal_site(*model_);
+  site.command_delay_s = 0.012;
+  site.command_jitter_s = 0.003;
+  site.sensor_delay_s = 0.004;
+  site.push_m_per_s = 0.2;
+  site.backlash_rad[2] = 0.02;
+  SimulatedRobot first(model_, site, 5);
+  first.place_standing(3);
+  Holder holder(file_.robot());
+  holder.trot(first, 1.2, 0.2, 0.05);
+  SimulatedRobot second(model_, site, 0);
+  std::string error;
+  ASSERT_TRUE(second.restore(first.save(), error)) << error;
+  Holder other = holder;
+  holder.trot(first, 1.5, 0.2, 0.05);
+  other.trot(second, 1.5, 0.2, 0.05);
+  EXPECT_EQ(first.save(), second.save());
+}
+
+TEST_P(Robot, RefusesAStateOfAnotherRobotOrSite) {
+  SimulatedRobot robot(model_, nominal_site(*model_), 1);
+  const auto other_model =
+      model_of(robot_file(std::string(GetParam()) == "dunlin12" ? "dunlin8" : "dunlin12"));
+  SimulatedRobot other(other_model, nominal_site(*other_model), 1);
+  std::string error;
+  EXPECT_FALSE(robot.restore(other.save(), error));
+  EXPECT_NE(error.find("another robot"), std::string::npos) << error;
+  Site late = nominal_site(*model_);
+  late.command_delay_s = 0.03;
+  SimulatedRobot delayed(model_, late, 1);
+  EXPECT_FALSE(robot.restore(delayed.save(), error));
+  EXPECT_NE(error.find("length"), std::string::npos) << error;
+}
+
+TEST_P(Robot, HeatAndChargeCarryOverWhenItIsPutBack) {
+  SimulatedRobot robot(model_, nominal_site(*model_), 1);
+  robot.place_standing(1);
+  Holder holder(file_.robot());
+  holder.trot(robot, 5, 0.25, 0.06);
+  const double winding = robot.state().drives.winding[2];
+  const double charge = robot.state().pack.charge;
+  EXPECT_GT(winding, 25.02);
+  EXPECT_LT(charge, 0.7);
+  robot.place_lying(2);
+  EXPECT_EQ(robot.state().drives.winding[2], winding);
+  EXPECT_EQ(robot.state().pack.charge, charge);
+  EXPECT_NEAR(robot.truth().position_m[0], 0, 1e-12);
+}
+
+TEST_P(Robot, WideAndPlainStepsAgree) {
+  SimulatedRobot robot(model_, nominal_site(*model_), 1);
+  robot.place_standing(1);
+  Holder holder(file_.robot());
+  holder.trot(robot, 0.7, 0.2, 0.05);
+  SiteFigures<double> site{};
+  const auto& tree = model_->figures().tree;
+  site.around.trunk = {tree.trunk.mass, tree.trunk.centre, tree.trunk.inertia};
+  site.drives.strength.fill(1);
+  site.drives.damping.fill(0.1);
+  site.drives.coulomb.fill(0.2);
+  site.pack = {44, 0.1};
+  Told<double> told{};
+  RobotState<double> wide = robot.state();
+  RobotState<double> plain = robot.state();
+  RobotWork<double> work{};
+  advance(model_->figures(), site, told, 1e-3, wide, work);
+  advance_plain(model_->figures(), site, told, 1e-3, plain, work);
+  EXPECT_NEAR(wide.body.velocity.z, plain.body.velocity.z, 1e-12);
+  for (std::size_t l = 0; l < 4; ++l) EXPECT_NEAR(wide.body.speed[l][1], plain.body.speed[l][1], 1e-10);
+}
+
+INSTANTIATE_TEST_SUITE_P(Shipped, Robot, ::testing::Values("dunlin12", "dunlin8"));
+
+TEST(Model, RefusesWhatItCannotBe) {
+  const auto file = robot_file();
+  const auto refused = [](const v1::Robot& robot, const std::string& part) {
+    std::string error;
+    EXPECT_EQ(Model::make(robot, error), nullptr);
+    EXPECT_NE(error.find(part), std::string::npos) << error;
+  };
+  v1::Robot robot = file.robot();
+  robot.mutable_joints(2)->set_kind(v1::Joint::PRISMATIC);
+  refused(robot, "sliding");
+  robot = file.robot();
+  robot.mutable_joints(2)->set_parent(robot.joints(0).name());
+  refused(robot, "branches");
+  robot = file.robot();
+  for (int i = 0; i < 2; ++i) {
+    auto* joint = robot.add_joints();
+    *joint = file.robot().joints(2);
+    joint->set_name("more" + std::to_string(i));
+    joint->set_parent(i == 0 ? "front_left_knee" : "more0");
+  }
+  refused(robot, "more than 4 joints");
+}
+
+TEST(Model, ShippedRobotsWeighWhatTheirFilesSay) {
+  EXPECT_NEAR(model_of(robot_file("dunlin12"))->mass_kg(), 17.36, 1e-9);
+  EXPECT_NEAR(model_of(robot_file("dunlin8"))->mass_kg(), 10.92, 1e-9);
+}
+
+}  // namespace
+}  // namespace pastern::stub
