@@ -5,11 +5,11 @@
 #include <algorithm>
 #include <atomic>
 #include <chrono>
-#include <deque>
 #include <exception>
 #include <mutex>
+#include <optional>
 #include <thread>
-#include <unordered_map>
+#include <vector>
 
 #include "runtime/link/allow_list.h"
 #include "runtime/link/desk.h"
@@ -23,24 +23,28 @@ constexpr std::size_t kCommandsPerTurn = 64;
 constexpr std::size_t kCommandBytesPerTurn = 1 << 20;
 constexpr std::size_t kOutPerTurn = 128;
 constexpr std::size_t kFetchesPerTurn = 16;
-constexpr std::size_t kMostFetches = 256;
-constexpr std::size_t kMostFetchesPerRoute = 8;
+constexpr std::size_t kMostFetches = 64;
+constexpr std::size_t kMostFetchesEach = 8;
+constexpr std::int64_t kForgottenAfterNs = 60'000'000'000;
 constexpr long kIdleMs = 1000;
 constexpr long kRebindMs = 5;
 constexpr std::chrono::microseconds kLookAgain{100};  // while a stop waits for the cycle
 
-/// Who waits for which fetch; bounded for each asker and in all, the oldest makes room.
+/// Who waits for which fetch. Bounded for each asker and in all, so that whoever may only read cannot fill
+/// the session thread's queue, which commands share.
 class Fetches {
  public:
-  void add(Ticket ticket, const Route& route) {
-    const auto same = [&route](const Entry& entry) { return entry.route == route; };
-    if (static_cast<std::size_t>(std::count_if(entries_.begin(), entries_.end(), same)) >=
-        kMostFetchesPerRoute) {
-      entries_.erase(std::find_if(entries_.begin(), entries_.end(), same));
-    } else if (entries_.size() >= kMostFetches) {
-      entries_.pop_front();
-    }
-    entries_.push_back(Entry{ticket.number, route});
+  /// False when the asker, or all together, have too many under way. An asker is a key; without keys a
+  /// connection.
+  [[nodiscard]] bool add(Ticket ticket, const Mail& mail, std::int64_t now_ns) {
+    std::erase_if(entries_,
+                  [now_ns](const Entry& entry) { return now_ns - entry.since_ns > kForgottenAfterNs; });
+    const std::string& asker = mail.sender.key.empty() ? mail.route.id : mail.sender.key;
+    const auto theirs = std::count_if(entries_.begin(), entries_.end(),
+                                      [&asker](const Entry& entry) { return entry.asker == asker; });
+    if (entries_.size() >= kMostFetches || static_cast<std::size_t>(theirs) >= kMostFetchesEach) return false;
+    entries_.push_back(Entry{ticket.number, now_ns, asker, mail.route});
+    return true;
   }
 
   [[nodiscard]] std::optional<Route> take(Ticket ticket) {
@@ -55,9 +59,11 @@ class Fetches {
  private:
   struct Entry {
     std::uint64_t ticket;
+    std::int64_t since_ns;
+    std::string asker;
     Route route;
   };
-  std::deque<Entry> entries_;
+  std::vector<Entry> entries_;
 };
 
 std::string refused_fetch(const std::string& words) {
@@ -175,7 +181,7 @@ void Server::Impl::serve_fetch(const Mail& mail) {
                   " bytes that are no Fetch of pastern/v1/link.proto");
   }
   const Ticket ticket = desk.next_ticket();
-  fetches.add(ticket, mail.route);
+  if (!fetches.add(ticket, mail, wire::now_ns())) return refuse("too many of yours are waiting; try again");
   if (line.submit(ticket, fetch)) return;
   (void)fetches.take(ticket);
   refuse("too many are waiting; try again");

@@ -1,6 +1,7 @@
 // The robot's end over real sockets: who gets through, who does not, and that a stop is answered in words.
 #include <gtest/gtest.h>
 
+#include "runtime/link/caller.h"
 #include "runtime/link/wire.h"
 #include "tests/runtime/link/site.h"
 
@@ -306,6 +307,37 @@ TEST(Server, a_stop_gets_through_a_flood_of_other_commands) {
   flooding = false;
   for (std::thread& flooder : flooders) flooder.join();
   EXPECT_EQ(site.line.stops, 10);
+}
+
+TEST(Server, an_observer_that_fetches_without_end_does_not_fill_the_queue_that_commands_share) {
+  Site site(true);
+  const std::string keys = site.ground("screen", true, false);
+  site.line.answers = false;  // a session thread that is busy
+  site.start();
+  GroundKeys ground;
+  std::string error;
+  ASSERT_TRUE(read_ground_keys(keys, ground, error)) << error;
+  v1::Fetch fetch;
+  fetch.mutable_telemetry()->set_to_sequence(1);
+  int refused = 0;
+  for (int connection = 0; connection < 5; ++connection) {
+    Dial dial;
+    dial.host = "127.0.0.1";
+    dial.keys = ground;
+    wire::Socket socket = dial.socket(ZMQ_DEALER, site.ports.fetch, error);
+    ASSERT_TRUE(socket.open()) << error;
+    for (int i = 0; i < 100; ++i) ASSERT_TRUE(wire::send(socket, {fetch.SerializeAsString()}));
+    wire::Incoming incoming;
+    // The first connection uses up all that one key may have under way.
+    for (int i = 0; i < (connection == 0 ? 92 : 100); ++i) {
+      ASSERT_TRUE(eventually([&] { return wire::receive(socket, incoming, 2); }));
+      v1::Fetched fetched;
+      ASSERT_TRUE(fetched.ParseFromString(incoming.frames.at(0)));
+      refused += fetched.words().find("too many of yours") != std::string::npos ? 1 : 0;
+    }
+  }
+  EXPECT_EQ(refused, 492);
+  EXPECT_EQ(site.line.fetches, 8);
 }
 
 TEST(Server, ends_in_order_while_clients_are_connected) {

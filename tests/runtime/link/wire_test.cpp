@@ -10,7 +10,9 @@
 #include <unistd.h>
 
 #include <array>
+#include <mutex>
 #include <random>
+#include <thread>
 
 #include "tests/runtime/link/site.h"
 
@@ -35,6 +37,7 @@ class Tcp {
   Tcp(const Tcp&) = delete;
   Tcp& operator=(const Tcp&) = delete;
   [[nodiscard]] bool open() const { return open_; }
+  [[nodiscard]] int fd() const { return fd_; }
   void send(const std::string& bytes) const {
     [[maybe_unused]] const ssize_t sent =
         ::send(fd_, bytes.data(), bytes.size(), MSG_NOSIGNAL | MSG_DONTWAIT);
@@ -130,10 +133,10 @@ TEST(Wire, a_hand_made_req_client_is_answered_frame_by_frame) {
   EXPECT_TRUE(answer.confirmed());
 }
 
-TEST(Wire, curve_answers_hello_with_a_welcome_of_168_bytes_only_if_it_is_meant_for_this_robot) {
+TEST(Wire, a_hello_that_is_not_meant_for_this_robot_is_not_welcomed) {
   Site site(true);
   site.start();
-  // RFC 26: HELLO is 200 bytes; a box that was not made for the robot's key is not answered with WELCOME.
+  // RFC 26: its box must open with the robot's secret key.
   const Tcp tcp(site.ports.command);
   tcp.send(greeting("CURVE"));
   expect_greeting(tcp.receive(64), "CURVE");
@@ -141,6 +144,135 @@ TEST(Wire, curve_answers_hello_with_a_welcome_of_168_bytes_only_if_it_is_meant_f
   hello.resize(200, 'x');
   tcp.send(frame(4, hello));
   EXPECT_EQ(tcp.receive(170).find("WELCOME"), std::string::npos);
+}
+
+/// Stands between a client and the robot and keeps what passes.
+class Tap {
+ public:
+  explicit Tap(int to_port) : listener_(::socket(AF_INET, SOCK_STREAM | SOCK_CLOEXEC, 0)) {
+    sockaddr_in at{};
+    at.sin_family = AF_INET;
+    at.sin_addr.s_addr = htonl(INADDR_LOOPBACK);
+    socklen_t size = sizeof at;
+    EXPECT_EQ(::bind(listener_, reinterpret_cast<const sockaddr*>(&at), size), 0);
+    EXPECT_EQ(::listen(listener_, 1), 0);
+    EXPECT_EQ(::getsockname(listener_, reinterpret_cast<sockaddr*>(&at), &size), 0);
+    port_ = ntohs(at.sin_port);
+    thread_ = std::thread([this, to_port] { run(to_port); });
+  }
+  ~Tap() {
+    ending_ = true;
+    thread_.join();
+    ::close(listener_);
+  }
+  Tap(const Tap&) = delete;
+  Tap& operator=(const Tap&) = delete;
+  [[nodiscard]] int port() const { return port_; }
+  [[nodiscard]] std::string from_client() const {
+    const std::lock_guard<std::mutex> lock(mutex_);
+    return from_client_;
+  }
+  [[nodiscard]] std::string from_robot() const {
+    const std::lock_guard<std::mutex> lock(mutex_);
+    return from_robot_;
+  }
+
+ private:
+  void run(int to_port) {
+    pollfd waiting{listener_, POLLIN, 0};
+    if (::poll(&waiting, 1, 10'000) <= 0) return;
+    const int client = ::accept(listener_, nullptr, nullptr);
+    const Tcp robot(to_port);
+    bool both = true;
+    while (both && !ending_) {
+      both = pass(client, robot.fd(), from_client_) && pass(robot.fd(), client, from_robot_);
+    }
+    ::close(client);
+  }
+  bool pass(int from, int to, std::string& kept) {
+    pollfd item{from, POLLIN, 0};
+    if (::poll(&item, 1, 1) <= 0) return true;
+    std::array<char, 4096> part{};
+    const ssize_t got = ::recv(from, part.data(), part.size(), 0);
+    if (got <= 0) return false;
+    const std::lock_guard<std::mutex> lock(mutex_);
+    kept.append(part.data(), static_cast<std::size_t>(got));
+    return ::send(to, part.data(), static_cast<std::size_t>(got), MSG_NOSIGNAL) == got;
+  }
+  int listener_;
+  int port_{0};
+  std::atomic<bool> ending_{false};
+  mutable std::mutex mutex_;
+  std::string from_client_;
+  std::string from_robot_;
+  std::thread thread_;
+};
+
+struct Frame {
+  int flags;
+  std::string body;
+};
+
+/// RFC 23: flags, then one octet of length, or eight when bit 1 is set.
+std::vector<Frame> frames_after_greeting(const std::string& bytes) {
+  std::vector<Frame> frames;
+  std::size_t at = 64;
+  while (at + 2 <= bytes.size()) {
+    const int flags = static_cast<unsigned char>(bytes[at]);
+    const std::size_t width = (flags & 2) != 0 ? 8 : 1;
+    std::size_t length = 0;
+    for (std::size_t i = 0; i < width; ++i)
+      length = length << 8 | static_cast<unsigned char>(bytes.at(at + 1 + i));
+    at += 1 + width;
+    frames.push_back(Frame{flags, bytes.substr(at, length)});
+    at += length;
+  }
+  return frames;
+}
+
+// RFC 26: HELLO is 200 octets, WELCOME 168, a MESSAGE 33 more than what it carries.
+TEST(Wire, with_keys_the_handshake_and_every_message_are_curves_and_nothing_can_be_read) {
+  Site site(true);
+  const std::string keys = site.ground("anna", true, true);
+  site.start();
+  const Tap tap(site.ports.command);
+  ClientConfig config = site.config_of(keys);
+  config.command_port = tap.port();
+  std::string error;
+  const auto client = Client::connect(config, error);
+  ASSERT_NE(client, nullptr) << error;
+  v1::Command stop = command_named("stop");
+  stop.set_format(1);
+  stop.set_id("id-in-the-clear");
+  stop.set_operator_name("operator");
+  const auto answer = client->ask(stop, 10'000);
+  ASSERT_TRUE(answer) << client->trouble();
+  EXPECT_TRUE(answer->confirmed());
+
+  const std::string sent = tap.from_client();
+  const std::string came = tap.from_robot();
+  expect_greeting(sent.substr(0, 64), "CURVE");
+  expect_greeting(came.substr(0, 64), "CURVE");
+  const std::vector<Frame> ours = frames_after_greeting(sent);
+  const std::vector<Frame> theirs = frames_after_greeting(came);
+  ASSERT_EQ(ours.size(), 3U);
+  ASSERT_EQ(theirs.size(), 3U);
+  EXPECT_EQ(ours[0].flags, 4);
+  EXPECT_EQ(ours[0].body.size(), 200U);
+  EXPECT_EQ(ours[0].body.substr(0, 8), std::string("\x05HELLO\x01\0", 8));
+  EXPECT_EQ(theirs[0].body.size(), 168U);
+  EXPECT_EQ(theirs[0].body.substr(0, 8), "\x07WELCOME");
+  EXPECT_EQ(ours[1].flags, 6) << "a long command frame";
+  EXPECT_EQ(ours[1].body.substr(0, 9), "\x08INITIATE");
+  EXPECT_EQ(theirs[1].body.substr(0, 6), "\x05READY");
+  EXPECT_EQ(ours[2].body.substr(0, 8), "\x07MESSAGE");
+  EXPECT_EQ(ours[2].body.size(), 33 + stop.ByteSizeLong());
+  EXPECT_EQ(theirs[2].body.size(), 33 + answer->ByteSizeLong());
+  for (const std::string& secret :
+       {std::string("id-in-the-clear"), std::string("operator"), answer->words()}) {
+    EXPECT_EQ(sent.find(secret), std::string::npos) << secret;
+    EXPECT_EQ(came.find(secret), std::string::npos) << secret;
+  }
 }
 
 TEST(Wire, null_and_plain_are_turned_away_where_keys_are_wanted) {
