@@ -2,8 +2,8 @@
 # The whole job without a robot: builds, starts the onboard program on the simulated robot, adapts its walking policy for a
 # site that is not the one it was trained for, and ends with a verdict, an adopted policy and a report.
 #   sh tools/dry-run.sh [--scenario NAME|FILE] [--robot NAME|FILE] [--operator gradient|batch|sequential|averaged]
-#                       [--wall] [--seed N] [--journal FOLDER] [--policy FILE] [--port N] [--walks]
-# Defaults: cold_store, dunlin12, gradient, stepped pace, seed 1, a new folder under build/dry-run, port 7741.
+#                       [--wall] [--seed N] [--journal FOLDER] [--policy FILE] [--plan FILE] [--port N] [--walks]
+# Defaults: cold_store, dunlin12, gradient, stepped pace, seed 1, a new folder under build/dry-run, the default plan, port 7741.
 # --wall: real time (needs minutes); --walks: one line a walk. Exit status: 0 adopted, 1 kept, else what failed.
 set -eu
 cd "$(dirname "$0")/.."
@@ -20,13 +20,14 @@ pace=stepped
 seed=1
 journal=""
 policy=""
+plan=tools/plans/default.plan.txtpb
 port=${PASTERN_PORT:-7741}
 show=--brief
 while [ $# -gt 0 ]; do
   case $1 in
     --wall) pace=wall ;;
     --walks) show="" ;;
-    --scenario | --robot | --operator | --seed | --journal | --policy | --port)
+    --scenario | --robot | --operator | --seed | --journal | --policy | --plan | --port)
       [ $# -ge 2 ] || usage "$1: expected a value"
       case $1 in
         --scenario) scenario=$2 ;;
@@ -35,6 +36,7 @@ while [ $# -gt 0 ]; do
         --seed) seed=$2 ;;
         --journal) journal=$2 ;;
         --policy) policy=$2 ;;
+        --plan) plan=$2 ;;
         --port) port=$2 ;;
       esac
       shift
@@ -62,7 +64,7 @@ scenario_file=$(file_of "$scenario" scenarios .scenario.txtpb)
 robot_name=$(basename "$robot_file" .robot.txtpb)
 scenario_name=$(basename "$scenario_file" .scenario.txtpb)
 [ -n "$policy" ] || policy=hal_stub/policies/$robot_name.policy
-for file in "$robot_file" "$scenario_file" "$policy"; do
+for file in "$robot_file" "$scenario_file" "$policy" "$plan"; do
   [ -r "$file" ] || { echo "dry-run: $file: not found, or not readable" >&2; exit 3; }
 done
 
@@ -88,21 +90,33 @@ mkdir -p "$journal"
 
 onboard=""
 stub=""
+bus=""
 leave() {
   # What this script started, by its process number; in order first.
   for process in $onboard $stub; do kill -TERM "$process" 2>/dev/null || true; done
   for process in $onboard $stub; do wait "$process" 2>/dev/null || true; done
+  [ -z "$bus" ] || rm -rf "$bus"
 }
 trap leave EXIT
 trap 'exit 130' INT TERM
 
 hal_options="scenario=$scenario_file"
 if [ "$pace" = wall ]; then
-  socket=$(mktemp -u "${TMPDIR:-/tmp}/pastern-bus-XXXXXX")
-  "$build/bin/pastern-stub-robot" --robot "$robot_file" --scenario "$scenario_file" --seed "$seed" --socket "$socket" \
+  bus=$(mktemp -d)
+  "$build/bin/pastern-stub-robot" --robot "$robot_file" --scenario "$scenario_file" --seed "$seed" --socket "$bus/drives" \
     >"$journal/stub-robot.log" 2>&1 &
   stub=$!
-  hal_options="socket=$socket"
+  tries=0
+  until [ -S "$bus/drives" ]; do
+    tries=$((tries + 1))
+    if ! kill -0 "$stub" 2>/dev/null || [ "$tries" -gt 100 ]; then
+      cat "$journal/stub-robot.log" >&2
+      echo "dry-run: pastern-stub-robot did not come up; its words stand above" >&2
+      exit 4
+    fi
+    sleep 0.1
+  done
+  hal_options="socket=$bus/drives"
 fi
 "$build/bin/pastern-onboard" --robot "$robot_file" --policy "$policy" --hal "$build/lib/libpastern_hal_stub.so" \
   --hal-options "$hal_options" --journal "$journal" --pace "$pace" --seed "$seed" \
@@ -124,13 +138,13 @@ kill -0 "$onboard" 2>/dev/null || { cat "$journal/onboard.log" >&2; echo "dry-ru
 # A simulated robot hurts nobody: its first start is confirmed here. On real drives a person reads the procedure.
 "$pastern" confirm --keys "" --yes-i-have-read "$robot_file" >"$journal/confirm.log" ||
   { echo "dry-run: the first start was not confirmed" >&2; exit 5; }
-plan=$journal/session.plan.txtpb
-sed -e "s/kind: [A-Z_]*/kind: $kind/" -e "s/^seed: .*/seed: $seed/" -e "s/^name: .*/name: \"$operator\"/" \
-  tools/plans/default.plan.txtpb >"$plan"
+session=$journal/session.plan.txtpb
+sed -e "/^#/d" -e "s/kind: [A-Z_]*/kind: $kind/" -e "s/^seed: .*/seed: $seed/" -e "s/^name: .*/name: \"$operator\"/" \
+  "$plan" >"$session"
 echo "$robot_name in $scenario_name, $operator, $pace pace, seed $seed; record in $journal"
 result=0
 # shellcheck disable=SC2086
-"$pastern" start --keys "" $show "$plan" || result=$?
+"$pastern" start --keys "" $show "$session" || result=$?
 [ "$result" -le 1 ] || { echo "dry-run: the session did not reach a verdict (status $result); onboard's words: $journal/onboard.log" >&2; exit "$result"; }
 [ "$result" -ne 0 ] || "$pastern" adopt --keys "" | sed '/^next: /d'
 "$pastern" report --keys "" --robot-file "$robot_file" --out "$journal/report.html" | sed '/^next: /d'

@@ -22,6 +22,15 @@ std::string contents(const std::string& path) {
 class ReportTest : public ::testing::Test {
  protected:
   void write(const Story& story) { ASSERT_TRUE(write_session(folder_.path(), story)); }
+  /// The usual story, written once: each walk waits for the disk.
+  void write_usual() {
+    static Folder usual;
+    static const bool written = write_session(usual.path(), Story{});
+    ASSERT_TRUE(written);
+    std::filesystem::copy(
+        usual.path(), folder_.path(),
+        std::filesystem::copy_options::recursive | std::filesystem::copy_options::overwrite_existing);
+  }
   std::string page() {
     const std::string path = folder_.path() + "/page.html";
     const Ran ran = run({"report", "--journal", folder_.path(), "--out", path});
@@ -38,7 +47,7 @@ class ReportTest : public ::testing::Test {
 };
 
 TEST_F(ReportTest, PageComesFromNowhereElse) {
-  write({});
+  write_usual();
   const std::string html = page();
   for (const char* word :
        {"http:", "https:", "//", "src=", "href=", "url(", "@import", "<script", "<link", "<iframe"}) {
@@ -47,7 +56,7 @@ TEST_F(ReportTest, PageComesFromNowhereElse) {
 }
 
 TEST_F(ReportTest, VerdictStandsFirst) {
-  write({});
+  write_usual();
   const std::string read = text_of_page(page());
   const std::size_t verdict = read.find("Adopt the adapted policy");
   ASSERT_NE(verdict, std::string::npos);
@@ -57,7 +66,7 @@ TEST_F(ReportTest, VerdictStandsFirst) {
 
 TEST_F(ReportTest, EveryWalkIsInTableAndPicture) {
   const Story story;
-  write(story);
+  write_usual();
   const std::string html = page();
   const std::size_t walks = 5 + story.search_walks + 2 * story.pairs;
   const std::size_t table = html.find("<table class=\"long\">");
@@ -75,7 +84,7 @@ TEST_F(ReportTest, EveryWalkIsInTableAndPicture) {
 }
 
 TEST_F(ReportTest, FallsAndVoidsAreCountedAndNamed) {
-  write({});
+  write_usual();
   const std::string read = text();
   EXPECT_NE(read.find("70 walks counted: 1 fell, 1 left the lane; 1 void besides."), std::string::npos)
       << read;
@@ -102,7 +111,7 @@ TEST_F(ReportTest, TextAndPageHoldTheSameNumbers) {
 }
 
 TEST_F(ReportTest, MeansAreThoseOfTheWalksInItsOwnTable) {
-  write({});
+  write_usual();
   const std::vector<std::string> lines = lines_of(text());
   double sum = 0;
   int rows = 0;
@@ -153,21 +162,21 @@ TEST_F(ReportTest, WhatIsNotAJournalIsOneLineAndAFile) {
 }
 
 TEST_F(ReportTest, SessionThatIsNotThereIsNamed) {
-  write({});
+  write_usual();
   const Ran ran = run({"report", "--journal", folder_.path(), "--session", "4", "--text"});
   EXPECT_EQ(ran.exit, 3);
   EXPECT_NE(ran.err.find("no session 4, expected one of 1 to 1"), std::string::npos) << ran.err;
 }
 
 TEST_F(ReportTest, ReadingLeavesTheJournalUntouched) {
-  write({});
+  write_usual();
   const std::string before = contents(folder_.path() + "/pastern.journal");
   (void)text();
   EXPECT_EQ(contents(folder_.path() + "/pastern.journal"), before);
 }
 
 TEST_F(ReportTest, PageThatCannotBeWrittenLeavesNothingBehind) {
-  write({});
+  write_usual();
   const Ran ran =
       run({"report", "--journal", folder_.path(), "--out", folder_.path() + "/no/such/page.html"});
   EXPECT_EQ(ran.exit, 3);

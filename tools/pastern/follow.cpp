@@ -100,7 +100,9 @@ void Follower::show_progress() {
 }
 
 void Follower::take(const v1::Episode& episode) {
-  seen_ = seen_ || (episode.session() != 0 && episode.session() >= choice_.session);
+  const bool ours = episode.session() != 0 && episode.session() >= choice_.session;
+  seen_ = seen_ || ours;
+  if (ours) progress_.update(episode.walk(), status_.walks_planned(), last_word_);
   single_done_ = single_done_ || episode.part() == v1::SINGLE;
   if (choice_.json || choice_.quiet) return;
   const bool tenth = !at_terminal() && !choice_.single && episode.walk() % 10 == 0;
@@ -244,6 +246,7 @@ Exit Follower::close(Exit exit) {
   wipe_progress();
   v1::Status now;
   if (line_.status(now) == Exit::done) status_ = now;
+  if (verdict_) *status_.mutable_verdict() = *verdict_;
   if (choice_.json) return exit;
   if (!verdict_ && status_.has_verdict() && status_.session_part() == v1::ENDED && !choice_.single) {
     verdict_ = status_.verdict();

@@ -16,6 +16,9 @@ namespace pastern::tools {
 [[nodiscard]] std::string words(v1::RobotState state);
 [[nodiscard]] std::string words(v1::SessionPart part);
 
+/// False for a walk that was void before it began: it has no figures.
+[[nodiscard]] bool walked(const v1::Episode& episode);
+
 /// Head of the columns of walk_line().
 [[nodiscard]] std::string walk_head();
 /// One walk: number, part, outcome, return, speed, roll, heat, pack, and why it was void or tripped.

@@ -19,6 +19,8 @@ std::string remark(const v1::Episode& episode) {
 
 }  // namespace
 
+bool walked(const v1::Episode& episode) { return episode.summary().duration_s() > 0; }
+
 std::string words(v1::Part part) {
   switch (part) {
     case v1::BASELINE:
@@ -100,11 +102,13 @@ std::string walk_head() {
 
 std::string walk_line(const v1::Episode& episode) {
   const v1::EpisodeSummary& summary = episode.summary();
-  return fmt::format("{:>4}  {:<16}  {:<13}  {:>6.2f}  {:>5.2f}  {:>5.1f}  {:>5.1f}  {:>5.0f}  {:>5.1f}{}",
-                     episode.walk(), words(episode.part()), words(episode.outcome()), episode.terms().total(),
-                     summary.mean_speed_m_per_s(), summary.roll_rms_rad() / kDegree,
-                     summary.pitch_rms_rad() / kDegree, summary.winding_max_c(), summary.pack_min_v(),
-                     remark(episode));
+  const std::string head =
+      fmt::format("{:>4}  {:<16}  {:<13}", episode.walk(), words(episode.part()), words(episode.outcome()));
+  if (!walked(episode)) return head + remark(episode);
+  return head + fmt::format("  {:>6.2f}  {:>5.2f}  {:>5.1f}  {:>5.1f}  {:>5.0f}  {:>5.1f}{}",
+                            episode.terms().total(), summary.mean_speed_m_per_s(),
+                            summary.roll_rms_rad() / kDegree, summary.pitch_rms_rad() / kDegree,
+                            std::round(summary.winding_max_c()) + 0.0, summary.pack_min_v(), remark(episode));
 }
 
 std::string verdict_line(const v1::Verdict& verdict) {

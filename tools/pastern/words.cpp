@@ -19,6 +19,14 @@ bool looks_like_number(const std::string& cell) {
           cell[0] == '.');
 }
 
+/// What a file or a robot wrote must not steer the terminal.
+std::string harmless(std::string text) {
+  std::replace_if(
+      text.begin(), text.end(),
+      [](char c) { return c != '\n' && (static_cast<unsigned char>(c) < 0x20 || c == '\x7f'); }, '?');
+  return text;
+}
+
 std::string padded(const std::string& cell, std::size_t columns, bool right) {
   const std::size_t have = width(cell);
   const std::string space(columns > have ? columns - have : 0, ' ');
@@ -28,12 +36,12 @@ std::string padded(const std::string& cell, std::size_t columns, bool right) {
 }  // namespace
 
 void say(const std::string& line) {
-  std::fputs((line + "\n").c_str(), stdout);
+  std::fputs((harmless(line) + "\n").c_str(), stdout);
   std::fflush(stdout);
 }
 
 void complain(const std::string& line) {
-  std::fputs((line + "\n").c_str(), stderr);
+  std::fputs((harmless(line) + "\n").c_str(), stderr);
   std::fflush(stderr);
 }
 

@@ -5,6 +5,7 @@
 #include <cmath>
 #include <functional>
 
+#include "tools/pastern/follow.h"
 #include "tools/report/charts.h"
 #include "tools/report/svg.h"
 
@@ -160,13 +161,15 @@ std::string pairs_chart(const Facts& facts) {
 }
 
 std::string heat_chart(const Facts& facts) {
-  if (facts.walks.empty()) return "";
+  const auto first = std::find_if(facts.walks.begin(), facts.walks.end(), walked);
+  if (first == facts.walks.end()) return "";
   Sheet sheet(980, 236, "Heat and pack over the session");
   const auto draw = [&](double left, const char* name, const std::function<double(const v1::Episode&)>& value,
                         Mark mark) {
-    Range y{value(facts.walks.front()), value(facts.walks.front())};
+    Range y{value(*first), value(*first)};
     std::vector<Point> curve;
     for (const v1::Episode& walk : facts.walks) {
+      if (!walked(walk)) continue;
       y.hold(value(walk));
       curve.push_back({static_cast<double>(walk.walk()), value(walk)});
     }

@@ -31,7 +31,7 @@ figcaption { font-size: 13px; color: #4a4a4a; max-width: 900px; }
 svg { display: block; width: 100%; height: auto; font-family: inherit; }
 .wide { overflow-x: auto; }
 table { border-collapse: collapse; margin: 8px 0; font-variant-numeric: tabular-nums; }
-caption { text-align: left; font-size: 13px; color: #4a4a4a; padding-bottom: 4px; }
+caption { text-align: left; white-space: nowrap; font-size: 13px; color: #4a4a4a; padding-bottom: 4px; }
 th, td { padding: 3px 14px 3px 0; text-align: left; vertical-align: top; border-bottom: 1px solid #e0e0e0; }
 th { border-bottom: 1px solid #5a5a5a; font-weight: 600; }
 .number { text-align: right; white-space: nowrap; }

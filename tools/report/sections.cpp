@@ -168,12 +168,13 @@ void terms_section(Document& document, const Facts& facts) {
 }
 
 void heat_section(Document& document, const Facts& facts) {
-  if (facts.walks.empty()) return;
+  if (std::none_of(facts.walks.begin(), facts.walks.end(), walked)) return;
   document.section("Heat and pack over the session");
   document.figure("Hottest winding and lowest pack voltage within each walk.", heat_chart(facts));
   double hottest = -1e9;
   double lowest = 1e9;
   for (const v1::Episode& walk : facts.walks) {
+    if (!walked(walk)) continue;
     hottest = std::max(hottest, walk.summary().winding_max_c());
     lowest = std::min(lowest, walk.summary().pack_min_v());
   }
@@ -236,22 +237,36 @@ void record_section(Document& document, const Facts& facts) {
   for (const std::string& note : facts.notes) notes.rows.push_back({note});
 }
 
+std::vector<std::string> figures_of(const v1::Episode& walk) {
+  if (!walked(walk)) return std::vector<std::string>(11, "-");
+  const v1::ReturnTerms& t = walk.terms();
+  const v1::EpisodeSummary& s = walk.summary();
+  return {two(t.total()),
+          two(t.forward()),
+          two(t.energy()),
+          two(t.drift()),
+          two(t.turn()),
+          two(t.fall()),
+          two(s.mean_speed_m_per_s()),
+          degrees(s.roll_rms_rad()),
+          degrees(s.pitch_rms_rad()),
+          fmt::format("{:.0f}", std::round(s.winding_max_c()) + 0.0),
+          fmt::format("{:.1f}", s.pack_min_v())};
+}
+
 void walks_section(Document& document, const Facts& facts) {
   document.section("Every walk");
   Block& table = document.table("", {"walk", "part", "outcome", "return", "forward", "energy", "drift",
                                      "turn", "fall", "m/s", "roll", "pitch", "C", "V", "policy", "remark"});
   table.long_table = true;
   for (const v1::Episode& walk : facts.walks) {
-    const v1::ReturnTerms& t = walk.terms();
-    const v1::EpisodeSummary& s = walk.summary();
+    std::vector<std::string> row = {fmt::format("{}", walk.walk()), words(walk.part()),
+                                    words(walk.outcome())};
+    for (std::string& figure : figures_of(walk)) row.push_back(std::move(figure));
     const std::string trip = trip_words(walk.trip());
-    table.rows.push_back(
-        {fmt::format("{}", walk.walk()), words(walk.part()), words(walk.outcome()), two(t.total()),
-         two(t.forward()), two(t.energy()), two(t.drift()), two(t.turn()), two(t.fall()),
-         two(s.mean_speed_m_per_s()), degrees(s.roll_rms_rad()), degrees(s.pitch_rms_rad()),
-         fmt::format("{:.0f}", s.winding_max_c()), fmt::format("{:.1f}", s.pack_min_v()),
-         files::hex(walk.parameters_sha256()).substr(0, 8),
-         walk.void_reason() + (walk.void_reason().empty() || trip.empty() ? "" : "; ") + trip});
+    row.push_back(files::hex(walk.parameters_sha256()).substr(0, 8));
+    row.push_back(walk.void_reason() + (walk.void_reason().empty() || trip.empty() ? "" : "; ") + trip);
+    table.rows.push_back(std::move(row));
   }
   document.paragraph(
       "Roll and pitch: rms, degrees. C: hottest winding. V: lowest pack voltage. Policy: first digits of the "
