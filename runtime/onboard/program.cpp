@@ -31,6 +31,7 @@ Program::Program(Parts parts)
   const std::optional<std::string> reserved = parts_.journal.get(kReservedKey);
   sequence_ = reserved ? std::strtoull(reserved->c_str(), nullptr, 10) : parts_.journal.last_sequence();
   reserved_ = sequence_;
+  show_status(false);  // the link answers as soon as it is up: never with an empty status
 }
 
 void Program::run() {
