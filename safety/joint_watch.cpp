@@ -6,18 +6,6 @@
 #include "safety/frame_watch.h"
 
 namespace pastern::safety {
-namespace {
-
-void look_at_range(const JointLimits& limit, double angle, double speed, int joint,
-                   Findings& found) noexcept {
-  if (!(angle >= limit.angle_min_rad)) found.note(Cause::joint_position, joint, angle, limit.angle_min_rad);
-  if (!(angle <= limit.angle_max_rad)) found.note(Cause::joint_position, joint, angle, limit.angle_max_rad);
-  if (!(std::fabs(speed) <= limit.speed_max_rad_per_s)) {
-    found.note(Cause::joint_speed, joint, speed, limit.speed_max_rad_per_s);
-  }
-}
-
-}  // namespace
 
 JointWatch::JointWatch(const Limits& limits) noexcept : tick_s_(sound_tick_s(limits.tick_s)) {
   for (std::size_t j = 0; j < torque_hold_ticks_.size(); ++j) {
@@ -36,10 +24,30 @@ void JointWatch::look(const Limits& limits, const SensorFrame& frame, bool live,
       found.note(Cause::measured_torque, j, torque, limit.trip_torque_nm,
                  static_cast<double>(torque_high_[i].ticks()) * tick_s_);
     }
-    if (live) look_at_range(limit, frame.angle[j], frame.speed[j], j, found);
+    if (live) {
+      look_at_range(limit, frame.angle[j], frame.speed[j], j, found);
+    } else {
+      been_inside_[i] = false;
+    }
     if (!(frame.winding[j] < limit.winding_max_c)) {
       found.note(Cause::winding_temperature, j, frame.winding[j], limit.winding_max_c);
     }
+  }
+}
+
+void JointWatch::look_at_range(const JointLimits& limit, double angle, double speed, int joint,
+                               Findings& found) noexcept {
+  bool& been_inside = been_inside_[static_cast<std::size_t>(joint)];
+  been_inside = been_inside || (angle >= limit.angle_min_rad && angle <= limit.angle_max_rad);
+  const double beyond = !been_inside && limit.soft_edge_rad > 0.0 ? limit.soft_edge_rad : 0.0;
+  if (!(angle >= limit.angle_min_rad - beyond)) {
+    found.note(Cause::joint_position, joint, angle, limit.angle_min_rad);
+  }
+  if (!(angle <= limit.angle_max_rad + beyond)) {
+    found.note(Cause::joint_position, joint, angle, limit.angle_max_rad);
+  }
+  if (!(std::fabs(speed) <= limit.speed_max_rad_per_s)) {
+    found.note(Cause::joint_speed, joint, speed, limit.speed_max_rad_per_s);
   }
 }
 

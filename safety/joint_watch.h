@@ -11,6 +11,10 @@
 
 namespace pastern::safety {
 
+/// A parked robot lies with its limbs against the end stops, a little beyond an edge of their range. A joint
+/// that is found there when torque comes on may come in: until it has been inside once, its edge counts as
+/// farther out by the width of the soft edge (the gate lets no outward torque pass there, see edge_fade).
+/// Farther out it trips.
 class JointWatch {
  public:
   explicit JointWatch(const Limits& limits) noexcept;
@@ -22,8 +26,12 @@ class JointWatch {
   void reset() noexcept;
 
  private:
+  void look_at_range(const JointLimits& limit, double angle, double speed, int joint,
+                     Findings& found) noexcept;
+
   std::array<std::int64_t, kMaxJoints> torque_hold_ticks_{};
   std::array<HoldClock, kMaxJoints> torque_high_{};
+  std::array<bool, kMaxJoints> been_inside_{};  ///< of its range since torque was last wanted
   double tick_s_;
 };
 

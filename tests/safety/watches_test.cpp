@@ -149,6 +149,45 @@ TEST(Watches, TiltTripsAfterItsHoldAndAtOnceWhenLarge) {
   }
 }
 
+TEST(Watches, AJointParkedAgainstItsEndStopMayComeInButNotGoOut) {
+  // Range -1 .. 2, soft edge 0.1 rad. Found beyond the edge by less than that: no trip, no outward torque.
+  for (const double edge : {-1.0, 2.0}) {
+    const double out = edge < 0.0 ? -1.0 : 1.0;
+    Loop loop(without_jumps());
+    loop.flags.torque_wanted = false;
+    loop.frame.angle[1] = edge + 0.09 * out;
+    loop.ticks(5);
+    loop.flags.torque_wanted = true;
+    loop.wanted[1] = 4.0 * out;
+    EXPECT_EQ(loop.tick().torque()[1], 0.0);
+    loop.wanted[1] = -4.0 * out;
+    EXPECT_EQ(loop.tick().torque()[1], -4.0 * out);
+    EXPECT_EQ(loop.ticks_to_trip(50), 51);
+    loop.frame.angle[1] = edge + 0.11 * out;  // farther out
+    EXPECT_EQ(loop.ticks_to_trip(5), 1);
+    EXPECT_EQ(loop.gate.trip().cause, Cause::joint_position);
+    EXPECT_EQ(loop.gate.trip().limit, edge);
+  }
+}
+
+TEST(Watches, OnceInsideAJointMayNotGoBeyondItsEdgeAgain) {
+  Loop loop(without_jumps());
+  loop.frame.angle[1] = 2.05;
+  EXPECT_EQ(loop.ticks_to_trip(50), 51);
+  loop.frame.angle[1] = 2.0;
+  EXPECT_EQ(loop.ticks_to_trip(1), 2);
+  loop.frame.angle[1] = std::nextafter(2.0, 3.0);
+  EXPECT_EQ(loop.ticks_to_trip(5), 1);
+  EXPECT_EQ(loop.gate.trip().cause, Cause::joint_position);
+}
+
+TEST(Watches, AJointParkedFarBeyondItsEdgeDoesNotStart) {
+  Loop loop(without_jumps());
+  loop.frame.angle[1] = 2.101;
+  EXPECT_EQ(loop.ticks_to_trip(5), 1);
+  EXPECT_EQ(loop.gate.phase(), Phase::off);
+}
+
 TEST(Watches, BodyRateIsTheSizeOfTheWholeVector) {
   Loop loop;
   loop.frame.rate = {-4.0, 4.0, 2.0};  // 6 rad/s exactly: the limit; too short to tilt far
