@@ -126,6 +126,7 @@ TEST_F(RobotVerbsTest, StatusTellsTheSameInWordsAndInJson) {
   now.set_walks_done(17);
   now.set_walks_planned(71);
   now.set_pack_voltage_v(33.5);
+  now.set_ticks(1000);
   robot_.set_status(now);
   const Ran words = run(robot_.with({"status"}));
   EXPECT_EQ(words.exit, 0);

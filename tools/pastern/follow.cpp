@@ -246,15 +246,19 @@ Exit Follower::close(Exit exit) {
   wipe_progress();
   v1::Status now;
   if (line_.status(now) == Exit::done) status_ = now;
-  if (verdict_) *status_.mutable_verdict() = *verdict_;
+  if (verdict_) {
+    // The robot still lowers itself; its status may lag.
+    *status_.mutable_verdict() = *verdict_;
+    status_.set_session_part(v1::ENDED);
+  }
   if (choice_.json) return exit;
   if (!verdict_ && status_.has_verdict() && status_.session_part() == v1::ENDED && !choice_.single) {
     verdict_ = status_.verdict();
   }
-  if (exit == Exit::tripped) say("tripped: " + trip_words(status_.trip()));
+  if (exit == Exit::tripped && prompted_.empty()) say("tripped: " + trip_words(status_.trip()));
   if (exit == Exit::refused) say("the session is interrupted; its finished walks are on disk");
   if (verdict_) say(verdict_line(*verdict_));
-  suggest_after(status_);
+  if (!choice_.brief) suggest_after(status_);
   return exit;
 }
 

@@ -17,7 +17,8 @@ constexpr const char* kByHand = "Use the emergency stop in your hand.";
 
 std::string confirmed_words(bool halt) {
   return halt ? "halt: CONFIRMED by the robot: torque is off."
-              : "stop: CONFIRMED by the robot: it damps, lowers itself, and then takes the torque off.";
+              : "stop: CONFIRMED by the robot: it damps, lowers itself, then torque off; without torque it "
+                "stays so.";
 }
 
 }  // namespace

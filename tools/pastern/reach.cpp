@@ -162,6 +162,9 @@ void RobotLine::note_baton() {
 
 std::string trip_words(const v1::TripRecord& trip) {
   if (trip.cause().empty()) return "";
+  if (trip.unit().empty() && trip.value() == 0 && trip.limit() == 0) {
+    return fmt::format("{}, tick {}, reaction {}", trip.cause(), trip.tick(), trip.reaction());
+  }
   const std::string joint = trip.joint().empty() ? "" : " of " + trip.joint();
   const std::string unit = trip.unit().empty() ? "" : " " + trip.unit();
   return fmt::format("{}{}: {:.3g}{}, limit {:.3g}{}, held {:.3g} s, tick {}, reaction {}", trip.cause(),

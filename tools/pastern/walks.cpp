@@ -131,15 +131,20 @@ std::string status_text(const v1::Status& status) {
   fact("waiting for", status.waiting_for());
   if (status.has_trip()) fact("trip", trip_words(status.trip()));
   fact("policy", "sha256 " + brief_hash(status.policy_sha256_hex()));
-  fact("pack", fmt::format("{:.1f} V", status.pack_voltage_v()));
-  fact("hottest", fmt::format("{:.0f} deg C", status.winding_max_c()));
+  const bool read = status.ticks() > 0;  // before the first tick no sensor has been read
+  fact("pack", read ? fmt::format("{:.1f} V", status.pack_voltage_v()) : "not read yet");
+  fact("hottest",
+       read ? fmt::format("{:.0f} deg C", std::round(status.winding_max_c()) + 0.0) : "not read yet");
   fact("baton", status.baton_holder().empty() ? "nobody holds it" : "held by " + status.baton_holder());
   if (status.session() != 0) {
     fact("session", fmt::format("{}: {}; {} of {} walks, {} falls, {} void", status.session(),
                                 words(status.session_part()), status.walks_done(), status.walks_planned(),
                                 status.falls(), status.voids()));
-    fact("return", fmt::format("start policy {:.2f}, best of the search {:.2f}", status.start_return(),
-                               status.best_return()));
+    const auto known = [](double value) {
+      return value == 0 ? std::string("-") : fmt::format("{:.2f}", value);
+    };
+    fact("return", fmt::format("start policy {}, best of the search {}", known(status.start_return()),
+                               known(status.best_return())));
   } else {
     fact("session", "none");
   }
@@ -181,6 +186,8 @@ void suggest_after(const v1::Status& status) {
     suggest("confirm", "first start with this robot file: read the procedure, then confirm");
   } else if (waiting == "go") {
     suggest("go", "when the robot is back on its mark and nobody is in reach");
+  } else if (waiting == "baton") {
+    suggest("resume", "takes the baton up again; the session goes on");
   } else if (status.session_part() == v1::INTERRUPTED) {
     suggest("resume", "goes on with the interrupted session");
   } else if (ended && status.verdict().kind() == v1::Verdict::ADOPT) {
