@@ -115,11 +115,10 @@ std::optional<v1::Telemetry> Client::next(int timeout_ms) {
     }
     if (impl_->arrived.empty()) impl_->listen_to_more(left_ms());
     if (impl_->arrived.empty()) return std::nullopt;
-    const v1::Telemetry& head = impl_->arrived.front();
-    if (!impl_->expected || head.sequence() <= *impl_->expected) {
-      impl_->give_head();
-    } else if (impl_->fill_gap(*impl_->expected, head.sequence() - 1, std::max(left_ms(), 100)) ||
-               ++impl_->gap_failures >= kGapTries) {
+    const std::uint64_t head = impl_->arrived.front().sequence();
+    const bool gap = impl_->expected && head > *impl_->expected;
+    const bool filled = !gap || impl_->fill_gap(*impl_->expected, head - 1, std::max(left_ms(), 100));
+    if (filled || ++impl_->gap_failures >= kGapTries) {
       impl_->give_head();
     } else if (left_ms() == 0) {
       return std::nullopt;

@@ -48,7 +48,7 @@ std::string misshapen(const v1::Command& command) {
 
 // For people: the key's name is proven, the operator's is only said.
 std::string who(const Sender& sender, const v1::Command& command) {
-  const std::string said = command.operator_name().empty() ? "somebody" : command.operator_name();
+  std::string said = command.operator_name().empty() ? "somebody" : command.operator_name();
   if (sender.name.empty()) return said;
   if (command.operator_name().empty() || command.operator_name() == sender.name) return sender.name;
   return said + " (key " + sender.name + ")";

@@ -37,7 +37,11 @@ bool good_name(const std::string& name, std::string& error) {
         return (c >= 'a' && c <= 'z') || (c >= 'A' && c <= 'Z') || (c >= '0' && c <= '9') || c == '-' ||
                c == '_';
       });
-  return good || fail(error, "key name", "'" + name.substr(0, 64) + "'", "1 to 32 letters, digits, - or _");
+  if (good) return true;
+  std::string shown = name.substr(0, 64);
+  std::replace_if(
+      shown.begin(), shown.end(), [](char c) { return c < ' ' || c == 0x7f; }, '?');
+  return fail(error, "key name", "'" + shown + "'", "1 to 32 letters, digits, - or _");
 }
 
 // zmq_z85_decode of libzmq 4.3.4 lets some characters outside the alphabet through; this one does not.
@@ -73,7 +77,7 @@ bool read_key(const std::string& path, bool secret, std::string& key, std::strin
   }
   if (secret && (facts.st_mode & 077) != 0) {
     std::array<char, 8> mode{};
-    std::snprintf(mode.data(), mode.size(), "%04o", static_cast<unsigned>(facts.st_mode & 07777));
+    (void)std::snprintf(mode.data(), mode.size(), "%04o", static_cast<unsigned>(facts.st_mode & 07777));
     return fail(error, path, std::string("mode ") + mode.data(), "0600: a secret key is for its owner alone");
   }
   std::array<char, 128> text{};
@@ -173,15 +177,19 @@ std::vector<std::string> read_allowed(const std::string& folder, std::vector<All
     AllowedKey key;
     key.commander = commander;
     key.name = file.substr(0, file.size() - (commander ? sizeof kOperator : sizeof kObserver) + 1);
+    std::string path = list;
+    path.append("/").append(file);
     std::string error;
-    if (!good_name(key.name, error) || !read_key(list + "/" + file, false, key.public_z85, error)) {
+    if (!good_name(key.name, error) || !read_key(path, false, key.public_z85, error)) {
       defects.push_back(error);
       continue;
     }
     for (const AllowedKey& other : allowed) {
       if (other.name != key.name && other.public_z85 != key.public_z85) continue;
-      defects.push_back(list + "/" + file + ": found a key or name that " + other.name +
-                        " has already, expected each once");
+      defects.push_back(path.append(": found a key or name that ")
+                            .append(other.name)
+                            .append(" has already, expected each once"));
+      break;
     }
     allowed.push_back(key);
   }
@@ -248,7 +256,8 @@ bool revoke(const std::string& folder, const std::string& name, std::string& err
   const std::string list = allowed_folder(folder);
   bool found = false;
   for (const char* kind : {kObserver, kOperator}) {
-    const std::string path = list + "/" + name + kind;
+    std::string path = list;
+    path.append("/").append(name).append(kind);
     if (::unlink(path.c_str()) == 0) {
       found = true;
     } else if (errno != ENOENT) {

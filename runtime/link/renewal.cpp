@@ -18,8 +18,8 @@ constexpr int kSilentTurns = 5;  // then a new connection is tried
 
 std::string fresh_id() {
   std::array<char, 33> text{};
-  std::snprintf(text.data(), text.size(), "%016" PRIx64 "%016" PRIx64, wire::random_u64(),
-                wire::random_u64());
+  (void)std::snprintf(text.data(), text.size(), "%016" PRIx64 "%016" PRIx64, wire::random_u64(),
+                      wire::random_u64());
   return text.data();
 }
 

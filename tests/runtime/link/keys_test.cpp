@@ -74,6 +74,7 @@ TEST_F(KeysTest, names_that_could_leave_the_folder_or_mislead_are_refused) {
   for (const std::string name : {"", ".", "..", "../x", "a/b", "a b", "a.operator", "na\nme", "\xc3\xa9",
                                  "abcdefghijklmnopqrstuvwxyz0123456"}) {
     EXPECT_FALSE(make_pair(folder_.path(), name, error_)) << name;
+    expect_one_line("key name");
     EXPECT_FALSE(allow(folder_.path(), name, true, std::string(40, '0'), error_)) << name;
     EXPECT_FALSE(revoke(folder_.path(), name, error_)) << name;
   }
