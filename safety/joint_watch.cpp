@@ -27,7 +27,7 @@ void JointWatch::look(const Limits& limits, const SensorFrame& frame, bool live,
     if (live) {
       look_at_range(limit, frame.angle[j], frame.speed[j], j, found);
     } else {
-      been_inside_[i] = false;
+      been_clear_[i] = false;
     }
     if (!(frame.winding[j] < limit.winding_max_c)) {
       found.note(Cause::winding_temperature, j, frame.winding[j], limit.winding_max_c);
@@ -37,9 +37,10 @@ void JointWatch::look(const Limits& limits, const SensorFrame& frame, bool live,
 
 void JointWatch::look_at_range(const JointLimits& limit, double angle, double speed, int joint,
                                Findings& found) noexcept {
-  bool& been_inside = been_inside_[static_cast<std::size_t>(joint)];
-  been_inside = been_inside || (angle >= limit.angle_min_rad && angle <= limit.angle_max_rad);
-  const double beyond = !been_inside && limit.soft_edge_rad > 0.0 ? limit.soft_edge_rad : 0.0;
+  const double width = limit.soft_edge_rad > 0.0 ? limit.soft_edge_rad : 0.0;
+  bool& been_clear = been_clear_[static_cast<std::size_t>(joint)];
+  been_clear = been_clear || (angle >= limit.angle_min_rad + width && angle <= limit.angle_max_rad - width);
+  const double beyond = been_clear ? 0.0 : width;
   if (!(angle >= limit.angle_min_rad - beyond)) {
     found.note(Cause::joint_position, joint, angle, limit.angle_min_rad);
   }

@@ -11,10 +11,10 @@
 
 namespace pastern::safety {
 
-/// A parked robot lies with its limbs against the end stops, a little beyond an edge of their range. A joint
-/// that is found there when torque comes on may come in: until it has been inside once, its edge counts as
-/// farther out by the width of the soft edge (the gate lets no outward torque pass there, see edge_fade).
-/// Farther out it trips.
+/// A parked robot lies with its limbs against the end stops, about the edges of their range. A joint that is
+/// found there when torque comes on may come in: until it has been clear of its soft edges once, its hard
+/// edges count as farther out by the width of the soft edge (the gate lets no outward torque pass there, see
+/// edge_fade). Farther out it trips.
 class JointWatch {
  public:
   explicit JointWatch(const Limits& limits) noexcept;
@@ -31,7 +31,7 @@ class JointWatch {
 
   std::array<std::int64_t, kMaxJoints> torque_hold_ticks_{};
   std::array<HoldClock, kMaxJoints> torque_high_{};
-  std::array<bool, kMaxJoints> been_inside_{};  ///< of its range since torque was last wanted
+  std::array<bool, kMaxJoints> been_clear_{};  ///< of its soft edges since torque was last wanted
   double tick_s_;
 };
 

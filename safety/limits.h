@@ -52,8 +52,7 @@ struct JointLimits {
   double slew_nm_per_s{0};       ///< clamp of its change
   double trip_torque_nm{0};      ///< measured torque beyond this ...
   double trip_torque_hold_s{0};  ///< ... for longer than this trips
-  double angle_min_rad{
-      0};  ///< hard edge: beyond it trips (joint_watch.h: a joint parked just beyond may come in)
+  double angle_min_rad{0};       ///< hard edge: beyond it trips (for one parked beyond: joint_watch.h)
   double angle_max_rad{0};
   double soft_edge_rad{0};        ///< width inside the hard edge where torque pushing outward fades to zero
   double speed_max_rad_per_s{0};  ///< hard edge
