@@ -132,7 +132,7 @@ TEST(EnvelopeUnderNoise, HoldsInEveryPhaseOfARobotThatIsMostlyWell) {
   Envelope envelope(loop.limits);
   int phases[4] = {0, 0, 0, 0};
   for (int i = 0; i < 100'000; ++i) {
-    for (int j = 0; j < 3; ++j) {
+    for (int j = 0; j < kMaxJoints; ++j) {  // the robot has three
       const double x = noise.number();
       loop.wanted[j] = std::isfinite(x) || noise.chance(500) ? x : 40.0;
       loop.frame.speed[j] = noise.chance(3) ? 15.0 : -1.0;

@@ -106,7 +106,9 @@ TEST(NotFinite, WhatTheRobotDoesNotHaveIsNotJudged) {
   loop.frame.winding[3] = loop.frame.torque[3] = loop.frame.speed[3] = kNan;
   loop.wanted[3] = kNan;
   loop.target[3] = kNan;
+  loop.wanted[4] = 10.0;
   for (int i = 0; i < 100; ++i) EXPECT_TRUE(sound(loop.tick(), loop.limits));
+  EXPECT_FALSE(loop.gate.clamped());
   EXPECT_EQ(loop.gate.phase(), Phase::armed);
   EXPECT_EQ(loop.gate.hold(), Hold::none);
 }

@@ -21,6 +21,14 @@ TEST(Timing, HoldTimesRoundUpAndNonsenseIsAtOnce) {
   EXPECT_EQ(hold_ticks(0.7, 0.1), 7);
 }
 
+TEST(Timing, ATickPeriodThatMakesNoSenseBecomesAMillisecond) {
+  for (const double bad : {0.0, -0.001, 1e-6, 5.0, std::nan(""), std::numeric_limits<double>::infinity()}) {
+    EXPECT_EQ(sound_tick_s(bad), 0.001) << bad;
+  }
+  EXPECT_EQ(sound_tick_s(0.0002), 0.0002);
+  EXPECT_EQ(sound_tick_s(0.01), 0.01);
+}
+
 TEST(Timing, SpansRoundDown) {
   EXPECT_EQ(ticks_within(0.05, 0.001), 50);
   EXPECT_EQ(ticks_within(0.0509, 0.001), 50);
