@@ -10,6 +10,9 @@
 #include <algorithm>
 #include <chrono>
 #include <cstdio>
+#include <cstdlib>
+#include <filesystem>
+#include <random>
 #include <vector>
 
 #include "runtime/journal/journal.h"
@@ -19,6 +22,22 @@ namespace {
 
 using Clock = std::chrono::steady_clock;
 constexpr std::chrono::seconds kPatience{30};
+constexpr std::uint64_t kKillsASession = 12;
+
+// 2 + 12 + 10 walks of two seconds: every part of a session, in about a second.
+constexpr const char* kPlan = R"(name: "kills"
+adaptation { kind: ES_GRADIENT batch: 3 }
+seed: 1
+walk_s: 2
+baseline_walks: 2
+search_walks: 12
+confirmation_pairs: 5
+confirmation_level: 0.05
+max_falls: 1000
+max_minutes: 60
+max_void_repeats: 3
+go_by: AUTO
+)";
 
 double since(Clock::time_point then) { return std::chrono::duration<double>(Clock::now() - then).count(); }
 
@@ -236,6 +255,56 @@ KillResult run_killed_session(const OnboardFiles& files, const std::string& fold
   result.seconds = since(began);
   if (result.trouble.empty()) read_end(folder, result);
   return result;
+}
+
+OnboardFiles shipped_files(const std::string& source, const std::string& binary, const std::string& robot,
+                           const std::string& scenario) {
+  const std::string stub = source + "/hal_stub/";
+  return {binary + "/bin/pastern-onboard", stub + "robots/" + robot + ".robot.txtpb",
+          stub + "policies/" + robot + ".policy", binary + "/lib/libpastern_hal_stub.so",
+          stub + "scenarios/" + scenario + ".scenario.txtpb"};
+}
+
+namespace {
+
+KillResult session_in_new_folder(const OnboardFiles& files, std::uint64_t seed,
+                                 const std::function<double()>& delay_s) {
+  std::string folder = (std::filesystem::temp_directory_path() / "pastern_kills_XXXXXX").string();
+  KillResult result;
+  if (mkdtemp(folder.data()) == nullptr) {
+    result.trouble = folder + ": cannot be made";
+    return result;
+  }
+  result = run_killed_session(files, folder, kPlan, seed, delay_s);
+  if (!result.trouble.empty()) std::fprintf(stderr, "%s: %s\n", folder.c_str(), result.trouble.c_str());
+  std::filesystem::remove_all(folder);
+  return result;
+}
+
+}  // namespace
+
+bool kill_many(const OnboardFiles& files, std::uint64_t kills, std::uint64_t seed, KillTally& tally) {
+  const KillResult whole = session_in_new_folder(files, seed, [] { return -1.0; });
+  if (!whole.trouble.empty()) return false;
+  tally.walks = whole.walks;
+  std::mt19937_64 engine(seed);
+  std::uniform_real_distribution<double> delay(0, 0.25 * whole.seconds);
+  // A session that cannot go on is a different result, not a reason to try for ever.
+  while (tally.sum.kills < kills && tally.different < 20) {
+    std::uint64_t left = std::min(kills - tally.sum.kills, kKillsASession);
+    const KillResult one = session_in_new_folder(files, seed, [&] {
+      if (left == 0) return -1.0;
+      --left;
+      return delay(engine);
+    });
+    ++tally.sessions;
+    tally.sum.kills += one.kills;
+    tally.sum.during_walks += one.during_walks;
+    tally.sum.walks_lost += one.walks_lost;
+    tally.sum.unreadable += one.unreadable;
+    tally.different += one.digest != whole.digest ? 1 : 0;
+  }
+  return true;
 }
 
 }  // namespace pastern::faults

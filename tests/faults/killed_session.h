@@ -58,4 +58,22 @@ struct KillResult {
                                             const std::string& plan_text, std::uint64_t seed,
                                             const std::function<double()>& delay_s);
 
+/// Sums over sessions.
+struct KillTally {
+  KillResult sum;
+  std::uint64_t sessions{0};
+  std::uint64_t different{0};  ///< sessions whose digest is not that of the uninterrupted one
+  std::uint64_t walks{0};      ///< of the uninterrupted session
+};
+
+/// An uninterrupted session, then sessions killed up to twelve times each until there were `kills`. `seed`:
+/// of the simulated robot and of the times. Folders are made and removed under the system's temporary one.
+/// False when the uninterrupted session did not come to its end (told on stderr).
+[[nodiscard]] bool kill_many(const OnboardFiles& files, std::uint64_t kills, std::uint64_t seed,
+                             KillTally& tally);
+
+/// The files of a shipped robot and scenario, and the built program.
+[[nodiscard]] OnboardFiles shipped_files(const std::string& source, const std::string& binary,
+                                         const std::string& robot, const std::string& scenario);
+
 }  // namespace pastern::faults
