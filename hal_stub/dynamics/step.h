@@ -146,15 +146,21 @@ inline void touch_trunk(const Tree<Constant<S>>& tree, const Ground<S>& ground, 
   }
 }
 
-/// New speeds, then new places with the new speeds.
+/// The trunk's new velocity, then its new place with it.
 template <class S>
-inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<S>& work,
-                      BodyState<S>& state) noexcept {
+inline void integrate_trunk(Constant<S> dt, const Work<S>& work, BodyState<S>& state) noexcept {
   const auto* a = work.acceleration;
   state.rate = state.rate + Vec3<S>{a[0], a[1], a[2]} * S(dt);
   state.velocity = state.velocity + work.body * Vec3<S>{a[3], a[4], a[5]} * S(dt);
   state.position = state.position + state.velocity * S(dt);
   state.attitude = turned_by(state.attitude, state.rate * S(dt));
+}
+
+/// New speeds, then new places with the new speeds.
+template <class S>
+inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<S>& work,
+                      BodyState<S>& state) noexcept {
+  integrate_trunk(dt, work, state);
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
     for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[n].joint_count); ++i) {

@@ -1,42 +1,89 @@
-// Everything that step_robot calls is inlined into each of the two (flatten), so that no wide code leaks into
+// Everything that a step calls is inlined into each of its forms (flatten), so that no wide code leaks into
 // the plain path through shared inline functions.
 #include "hal_stub/robot/advance.h"
 
+// Quads are never passed between functions that are really called, so their calling convention does not
+// matter.
+#pragma GCC diagnostic ignored "-Wpsabi"
+#include "hal_stub/robot/four_legs.h"
+
+#if defined(__x86_64__)
+#define PASTERN_WIDE __attribute__((flatten, target("avx2,fma")))
+#else
+#define PASTERN_WIDE __attribute__((flatten))
+#endif
+
 namespace pastern::stub {
 
-__attribute__((flatten)) void advance_plain(const Figures<double>& figures, const SiteFigures<double>& site,
-                                            const Told<double>& told, double dt, RobotState<double>& state,
-                                            RobotWork<double>& work) noexcept {
-  step_robot(figures, site, told, dt, state, work);
-}
+struct Stepper::Impl {
+  explicit Impl(const Figures<double>& of) : figures(of) {}
+  const Figures<double>& figures;
+  FourLegs four;
+  FourWork side;
+  void (*step)(Impl&, const SiteFigures<double>&, const Told<double>&, double, RobotState<double>&,
+               RobotWork<double>&) noexcept {nullptr};
+
+  template <int K>
+  __attribute__((flatten)) static void four_plain(Impl& impl, const SiteFigures<double>& site,
+                                                  const Told<double>& told, double dt,
+                                                  RobotState<double>& state,
+                                                  RobotWork<double>& work) noexcept {
+    step_four<K>(impl.figures, impl.four, site, told, dt, state, work, impl.side);
+  }
+  template <int K>
+  PASTERN_WIDE static void four_wide(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,
+                                     double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
+    step_four<K>(impl.figures, impl.four, site, told, dt, state, work, impl.side);
+  }
+  __attribute__((flatten)) static void any_plain(Impl& impl, const SiteFigures<double>& site,
+                                                 const Told<double>& told, double dt,
+                                                 RobotState<double>& state,
+                                                 RobotWork<double>& work) noexcept {
+    step_robot(impl.figures, site, told, dt, state, work);
+  }
+  PASTERN_WIDE static void any_wide(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,
+                                    double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
+    step_robot(impl.figures, site, told, dt, state, work);
+  }
+};
 
 namespace {
 
+bool is_wide() noexcept {
 #if defined(__x86_64__)
-__attribute__((flatten, target("avx2,fma"))) void advance_wide(const Figures<double>& figures,
-                                                               const SiteFigures<double>& site,
-                                                               const Told<double>& told, double dt,
-                                                               RobotState<double>& state,
-                                                               RobotWork<double>& work) noexcept {
-  step_robot(figures, site, told, dt, state, work);
-}
-bool is_wide() noexcept { return __builtin_cpu_supports("avx2") != 0 && __builtin_cpu_supports("fma") != 0; }
+  return __builtin_cpu_supports("avx2") != 0 && __builtin_cpu_supports("fma") != 0;
 #else
-constexpr auto advance_wide = advance_plain;
-bool is_wide() noexcept { return false; }
+  return false;
 #endif
-
-const bool kWide = is_wide();
+}
 
 }  // namespace
 
-void advance(const Figures<double>& figures, const SiteFigures<double>& site, const Told<double>& told,
-             double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
-  if (kWide) {
-    advance_wide(figures, site, told, dt, state, work);
-  } else {
-    advance_plain(figures, site, told, dt, state, work);
-  }
+Stepper::Stepper(const Figures<double>& figures) : impl_(std::make_unique<Impl>(figures)) {
+  const bool wide = is_wide();
+  impl_->step = wide ? Impl::any_wide : Impl::any_plain;
+  if (!is_four_alike(figures.tree)) return;
+  pack_figures(figures, impl_->four);
+  for_chain(figures.tree.leg[0].joint_count,
+            [&]<int K>() { impl_->step = wide ? Impl::four_wide<K> : Impl::four_plain<K>; });
+}
+
+Stepper::~Stepper() = default;
+Stepper::Stepper(Stepper&& other) noexcept = default;
+Stepper& Stepper::operator=(Stepper&& other) noexcept = default;
+
+void Stepper::take_site(const SiteFigures<double>& site) noexcept {
+  if (is_four_alike(impl_->figures.tree)) pack_site(site, impl_->four);
+}
+
+void Stepper::step(const SiteFigures<double>& site, const Told<double>& told, double dt,
+                   RobotState<double>& state, RobotWork<double>& work) noexcept {
+  impl_->step(*impl_, site, told, dt, state, work);
+}
+
+void step_plainly(const Figures<double>& figures, const SiteFigures<double>& site, const Told<double>& told,
+                  double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
+  step_robot(figures, site, told, dt, state, work);
 }
 
 }  // namespace pastern::stub

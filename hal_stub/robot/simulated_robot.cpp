@@ -5,7 +5,6 @@
 #include <algorithm>
 #include <cmath>
 
-#include "hal_stub/robot/advance.h"
 #include "hal_stub/robot/random.h"
 
 namespace pastern::stub {
@@ -46,7 +45,7 @@ TrunkFigures<double> loaded_trunk(const LinkFigures<double>& trunk, double load,
 }  // namespace
 
 SimulatedRobot::SimulatedRobot(std::shared_ptr<const Model> model, const Site& site, std::uint64_t seed)
-    : model_(std::move(model)) {
+    : model_(std::move(model)), stepper_(model_->figures()) {
   renew(site, seed);
 }
 
@@ -74,6 +73,7 @@ void SimulatedRobot::take_site() {
   }
   figures_.drives.ambient = site_.ambient_c;
   figures_.pack.resistance = base.pack.resistance * site_.pack_resistance_ratio;
+  stepper_.take_site(figures_);
   imu_axes_ = rotation_by(site_.imu_tilt_rad);
   const double late = (site_.command_delay_s + site_.command_jitter_s) / model_->period_s();
   command_rows_ = static_cast<std::size_t>(std::ceil(late)) + 3;
@@ -288,7 +288,7 @@ void SimulatedRobot::step() {
     tell_drives();
     if (site_.fault_count > 0) apply_faults();
     figures_.around.push = push_now();
-    advance(model_->figures(), figures_, told_, period / substeps, state_, work_);
+    stepper_.step(figures_, told_, period / substeps, state_, work_);
   }
   ++clock_.tick;
   if (faulty(v1::Fault::PACK_CUT)) state_.pack.voltage = state_.pack.current = 0;

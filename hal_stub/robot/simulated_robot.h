@@ -20,6 +20,7 @@
 #include <string>
 #include <vector>
 
+#include "hal_stub/robot/advance.h"
 #include "hal_stub/robot/model.h"
 #include "hal_stub/robot/robot_state.h"
 #include "hal_stub/robot/site.h"
@@ -156,6 +157,7 @@ class SimulatedRobot {
   std::shared_ptr<const Model> model_;
   Site site_;
   std::uint64_t seed_{0};
+  Stepper stepper_;
   SiteFigures<double> figures_;
   RobotState<double> state_;
   RobotWork<double> work_;
