@@ -87,7 +87,7 @@ TEST(Onboard, KilledAtAnyTimeAndResumedItEndsWithTheSameDigest) {
   Onboard killed;
   bool done = false;
   int kills = 0;
-  for (int i = 0; i < 30 && !done; ++i) {
+  for (int i = 0; i < 40 && !done; ++i) {
     ASSERT_TRUE(killed.start()) << killed.output();
     ASSERT_TRUE(killed.take_baton());
     const v1::Status status = killed.status();
@@ -101,7 +101,11 @@ TEST(Onboard, KilledAtAnyTimeAndResumedItEndsWithTheSameDigest) {
     } else if (status.session_part() == v1::NO_SESSION) {
       ASSERT_TRUE(killed.start_session(short_plan()).accepted());
     }
-    usleep(30000 + 17000 * static_cast<unsigned>(i));
+    // By progress, so that a slow machine ends the session too; a little later, so that it hits any moment.
+    const std::uint64_t enough = status.walks_done() + static_cast<std::uint64_t>(i % 3);
+    ASSERT_TRUE(
+        killed.wait_until([enough](const v1::Status& s) { return ended(s) || s.walks_done() >= enough; }));
+    usleep(1700 * static_cast<unsigned>(i));
     done = ended(killed.status());
     if (!done) ++kills;
     EXPECT_EQ(killed.end(SIGKILL), 128 + SIGKILL);
