@@ -46,6 +46,7 @@ TEST(Architecture, TheTreeWasReadAtAll) {
 TEST(Architecture, LayersAreArrowsWithReasonsAndNoCircle) { EXPECT_EQ(lines(layers().findings), ""); }
 TEST(Architecture, OnlyWhatBelongsStandsAtTheTop) { EXPECT_EQ(lines(check_top_level(tree())), ""); }
 TEST(Architecture, EveryIncludeFollowsAnArrow) { EXPECT_EQ(lines(check_includes(tree(), layers())), ""); }
+TEST(Architecture, EveryArrowIsUsed) { EXPECT_EQ(lines(check_arrows_used(tree(), layers())), ""); }
 TEST(Architecture, SafetyIncludesTheStandardLibraryOnly) {
   EXPECT_EQ(lines(check_safety_is_standard(tree())), "");
 }
