@@ -22,10 +22,10 @@ step() {
   fi
 }
 
-# build DIR cmake-arguments...
+# build DIR TARGET cmake-arguments...
 build() {
-  dir=$1; shift
-  cmake -S . -B "$dir" -G Ninja "$@" && cmake --build "$dir" -j "$jobs"
+  dir=$1; target=$2; shift 2
+  cmake -S . -B "$dir" -G Ninja "$@" && cmake --build "$dir" -j "$jobs" --target "$target"
 }
 
 # tests NAME DIR ctest-arguments...: prints ctest's closing lines, which count the tests.
@@ -36,17 +36,17 @@ tests() {
 }
 
 release() {
-  step build-release build build/release -DCMAKE_BUILD_TYPE=Release
+  step build-release build build/release all -DCMAKE_BUILD_TYPE=Release
   tests tests-release build/release
 }
 
 asan() {
-  step build-asan build build/asan -DCMAKE_BUILD_TYPE=RelWithDebInfo -DPASTERN_ASAN=ON
+  step build-asan build build/asan fast_tests -DCMAKE_BUILD_TYPE=Sanitizer -DPASTERN_ASAN=ON
   tests tests-asan build/asan -L fast
 }
 
 tsan() {
-  step build-tsan build build/tsan -DCMAKE_BUILD_TYPE=RelWithDebInfo -DPASTERN_TSAN=ON
+  step build-tsan build build/tsan threads_tests -DCMAKE_BUILD_TYPE=Sanitizer -DPASTERN_TSAN=ON
   TSAN_OPTIONS="suppressions=$PWD/tests/tsan.supp halt_on_error=1 second_deadlock_stack=1" \
     tests tests-tsan build/tsan -L threads
 }
