@@ -63,6 +63,7 @@ class Follower {
   void wipe_progress();
   void prompt();
   void look_at_once();
+  void keep_baton();
   [[nodiscard]] bool ours() const;
   [[nodiscard]] std::optional<Exit> ended() const;
   [[nodiscard]] std::optional<Exit> tripped() const;
@@ -172,6 +173,17 @@ void Follower::notice(const v1::Status& status) {
 /// The session to follow, and not one before it that the robot still tells of.
 bool Follower::ours() const { return status_.session() != 0 && status_.session() >= choice_.session; }
 
+/// A baton that lapsed (this computer or the way to the robot was too slow) is taken up again. At wall pace
+/// the robot has tripped for it and moves no more before a person releases it.
+void Follower::keep_baton() {
+  const bool lapsed = line_.client().baton() == 0 || (ours() && status_.waiting_for() == "baton");
+  if (!choice_.commander || line_.baton_shared() || !lapsed) return;
+  wipe_progress();
+  complain("the baton had lapsed: no sign of life reached the robot in time; taking it up again");
+  (void)line_.hold_baton();
+  look_at_once();
+}
+
 /// What the robot waits for a person to do, said once each time.
 void Follower::prompt() {
   const std::string waits = !seen_ || !ours() ? "" : status_.waiting_for();
@@ -273,6 +285,7 @@ Exit Follower::run() {
     } else {
       look();
     }
+    keep_baton();
     prompt();
     show_progress();
     if (choice_.commander) {

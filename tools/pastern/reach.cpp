@@ -2,13 +2,16 @@
 #include "tools/pastern/reach.h"
 
 #include <fmt/format.h>
+#include <signal.h>
 #include <sys/stat.h>
 #include <unistd.h>
 
 #include <charconv>
+#include <chrono>
 #include <cstdlib>
 #include <filesystem>
 #include <fstream>
+#include <thread>
 
 #include "proto/files/durable.h"
 #include "tools/pastern/words.h"
@@ -30,6 +33,9 @@ std::string usual_keys() {
   const std::string folder = home + "/.config/pastern/keys";
   return !home.empty() && access((folder + "/robot.public").c_str(), R_OK) == 0 ? folder : "";
 }
+
+constexpr int kBatonTries = 8;
+constexpr std::chrono::milliseconds kBatonPause{100};
 
 int to_ms(double seconds) { return static_cast<int>(seconds * 1000); }
 
@@ -129,7 +135,13 @@ Exit RobotLine::hold_baton() {
   const Exit reached = status(ignored);
   if (reached != Exit::done) return reached;
   std::string why;
-  if (!client_->take_baton(why)) {
+  // A ground tool that was killed holds the baton until it lapses.
+  bool taken = client_->take_baton(why);
+  for (int tries = 0; !taken && tries < kBatonTries; ++tries) {
+    std::this_thread::sleep_for(kBatonPause);
+    taken = client_->take_baton(why);
+  }
+  if (!taken) {
     complain(fmt::format("pastern {}: the baton was refused: {}", verb_, why));
     return Exit::refused;
   }
@@ -149,7 +161,9 @@ std::uint64_t RobotLine::noted_baton() const {
   if (stat(note_path().c_str(), &info) != 0 || info.st_uid != getuid()) return 0;
   std::ifstream file(note_path());
   std::uint64_t number = 0;
-  return file >> number ? number : 0;
+  pid_t holder = 0;
+  // Only a living process renews it.
+  return file >> number >> holder && holder > 0 && kill(holder, 0) == 0 ? number : 0;
 }
 
 void RobotLine::note_baton() {
@@ -157,7 +171,8 @@ void RobotLine::note_baton() {
   fs::create_directories(fs::path(note_path()).parent_path(), error);
   fs::permissions(fs::path(note_path()).parent_path(), fs::perms::owner_all, error);
   files::Defects defects;
-  noted_ = files::write_durably(note_path(), fmt::format("{}\n", client_->baton()), 0600, defects);
+  noted_ =
+      files::write_durably(note_path(), fmt::format("{} {}\n", client_->baton(), getpid()), 0600, defects);
 }
 
 std::string trip_words(const v1::TripRecord& trip) {

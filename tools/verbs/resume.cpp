@@ -33,8 +33,10 @@ class Resume final : public LinkVerb {
     if (!running) exit = line.ask(command_of(&v1::Command::mutable_resume), answer);
     if (exit != Exit::done) return exit;
     if (!choice_.json && !choice_.quiet)
-      say(running ? "the session is under way; its baton is held here" : answer.words());
-    choice_.commander = true;
+      say(!running              ? answer.words()
+          : line.baton_shared() ? "the session is under way; another pastern on this computer holds its baton"
+                                : "the session is under way; its baton is held here");
+    choice_.commander = !line.baton_shared();
     choice_.session = status.session();
     choice_.resumed = !running;
     return follow(line, choice_);
