@@ -91,26 +91,36 @@ struct Coupling {
   S mesh;           ///< dt * viscosity of the teeth, zero in the gap
 };
 
+/// A joint and its rotor at the begin of a step.
+template <class S>
+struct GearedJoint {
+  S torque;     ///< that acts on the rotor, N m
+  S viscosity;  ///< of the gear, N m s/rad
+  S half_gap;   ///< rad
+  S angle;
+  S speed;
+  S rotor_angle;
+  S rotor_speed;
+};
+
 /// Rotor, friction and teeth of one joint, the rotor eliminated from the step: without a gap it sits on the
 /// joint.
 template <class S>
 inline JointLoad<S> load_of(const DriveFigures<Constant<S>>& drive, const Teeth<Constant<S>>& teeth,
-                            const S& torque, const S& viscosity, const S& half_gap, const S& angle,
-                            const S& speed, const S& rotor_angle, const S& rotor_speed, Constant<S> dt,
-                            Coupling<S>& coupling) noexcept {
+                            const GearedJoint<S>& j, Constant<S> dt, Coupling<S>& coupling) noexcept {
   using C = Constant<S>;
   const S zero(0);
-  const auto loose = half_gap > zero;
-  const S ahead = rotor_angle - angle;
-  const S bite = max(ahead - half_gap, zero) + min(ahead + half_gap, zero);
+  const auto loose = j.half_gap > zero;
+  const S ahead = j.rotor_angle - j.angle;
+  const S bite = max(ahead - j.half_gap, zero) + min(ahead + j.half_gap, zero);
   const S meeting = select(abs(bite) > zero, S(teeth.stiffness * dt + teeth.damping), zero);
-  const S through = bite * C(teeth.stiffness) + (rotor_speed - speed) * meeting;
+  const S through = bite * C(teeth.stiffness) + (j.rotor_speed - j.speed) * meeting;
   const S mesh = meeting * dt;
-  const S inverse = C(1) / (C(drive.rotor_inertia) + mesh + viscosity * dt + S(C(1e-9)));
-  const S rotor_force = torque - viscosity * rotor_speed - through;
+  const S inverse = C(1) / (C(drive.rotor_inertia) + mesh + j.viscosity * dt + S(C(1e-9)));
+  const S rotor_force = j.torque - j.viscosity * j.rotor_speed - through;
   coupling = {rotor_force, inverse, mesh};
-  const S rigid_torque = torque - viscosity * speed;
-  const S rigid_inertia = C(drive.rotor_inertia) + viscosity * dt;
+  const S rigid_torque = j.torque - j.viscosity * j.speed;
+  const S rigid_inertia = C(drive.rotor_inertia) + j.viscosity * dt;
   return {select(loose, through + mesh * inverse * rotor_force, rigid_torque),
           select(loose, mesh - mesh * mesh * inverse, rigid_inertia)};
 }

@@ -16,6 +16,22 @@ struct Ground {
   S damping{S(400)};      ///< N s/m
 };
 
+/// Where the ground lies, seen from the trunk.
+template <class S>
+struct Below {
+  Vec3<S> normal;  ///< trunk axes
+  S height;        ///< of the trunk's origin, along the normal
+};
+
+/// What a point meets in a step.
+template <class S>
+struct Footing {
+  const Ground<S>& ground;
+  const Below<S>& below;
+  Constant<S> stick_speed;
+  Constant<S> dt;
+};
+
 /// What a point does in this step: force f = push - B v', B = along n n' + across (1 - n n'), all zero when
 /// it is free.
 template <class S>
@@ -27,15 +43,17 @@ struct Touch {
 
 /// `grip`: normal force of the step before.
 template <class S>
-inline Touch<S> touch_of(const Ground<S>& ground, const Vec3<S>& normal, Constant<S> stick_speed,
-                         Constant<S> dt, const S& depth, const Vec3<S>& velocity, const S& grip) noexcept {
+inline Touch<S> touch_of(const Footing<S>& on, const S& depth, const Vec3<S>& velocity,
+                         const S& grip) noexcept {
   using C = Constant<S>;
-  const S along = ground.stiffness * dt + ground.damping;
+  const auto& ground = on.ground;
+  const auto& normal = on.below.normal;
+  const S along = ground.stiffness * on.dt + ground.damping;
   const S normal_speed = dot(velocity, normal);
   const S push = ground.stiffness * depth - along * normal_speed;
   const auto free = !((depth > S(0)) & (push > S(0)));
   const Vec3<S> slide = velocity - normal * normal_speed;
-  const S speed = max(sqrt(dot(slide, slide)), S(stick_speed));
+  const S speed = max(sqrt(dot(slide, slide)), S(on.stick_speed));
   const S across = select(free, S(0), ground.friction * grip * (C(1) / speed));
   const S held = select(free, S(0), push);
   return {normal * held - slide * across, across, select(free, S(0), along) - across};
@@ -89,8 +107,10 @@ inline void press_trunk(const Touch<S>& touch, const Vec3<S>& normal, const Vec3
 
 /// Columns of a leg point's Jacobian for the first K joints, trunk axes.
 template <int K, class S>
-inline void arms_of(const LegWork<S>& leg, const Vec3<S>& r, std::array<Vec3<S>, K>& arm) noexcept {
+inline std::array<Vec3<S>, K> arms_of(const LegWork<S>& leg, const Vec3<S>& r) noexcept {
+  std::array<Vec3<S>, K> arm{};
   for (std::size_t i = 0; i < K; ++i) arm[i] = cross(leg.axis[i], r - leg.place[i]);
+  return arm;
 }
 
 /// Velocity of a point of a leg, trunk axes.

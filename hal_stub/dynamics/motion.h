@@ -156,7 +156,7 @@ inline Sym3<S> turned_inertia(const Rotation<S>& r, const LinkFigures<Constant<S
 template <class S, class M>
 inline Heap<S> heap_of(const M& mass, const Vec3<S>& centre, const Sym3<S>& inertia, const Vec3<S>& rate,
                        const Vec3<S>& angular, const Vec3<S>& linear) noexcept {
-  Heap<S> heap;
+  Heap<S> heap{};
   heap.mass = S(mass);
   heap.moment = centre * S(mass);
   const S cc = dot(centre, heap.moment);
@@ -231,7 +231,7 @@ inline void come_back(LegWork<S>& work, std::array<Heap<S>, K>& heap, Heap<S>& t
 template <int K, class S>
 inline void pass_leg(const LegFigures<Constant<S>>& leg, const PerChain<S>& angle, const PerChain<S>& speed,
                      const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total) noexcept {
-  std::array<Heap<S>, K> heap;
+  std::array<Heap<S>, K> heap{};
   go_out<K>(leg, angle, speed, trunk, work, heap);
   come_back<K>(work, heap, total);
 }

@@ -12,7 +12,7 @@ namespace pastern::stub {
 template <class S>
 struct Surroundings {
   Ground<S> ground;
-  TrunkFigures<S> trunk;
+  TrunkFigures<S> trunk{};
   Vec3<S> push{S(0), S(0), S(0)};  ///< force on the trunk's centre of mass, world axes, N
 };
 
@@ -46,69 +46,74 @@ inline void add_push(const Surroundings<S>& around, Work<S>& work) noexcept {
   for (int i = 0; i < 6; ++i) work.force[i] = work.force[i] + more[i];
 }
 
-/// Where the ground lies, seen from the trunk.
+/// A ball on a leg that may touch.
 template <class S>
-struct Below {
-  Vec3<S> normal;  ///< trunk axes
-  S height;        ///< of the trunk's origin, along the normal
+struct Spot {
+  Vec3<S> centre;  ///< trunk axes
+  Constant<S> radius;
+  std::size_t leg;
+  std::size_t point;
 };
 
-/// One point of a leg that moves with its first K joints.
+/// Depth under the ground of a spot's lowest point.
+template <class S>
+inline S depth_of(const Footing<S>& on, const Spot<S>& spot) noexcept {
+  return S(spot.radius) - on.below.height - dot(on.below.normal, spot.centre);
+}
+
+/// One point of a leg of K joints.
 template <int K, class S>
-inline void press_point(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
-                        const Vec3<S>& centre, Constant<S> radius, const BodyState<S>& state, std::size_t l,
-                        std::size_t point, Constant<S> dt, Work<S>& work) noexcept {
-  const S depth = S(radius) - below.height - dot(below.normal, centre);
+inline void press_point(const Footing<S>& on, const Spot<S>& spot, const BodyState<S>& state,
+                        Work<S>& work) noexcept {
+  const S depth = depth_of(on, spot);
   if (!any(depth > S(0))) return;
-  LegWork<S>& leg = work.leg[l];
-  const Vec3<S> r = centre - below.normal * S(radius);
-  std::array<Vec3<S>, K> arm;
-  arms_of<K>(leg, r, arm);
-  const Vec3<S> velocity = velocity_at<K>(work, state.rate, r, arm, state.speed[l]);
-  const Touch<S> touch =
-      touch_of(ground, below.normal, tree.stick_speed, dt, depth, velocity, state.grip.leg[l][point]);
-  press_leg<K>(touch, below.normal, r, arm, dt, leg);
-  press_trunk(touch, below.normal, r, dt, work);
+  LegWork<S>& leg = work.leg[spot.leg];
+  const Vec3<S> r = spot.centre - on.below.normal * S(spot.radius);
+  const auto arm = arms_of<K>(leg, r);
+  const Vec3<S> velocity = velocity_at<K>(work, state.rate, r, arm, state.speed[spot.leg]);
+  const Touch<S> touch = touch_of(on, depth, velocity, state.grip.leg[spot.leg][spot.point]);
+  press_leg<K>(touch, on.below.normal, r, arm, on.dt, leg);
+  press_trunk(touch, on.below.normal, r, on.dt, work);
 }
 
 template <int K, class S>
-inline void grip_point(const Ground<S>& ground, const Below<S>& below, const Vec3<S>& centre,
-                       Constant<S> radius, std::size_t l, std::size_t point, Constant<S> dt,
-                       const Work<S>& work, BodyState<S>& state) noexcept {
-  const S depth = S(radius) - below.height - dot(below.normal, centre);
-  S& grip = state.grip.leg[l][point];
+inline void grip_point(const Footing<S>& on, const Spot<S>& spot, const Work<S>& work,
+                       BodyState<S>& state) noexcept {
+  const S depth = depth_of(on, spot);
+  S& grip = state.grip.leg[spot.leg][spot.point];
   if (!any(depth > S(0))) {
     grip = S(0);
     return;
   }
-  const LegWork<S>& leg = work.leg[l];
-  const Vec3<S> r = centre - below.normal * S(radius);
-  std::array<Vec3<S>, K> arm;
-  arms_of<K>(leg, r, arm);
-  PerChain<S> speed = state.speed[l];
-  for (std::size_t i = 0; i < K; ++i) speed[i] = speed[i] + leg.acceleration[i] * dt;
+  const LegWork<S>& leg = work.leg[spot.leg];
+  const Vec3<S> r = spot.centre - on.below.normal * S(spot.radius);
+  const auto arm = arms_of<K>(leg, r);
+  PerChain<S> speed = state.speed[spot.leg];
+  for (std::size_t i = 0; i < K; ++i) speed[i] = speed[i] + leg.acceleration[i] * on.dt;
   const auto* a = work.acceleration;
   const Vec3<S> turning{a[0], a[1], a[2]};
   const Vec3<S> moving{a[3], a[4], a[5]};
-  const Vec3<S> after = velocity_at<K>(work, state.rate + turning * S(dt), r, arm, speed) + moving * S(dt);
-  grip = grip_after(ground, dt, depth, dot(after, below.normal));
+  const Vec3<S> after =
+      velocity_at<K>(work, state.rate + turning * S(on.dt), r, arm, speed) + moving * S(on.dt);
+  grip = grip_after(on.ground, on.dt, depth, dot(after, on.below.normal));
 }
 
-/// Foot and knee of every leg: `press` (before solving) or `grip` (after).
+/// Foot and knee of every leg: press (before solving) or grip (after).
 template <bool kPress, class S>
-inline void touch_legs(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
-                       Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
+inline void touch_legs(const Tree<Constant<S>>& tree, const Footing<S>& on, BodyState<S>& state,
+                       Work<S>& work) noexcept {
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
     const auto& leg = tree.leg[n];
     for_chain(leg.joint_count, [&]<int K>() {
-      const Vec3<S>& knee = work.leg[n].place[K - 1];
+      const Spot<S> foot{work.leg[n].foot, leg.foot_radius, n, 0};
+      const Spot<S> knee{work.leg[n].place[K - 1], leg.knee_radius, n, 1};
       if constexpr (kPress) {
-        press_point<K>(tree, ground, below, work.leg[n].foot, leg.foot_radius, state, n, 0, dt, work);
-        if (leg.knee) press_point<K>(tree, ground, below, knee, leg.knee_radius, state, n, 1, dt, work);
+        press_point<K>(on, foot, state, work);
+        if (leg.knee) press_point<K>(on, knee, state, work);
       } else {
-        grip_point<K>(ground, below, work.leg[n].foot, leg.foot_radius, n, 0, dt, work, state);
-        if (leg.knee) grip_point<K>(ground, below, knee, leg.knee_radius, n, 1, dt, work, state);
+        grip_point<K>(on, foot, work, state);
+        if (leg.knee) grip_point<K>(on, knee, work, state);
       }
     });
   }
@@ -123,25 +128,24 @@ inline auto trunk_near(const Tree<Constant<S>>& tree, const Below<S>& below) noe
 }
 
 template <bool kPress, class S>
-inline void touch_trunk(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
-                        Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
-  if (!any(trunk_near(tree, below))) {
+inline void touch_trunk(const Tree<Constant<S>>& tree, const Footing<S>& on, BodyState<S>& state,
+                        Work<S>& work) noexcept {
+  if (!any(trunk_near(tree, on.below))) {
     if constexpr (!kPress) state.grip.corner.fill(S(0));
     return;
   }
   const auto* a = work.acceleration;
   for (std::size_t c = 0; c < kTrunkCorners; ++c) {
     const Vec3<S> r = spread<S>(tree.corner[c]);
-    const S depth = S(0) - below.height - dot(below.normal, r);
+    const S depth = S(0) - on.below.height - dot(on.below.normal, r);
     const Vec3<S> velocity = work.velocity + cross(state.rate, r);
     if constexpr (kPress) {
       if (!any(depth > S(0))) continue;
-      const Touch<S> touch =
-          touch_of(ground, below.normal, tree.stick_speed, dt, depth, velocity, state.grip.corner[c]);
-      press_trunk(touch, below.normal, r, dt, work);
+      press_trunk(touch_of(on, depth, velocity, state.grip.corner[c]), on.below.normal, r, on.dt, work);
     } else {
       const Vec3<S> gain = Vec3<S>{a[3], a[4], a[5]} + cross(Vec3<S>{a[0], a[1], a[2]}, r);
-      state.grip.corner[c] = grip_after(ground, dt, depth, dot(velocity + gain * S(dt), below.normal));
+      const S speed = dot(velocity + gain * S(on.dt), on.below.normal);
+      state.grip.corner[c] = grip_after(on.ground, on.dt, depth, speed);
     }
   }
 }
@@ -179,11 +183,12 @@ inline void step_body(const Tree<Constant<S>>& tree, const Surroundings<S>& arou
   add_loads(tree, state, loads, dt, work);
   add_push(around, work);
   const Below<S> below{turn_back(work.body, around.ground.normal), dot(around.ground.normal, state.position)};
-  touch_legs<true>(tree, around.ground, below, dt, state, work);
-  touch_trunk<true>(tree, around.ground, below, dt, state, work);
+  const Footing<S> on{around.ground, below, tree.stick_speed, dt};
+  touch_legs<true>(tree, on, state, work);
+  touch_trunk<true>(tree, on, state, work);
   solve(tree, work);
-  touch_legs<false>(tree, around.ground, below, dt, state, work);
-  touch_trunk<false>(tree, around.ground, below, dt, state, work);
+  touch_legs<false>(tree, on, state, work);
+  touch_trunk<false>(tree, on, state, work);
   integrate(tree, dt, work, state);
 }
 

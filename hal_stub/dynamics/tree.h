@@ -28,24 +28,24 @@ struct LinkFigures {
 
 template <class C>
 struct JointFigures {
-  AxisKind kind{AxisKind::y};
   C sign{1};         ///< -1 when the axis points against x, y or z
   Vec3<C> axis{};    ///< unit vector in the parent's frame
   Vec3<C> origin{};  ///< in the parent's frame, m
   C angle_min{0};    ///< end stops, rad
   C angle_max{0};
-  int order{0};  ///< index in the robot's joint order
   LinkFigures<C> link{};
+  AxisKind kind{AxisKind::y};
+  int order{0};  ///< index in the robot's joint order
 };
 
 template <class C>
 struct LegFigures {
-  int joint_count{0};
   std::array<JointFigures<C>, kMaxChain> joint{};  ///< from the trunk outward
   Vec3<C> foot{};                                  ///< centre of the foot's ball, in the last link's frame, m
   C foot_radius{0};
-  bool knee{false};  ///< the last joint's origin is a contact point as well (chains of two and more)
   C knee_radius{0};
+  int joint_count{0};
+  bool knee{false};  ///< the last joint's origin is a contact point as well (chains of two and more)
 };
 
 /// Stiffness and damping of end stops and gear play belong to the model, the ground's to the site.

@@ -13,7 +13,8 @@
 namespace pastern::stub {
 namespace {
 
-constexpr int kAnswer_ms = 1000;  // the robot's process answers within a tick, but the machine may stall
+constexpr int kAnswerMilliseconds =
+    1000;  // the robot's process answers within a tick, but the machine may stall
 constexpr char kOutlives[] = "wall pace: the robot keeps its own state";
 
 class BusPort final : public Port {
@@ -104,7 +105,7 @@ class BusPort final : public Port {
   /// Sends and waits for an answer of `kind`; frames that come between are dropped.
   bool ask(const void* message, std::size_t size, BusKind kind) {
     using Clock = std::chrono::steady_clock;
-    const auto end = Clock::now() + std::chrono::milliseconds(kAnswer_ms);
+    const auto end = Clock::now() + std::chrono::milliseconds(kAnswerMilliseconds);
     if (::send(socket_, message, size, MSG_NOSIGNAL) != static_cast<ssize_t>(size)) {
       fail(std::strerror(errno));
       return false;

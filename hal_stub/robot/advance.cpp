@@ -16,10 +16,8 @@
 namespace pastern::stub {
 
 struct Stepper::Impl {
-  explicit Impl(const Figures<double>& of) : figures(of) {}
-  const Figures<double>& figures;
-  FourLegs four;
-  FourWork side;
+  explicit Impl(const Figures<double>& of) : robot(of) {}
+  FourLegged robot;
   void (*step)(Impl&, const SiteFigures<double>&, const Told<double>&, double, RobotState<double>&,
                RobotWork<double>&) noexcept {nullptr};
 
@@ -28,22 +26,22 @@ struct Stepper::Impl {
                                                   const Told<double>& told, double dt,
                                                   RobotState<double>& state,
                                                   RobotWork<double>& work) noexcept {
-    step_four<K>(impl.figures, impl.four, site, told, dt, state, work, impl.side);
+    step_four<K>(impl.robot, site, told, dt, state, work);
   }
   template <int K>
   PASTERN_WIDE static void four_wide(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,
                                      double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
-    step_four<K>(impl.figures, impl.four, site, told, dt, state, work, impl.side);
+    step_four<K>(impl.robot, site, told, dt, state, work);
   }
   __attribute__((flatten)) static void any_plain(Impl& impl, const SiteFigures<double>& site,
                                                  const Told<double>& told, double dt,
                                                  RobotState<double>& state,
                                                  RobotWork<double>& work) noexcept {
-    step_robot(impl.figures, site, told, dt, state, work);
+    step_robot(impl.robot.figures, site, told, dt, state, work);
   }
   PASTERN_WIDE static void any_wide(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,
                                     double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
-    step_robot(impl.figures, site, told, dt, state, work);
+    step_robot(impl.robot.figures, site, told, dt, state, work);
   }
 };
 
@@ -63,7 +61,7 @@ Stepper::Stepper(const Figures<double>& figures) : impl_(std::make_unique<Impl>(
   const bool wide = is_wide();
   impl_->step = wide ? Impl::any_wide : Impl::any_plain;
   if (!is_four_alike(figures.tree)) return;
-  pack_figures(figures, impl_->four);
+  pack_figures(figures, impl_->robot.four);
   for_chain(figures.tree.leg[0].joint_count,
             [&]<int K>() { impl_->step = wide ? Impl::four_wide<K> : Impl::four_plain<K>; });
 }
@@ -73,7 +71,7 @@ Stepper::Stepper(Stepper&& other) noexcept = default;
 Stepper& Stepper::operator=(Stepper&& other) noexcept = default;
 
 void Stepper::take_site(const SiteFigures<double>& site) noexcept {
-  if (is_four_alike(impl_->figures.tree)) pack_site(site, impl_->four);
+  if (is_four_alike(impl_->robot.figures.tree)) pack_site(site, impl_->robot.four);
 }
 
 void Stepper::step(const SiteFigures<double>& site, const Told<double>& told, double dt,

@@ -176,13 +176,22 @@ inline Heap<double> summed(const Heap<Quad>& heap) noexcept {
           vec(heap.torque)};
 }
 
+/// A robot of that kind: figures as they are and packed, and scratch.
+struct FourLegged {
+  explicit FourLegged(const Figures<double>& of) : figures(of) {}
+  const Figures<double>& figures;
+  FourLegs four{};
+  FourWork side{};
+};
+
 /// Begins the step: the legs' blocks side by side, the trunk's in double.
 template <int K>
-inline void begin_four(const Figures<double>& figures, const FourLegs& four, const SiteFigures<double>& site,
-                       const RobotState<double>& state, Work<double>& work, FourWork& side) noexcept {
+inline void begin_four(FourLegged& robot, const SiteFigures<double>& site, const RobotState<double>& state,
+                       Work<double>& work) noexcept {
+  FourWork& side = robot.side;
   work.body = rotation_of(state.body.attitude);
   work.velocity = turn_back(work.body, state.body.velocity);
-  const double down = -figures.tree.gravity;
+  const double down = -robot.figures.tree.gravity;
   work.gravity = {work.body.x.z * down, work.body.y.z * down, work.body.z.z * down};
   const Vec3<double> rate = state.body.rate;
   const Vec3<double> lift = zero3<double>() - work.gravity;
@@ -197,7 +206,7 @@ inline void begin_four(const Figures<double>& figures, const FourLegs& four, con
   auto& legs = side.work.body;
   legs.velocity = spread<Quad>(work.velocity);
   Heap<Quad> beyond{};
-  pass_leg<K>(four.figures.tree.leg[0], side.state.body.angle[0], side.state.body.speed[0], frame,
+  pass_leg<K>(robot.four.figures.tree.leg[0], side.state.body.angle[0], side.state.body.speed[0], frame,
               legs.leg[0], beyond);
   add(total, summed(beyond));
   spread_total(total, work);
@@ -224,38 +233,48 @@ inline void integrate_four(double dt, FourWork& side) noexcept {
   }
 }
 
+/// Contacts of legs and trunk: press (before solving) or grip (after).
+template <bool kPress>
+inline void touch_four(FourLegged& robot, const Footing<double>& on, RobotState<double>& state,
+                       Work<double>& work) noexcept {
+  const Below<Quad> below{spread<Quad>(on.below.normal), on.below.height};
+  const auto& tree = robot.four.figures.tree;
+  const Footing<Quad> legs_on{robot.four.site.around.ground, below, tree.stick_speed, on.dt};
+  touch_legs<kPress>(tree, legs_on, robot.side.state.body, robot.side.work.body);
+  touch_trunk<kPress>(robot.figures.tree, on, state.body, work);
+}
+
 /// step_robot for four legs of K joints.
 template <int K>
-inline void step_four(const Figures<double>& figures, const FourLegs& four, const SiteFigures<double>& site,
-                      const Told<double>& told, double dt, RobotState<double>& state, RobotWork<double>& work,
-                      FourWork& side) noexcept {
-  const auto& tree = four.figures.tree;
-  auto& legs = side.work.body;
+inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const Told<double>& told, double dt,
+                      RobotState<double>& state, RobotWork<double>& work) noexcept {
+  const FourLegs& four = robot.four;
+  FourWork& side = robot.side;
+  Work<Quad>& legs = side.work.body;
   take_in(four, told, state, side);
   drive_joints(four.figures, four.site, side.told, Quad(dt), side.state, side.work);
   const auto speed_before = side.state.body.speed;
-  begin_four<K>(figures, four, site, state, work.body, side);
-  add_loads(tree, side.state.body, side.work.loads, Quad(dt), legs);
+  begin_four<K>(robot, site, state, work.body);
+  add_loads(four.figures.tree, side.state.body, side.work.loads, Quad(dt), legs);
   add_push(site.around, work.body);
-  const Below<double> below{turn_back(work.body.body, site.around.ground.normal),
-                            dot(site.around.ground.normal, state.body.position)};
-  const Below<Quad> below_legs{spread<Quad>(below.normal), below.height};
-  touch_legs<true>(tree, four.site.around.ground, below_legs, Quad(dt), side.state.body, legs);
-  touch_trunk<true>(figures.tree, site.around.ground, below, dt, state.body, work.body);
+  const auto& ground = site.around.ground;
+  const Below<double> below{turn_back(work.body.body, ground.normal),
+                            dot(ground.normal, state.body.position)};
+  const Footing<double> on{ground, below, robot.figures.tree.stick_speed, dt};
+  touch_four<true>(robot, on, state, work.body);
   eliminate_leg<K>(legs.leg[0], legs);
   sum_up(legs, work.body);
   solve_trunk(work.body);
   for (int i = 0; i < 6; ++i) legs.acceleration[i] = work.body.acceleration[i];
   follow_leg<K>(legs.leg[0], legs.acceleration);
-  touch_legs<false>(tree, four.site.around.ground, below_legs, Quad(dt), side.state.body, legs);
-  touch_trunk<false>(figures.tree, site.around.ground, below, dt, state.body, work.body);
+  touch_four<false>(robot, on, state, work.body);
   integrate_four<K>(dt, side);
   integrate_trunk(dt, work.body, state.body);
   move_rotors(four.figures, four.site, Quad(dt), speed_before, side.state, side.work);
   give_back(four, side, state);
-  work.power = sum(side.work.power) + figures.pack.idle;
+  work.power = sum(side.work.power) + robot.figures.pack.idle;
   work.mechanical = sum(side.work.mechanical);
-  draw(figures.pack, site.pack, work.power, dt, state.pack);
+  draw(robot.figures.pack, site.pack, work.power, dt, state.pack);
 }
 
 }  // namespace pastern::stub

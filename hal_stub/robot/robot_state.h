@@ -29,8 +29,8 @@ struct Figures {
 template <class S>
 struct SiteFigures {
   Surroundings<S> around;
-  DriveSite<S> drives;
-  PackSite<S> pack;
+  DriveSite<S> drives{};
+  PackSite<S> pack{};
 };
 
 /// What the drives are told in a step; `wanted` by joint order. The drive acts on the wanted torque times
@@ -76,9 +76,10 @@ inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<
       const S amps = torque * (C(1) / drive.per_amp);
       const S loss = amps * amps * drive.resistance * copper_ratio(d.winding[k]);
       const S viscosity = gear_viscosity(site.drives.damping[k], site.drives.coulomb[k], rotor_speed);
-      work.loads[n][i] =
-          load_of(drive, figures.teeth, real, viscosity, site.drives.half_gap[k], state.body.angle[n][i],
-                  speed, d.rotor_angle[k], rotor_speed, dt, work.coupling[k]);
+      const GearedJoint<S> geared{
+          real,       viscosity, site.drives.half_gap[k], state.body.angle[n][i], speed, d.rotor_angle[k],
+          rotor_speed};
+      work.loads[n][i] = load_of(drive, figures.teeth, geared, dt, work.coupling[k]);
       work.power = work.power + real * rotor_speed + loss;
       work.mechanical = work.mechanical + abs(torque * speed);
       heat(drive, loss, site.drives.ambient, dt, d.winding[k], d.housing[k]);

@@ -10,11 +10,11 @@
 namespace pastern::stub {
 namespace {
 
-constexpr double kLetGoAfter_s = 0.5;    // of damping by the drives themselves
-constexpr double kPush_s = 0.1;          // a push lasts
-constexpr double kPushEarliest_s = 0.5;  // since a walk could begin
-constexpr double kPushLatest_s = 4.5;
-constexpr double kFallTilt_rad = 34.0 * std::numbers::pi / 180;
+constexpr double kLetGoAfterSeconds = 0.5;    // of damping by the drives themselves
+constexpr double kPushSeconds = 0.1;          // a push lasts
+constexpr double kPushEarliestSeconds = 0.5;  // since a walk could begin
+constexpr double kPushLatestSeconds = 4.5;
+constexpr double kFallTilt = 34.0 * std::numbers::pi / 180;
 
 std::uint32_t low(std::uint64_t tick) { return static_cast<std::uint32_t>(tick); }
 
@@ -148,10 +148,10 @@ void SimulatedRobot::place(const std::vector<double>& pose, double scatter, std:
   const Words p = random_words(seed_, draw, 0, Chance::push, 0);
   const Words q = random_words(seed_, draw, 0, Chance::push, 1);
   const double mass = model_->mass_kg() + site_.load_kg;
-  const double size = site_.push_m_per_s * normal_of(p[0], p[1]) * mass / kPush_s;
+  const double size = site_.push_m_per_s * normal_of(p[0], p[1]) * mass / kPushSeconds;
   const double way = 2 * std::numbers::pi * uniform_of(p[2]);
   push_ = {size * std::cos(way), size * std::sin(way), 0};
-  push_begins_s_ = kPushEarliest_s + (kPushLatest_s - kPushEarliest_s) * uniform_of(q[0]) +
+  push_begins_s_ = kPushEarliestSeconds + (kPushLatestSeconds - kPushEarliestSeconds) * uniform_of(q[0]) +
                    (clock_.lying != 0 ? model_->rise_s() : 0);
   work_ = {};
   work_.body.acceleration[5] = 0;
@@ -215,7 +215,7 @@ void SimulatedRobot::tell_drives() {
   const Message& message = commands_[static_cast<std::size_t>(clock_.acting) % command_rows_];
   const double silent =
       static_cast<double>(static_cast<std::int64_t>(clock_.tick) - clock_.arrived) * model_->period_s();
-  if (!(message.on > 0) || silent > model_->drive_timeout_s() + kLetGoAfter_s + 1e-9) return;
+  if (!(message.on > 0) || silent > model_->drive_timeout_s() + kLetGoAfterSeconds + 1e-9) return;
   if (silent > model_->drive_timeout_s() + 1e-9) {
     told_.damping = 1;
     return;
@@ -270,7 +270,7 @@ void SimulatedRobot::apply_faults() {
 Vec3<double> SimulatedRobot::push_now() const {
   Vec3<double> force{0, 0, 0};
   const double since = static_cast<double>(clock_.tick - clock_.placed) * model_->period_s();
-  if (since >= push_begins_s_ && since < push_begins_s_ + kPush_s) force = push_;
+  if (since >= push_begins_s_ && since < push_begins_s_ + kPushSeconds) force = push_;
   for (std::size_t i = 0; i < static_cast<std::size_t>(site_.fault_count); ++i) {
     const Fault& fault = site_.fault[i];
     if (fault.kind != v1::Fault::PUSH || !acts(fault)) continue;
@@ -315,7 +315,7 @@ bool SimulatedRobot::fallen() const {
   const auto& q = state_.body.attitude;
   const double upright = 1 - 2 * (q.x * q.x + q.y * q.y);
   const double height = dot(figures_.around.ground.normal, state_.body.position);
-  return !(upright > std::cos(kFallTilt_rad)) || !(height > model_->stance_height_m() / 2);
+  return !(upright > std::cos(kFallTilt)) || !(height > model_->stance_height_m() / 2);
 }
 
 Truth SimulatedRobot::truth() const {

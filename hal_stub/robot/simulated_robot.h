@@ -160,7 +160,7 @@ class SimulatedRobot {
   Stepper stepper_;
   SiteFigures<double> figures_;
   RobotState<double> state_;
-  RobotWork<double> work_;
+  RobotWork<double> work_{};
   Told<double> told_;
   Clock clock_;
   Kept kept_;

@@ -96,8 +96,8 @@ struct Geared {
 
   void step(double torque, double load_torque, double dt) {
     Coupling<double> c{};
-    const auto load = load_of(drive(), Teeth<double>{}, torque, 0.1, half_gap, angle, speed, rotor_angle,
-                              rotor_speed, dt, c);
+    const GearedJoint<double> geared{torque, 0.1, half_gap, angle, speed, rotor_angle, rotor_speed};
+    const auto load = load_of(drive(), Teeth<double>{}, geared, dt, c);
     const double a = (load.torque + load_torque) / (0.05 + load.inertia);
     speed += a * dt;
     angle += speed * dt;

@@ -58,8 +58,7 @@ void drive(Work<double>& work) {
 void press_foot(Work<double>& work, std::size_t leg, const V3& force) {
   const V3 f = turn_back(base_axes(), force);
   const V3 r = work.leg[leg].foot;
-  std::array<V3, 3> arm{};
-  arms_of<3>(work.leg[leg], r, arm);
+  const auto arm = arms_of<3>(work.leg[leg], r);
   const Touch<double> touch{f, 0, 0};
   press_leg<3>(touch, V3{0, 0, 1}, r, arm, 0.001, work.leg[leg]);
   press_trunk(touch, V3{0, 0, 1}, r, 0.001, work);
@@ -158,8 +157,7 @@ TEST(DynamicsVector, FootPlaceAndVelocityAgree) {
   EXPECT_NEAR(place.x, 0.233824579874, 1e-11);
   EXPECT_NEAR(place.y, 0.0781045466713, 1e-11);
   EXPECT_NEAR(place.z, 0.139825283078, 1e-11);
-  std::array<V3, 3> arm{};
-  arms_of<3>(leg, leg.foot, arm);
+  const auto arm = arms_of<3>(leg, leg.foot);
   const V3 v = base_axes() * velocity_at<3>(work, state.rate, leg.foot, arm, state.speed[0]);
   EXPECT_NEAR(v.x, 0.224924755025, 1e-10);
   EXPECT_NEAR(v.y, 0.336133051838, 1e-10);
