@@ -101,7 +101,8 @@ void look_for_possible(const Limits& limits, const SensorFrame& frame, int joint
 bool all_speeds_possible(const Limits& limits, const SensorFrame& frame, int joint_count) noexcept {
   for (int j = 0; j < joint_count; ++j) {
     const Range range = possible_speed(limits.joint[static_cast<std::size_t>(j)]);
-    if (!within(frame.speed[j], range.low, range.high)) return false;
+    // Finite on its own account: with a limit that is not, every speed would be possible.
+    if (!std::isfinite(frame.speed[j]) || !within(frame.speed[j], range.low, range.high)) return false;
   }
   return true;
 }
@@ -146,9 +147,10 @@ void FrameWatch::look(const Limits& limits, const SensorFrame& frame, bool frame
   look_for_finite(frame, joint_count, found);
   look_for_possible(limits, frame, joint_count, found);
   look_for_age(limits, frame, frame_new, elapsed, found);
+  // Also in a frame whose counter has not risen: its angles reach the fades and the policy all the same.
+  if (live) look_for_jumps(limits, frame, found);
   if (fresh_) {
     look_for_life(limits, frame, found);
-    if (live) look_for_jumps(limits, frame, found);
     remember(frame, joint_count);
   }
   const CauseSet unfit = bit(Cause::frame_stale) | bit(Cause::frame_frozen);

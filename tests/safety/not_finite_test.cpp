@@ -98,6 +98,16 @@ TEST(NotFinite, HugeAndTinyFieldsTripOrPassButNeverOverflowIntoAPass) {
   }
 }
 
+TEST(NotFinite, AnInfiniteSpeedIsNeverDampedEvenUnderAnInfiniteLimit) {
+  Limits limits = test::some_limits();
+  for (auto& joint : limits.joint) joint.speed_max_rad_per_s = test::kInf;
+  Loop wide(limits);
+  wide.ticks(5);
+  wide.frame.speed[0] = test::kInf;
+  EXPECT_FALSE(wide.tick().torque_on());
+  EXPECT_EQ(wide.gate.phase(), Phase::off);
+}
+
 TEST(NotFinite, WhatTheRobotDoesNotHaveIsNotJudged) {
   Loop loop;
   loop.frame.attitude.w = kNan;

@@ -314,6 +314,16 @@ TEST(Watches, ACounterThatGoesBackIsNotANewFrame) {
   EXPECT_EQ(loop.gate.trip().cause, Cause::frame_stale);
 }
 
+TEST(Watches, AFrameWithAnOldCounterIsJudgedForJumpsAllTheSame) {
+  Loop loop;
+  loop.ticks(5);
+  loop.frame.counter -= 2;  // the loop counts one up: the plug-in gives the frame before the last again
+  loop.frame.angle[1] = 0.5;
+  (void)loop.tick();
+  EXPECT_EQ(loop.gate.trip().cause, Cause::frame_jump);
+  EXPECT_EQ(loop.gate.trip().joint, 1);
+}
+
 TEST(Watches, AFrozenFrameTripsAfterItsTicks) {
   Loop loop;
   loop.ticks(5);
