@@ -14,6 +14,8 @@
 #include <memory>
 #include <vector>
 
+#include "pastern/v1/training.pb.h"
+#include "proto/files/artefact.h"
 #include "proto/files/plan_file.h"
 #include "proto/files/policy_file.h"
 #include "proto/files/scenario_file.h"
@@ -156,8 +158,29 @@ Tally damage_policy(const std::string& bytes, const files::RobotFile& robot, std
   });
 }
 
+// The state of a training, as the trainer keeps it.
+Tally damage_training(std::uint64_t seed) {
+  v1::Training training;
+  training.set_format(1);
+  training.set_settings("seed 1");
+  *training.mutable_policy() = fixture::policy();
+  for (int i = 0; i < 50; ++i) training.add_centre(0.1 * i);
+  const std::string bytes = files::pack_artefact(files::kTrainingKind, training);
+  return in_a_child([&] {
+    const auto tally = damage::damage_binary(bytes, seed, 1000, [](const std::string& damaged, bool& said) {
+      files::Defects defects;
+      v1::Training read;
+      const bool accepted = files::unpack_artefact(damaged, files::kTrainingKind, "damaged", read, defects);
+      said = !defects.empty();
+      return accepted;
+    });
+    return Tally{tally.tried, tally.accepted, tally.silent, 0};
+  });
+}
+
 Tally binary_kinds(std::uint64_t seed, bool quick) {
   Tally all = damage_policy(files::pack_policy(fixture::policy()), fixture::robot_file(), seed);
+  all += damage_training(seed);
   if (quick) return all;
   for (const std::string& path : shipped("hal_stub/policies", ".policy")) {
     files::Defects defects;

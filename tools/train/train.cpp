@@ -75,9 +75,10 @@ std::string how(const TrainOptions& options, const TrainResult& result) {
 
 TrainerSettings start_policy_settings() {
   TrainerSettings settings;
-  settings.iterations = 120;
+  settings.iterations = 140;
   settings.step = 0.02;
-  settings.last_step = 0.004;
+  settings.last_step = 0.003;
+  settings.fall_penalty = 5;
   return settings;
 }
 

@@ -39,6 +39,7 @@ void add_channels(const v1::Robot& robot, v1::Policy& policy) {
   add_channel(policy, v1::Channel::PITCH, 2);
   add_channel(policy, v1::Channel::ROLL_RATE, 0.25);
   add_channel(policy, v1::Channel::PITCH_RATE, 0.25);
+  add_channel(policy, v1::Channel::YAW_RATE, 0.5);
   for (const v1::Joint& joint : robot.joints())
     add_channel(policy, v1::Channel::JOINT_OFFSET, 1, joint.name());
   add_channel(policy, v1::Channel::PHASE_SIN, 1);

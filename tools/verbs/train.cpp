@@ -34,6 +34,7 @@ class Train final : public Verb {
         "Interrupted (Ctrl-C, a power cut) it goes on from OUT.training when called again in the same words.",
         "The same robot file and settings give the same policy file, byte for byte, on any number of "
         "threads.",
+        "Exit status 5: interrupted. 3: a file is wrong or cannot be written.",
         "A policy that walks in simulation has walked on no robot: first start on a gantry, hand on the "
         "stop."};
   }
@@ -136,7 +137,7 @@ Exit Train::run() {
   if (result.finished) return finish(result);
   complain(fmt::format("pastern train: interrupted after {} walks; the same command goes on from there",
                        result.walks));
-  return Exit::findings;
+  return Exit::refused;
 }
 
 }  // namespace
