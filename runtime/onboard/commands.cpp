@@ -42,7 +42,7 @@ void Program::answer(const Asked& asked, const v1::Command& command) {
   if (before && answer.ParseFromString(*before)) {
     answer.set_repeated(true);
   } else {
-    answer = act(command, asked.who);
+    answer = act(command, asked);
     answer.set_id(command.id());
     (void)parts_.journal.remember_command(command.id(), answer.SerializeAsString()).ok;
   }
@@ -50,7 +50,8 @@ void Program::answer(const Asked& asked, const v1::Command& command) {
   server_->answer(asked.ticket, answer);
 }
 
-v1::Answer Program::act(const v1::Command& command, const std::string& who) {
+v1::Answer Program::act(const v1::Command& command, const Asked& asked) {
+  const std::string& who = asked.who;
   switch (command.what_case()) {
     case v1::Command::kStartSession:
       return start_session(command.start_session());
@@ -61,7 +62,7 @@ v1::Answer Program::act(const v1::Command& command, const std::string& who) {
     case v1::Command::kMarkVoid:
       return mark_void(command.mark_void());
     case v1::Command::kRelease:
-      return release();
+      return release(asked.stops_seen);
     case v1::Command::kResume:
       return resume();
     case v1::Command::kPark:
@@ -136,9 +137,9 @@ v1::Answer Program::mark_void(const v1::MarkVoid& mark) {
   return runner_.mark_void(mark.walk(), mark.reason(), words) ? accepted(words) : refused(words);
 }
 
-v1::Answer Program::release() {
+v1::Answer Program::release(std::uint64_t stops_seen) {
   std::string words;
-  return runner_.release(words) ? accepted(words) : refused(words);
+  return runner_.release(words, stops_seen) ? accepted(words) : refused(words);
 }
 
 v1::Answer Program::resume() {

@@ -12,9 +12,10 @@ void Exchange::halt() { set(signals_.halt); }
 // A command counts as confirmation only when it was written after the flag was set; the flag does not wait
 // for the lock.
 void Exchange::set(std::atomic<bool>& flag) {
+  signals_.stops_asked.fetch_add(1);
   commands_at_stop_.store(signals_.stopped_commands.load(std::memory_order_acquire),
                           std::memory_order_release);
-  flag.store(true, std::memory_order_release);
+  flag.store(true);
   {
     const std::lock_guard lock(mutex_);
     stop_came_ = true;
@@ -30,12 +31,13 @@ bool Exchange::stop_confirmed() const {
 void Exchange::baton_held(bool held) { signals_.baton_lost.store(!held, std::memory_order_release); }
 
 bool Exchange::submit(link::Ticket ticket, const v1::Command& command, const std::string& who) {
-  return push({ticket, command, who});
+  return push({ticket, command, who, 0});
 }
 
-bool Exchange::submit(link::Ticket ticket, const v1::Fetch& fetch) { return push({ticket, fetch, ""}); }
+bool Exchange::submit(link::Ticket ticket, const v1::Fetch& fetch) { return push({ticket, fetch, "", 0}); }
 
 bool Exchange::push(Asked asked) {
+  asked.stops_seen = signals_.stops_asked.load();
   {
     const std::lock_guard lock(mutex_);
     if (queue_.size() >= kLongestQueue) return false;

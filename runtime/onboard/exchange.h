@@ -21,6 +21,7 @@ struct Asked {
   link::Ticket ticket;
   std::variant<v1::Command, v1::Fetch> what;
   std::string who;
+  std::uint64_t stops_seen{0};  ///< Signals::stops_asked when it came
 };
 
 class Exchange final : public link::Line {

@@ -69,12 +69,12 @@ class Program final : public session::Hooks {
 
   // commands.cpp
   void answer(const Asked& asked, const v1::Command& command);
-  [[nodiscard]] v1::Answer act(const v1::Command& command, const std::string& who);
+  [[nodiscard]] v1::Answer act(const v1::Command& command, const Asked& asked);
   [[nodiscard]] v1::Answer start_session(const v1::StartSession& start);
   [[nodiscard]] v1::Answer go();
   [[nodiscard]] v1::Answer walk(const v1::Walk& walk);
   [[nodiscard]] v1::Answer mark_void(const v1::MarkVoid& mark);
-  [[nodiscard]] v1::Answer release();
+  [[nodiscard]] v1::Answer release(std::uint64_t stops_seen);
   [[nodiscard]] v1::Answer resume();
   [[nodiscard]] v1::Answer park();
   [[nodiscard]] v1::Answer adopt(const v1::Adopt& adopt, const std::string& who);

@@ -30,6 +30,9 @@ struct Signals {
   std::atomic<bool> halt{false};
   std::atomic<bool> baton_lost{false};  ///< judged within a tick at wall pace only; stepped: between orders
   std::atomic<bool> internal_stop{false};
+  /// Stops and halts that people have asked for; risen before the flag is set. Tells a release which of them
+  /// its operator had seen.
+  std::atomic<std::uint64_t> stops_asked{0};
   std::atomic<std::uint64_t> stopped_commands{
       0};  ///< ticks written with a stop sequence running or torque off
 };

@@ -23,7 +23,8 @@ class Mover {
   /// The robot stands on its start mark again: a simulated one is put there (what is random about that is a
   /// function of `draw`), the gate's filters start anew. Parked only. False with a reason in `words`.
   virtual bool set_down(std::uint64_t draw, std::string& words) = 0;
-  /// An operator's release: clears the stop flags and asks the gate. False with a reason in `words`.
+  /// Asks the gate to release, after one tick that sees the flags as they are: a stop that is still set
+  /// stands in the way (clear_stops). False with a reason in `words`.
   virtual bool release(std::string& words) = 0;
   [[nodiscard]] virtual CycleReport report() = 0;
   virtual void load(const Parameters& parameters) = 0;
@@ -37,8 +38,11 @@ class Mover {
   [[nodiscard]] virtual std::string scheduling() const = 0;
 };
 
-/// What an operator's release clears before the gate is asked.
-void clear_stops(Signals& signals);
+/// What an operator's release clears before the gate is asked: the stops that had been asked for when the
+/// operator released. False, and a stop stands, when another has come since.
+[[nodiscard]] bool clear_stops(Signals& signals, std::uint64_t stops_seen);
+/// What a release by the program itself may clear: its own stop, never a person's.
+void clear_own_stop(Signals& signals);
 /// Why the gate did not release, in words.
 [[nodiscard]] std::string release_refused(const CycleReport& report);
 

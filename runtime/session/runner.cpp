@@ -1,5 +1,5 @@
-// The course of a session, from its plan to its verdict. What the adaptation learns comes out of the journal's
-// commit; the walks themselves are in runner_walk.cpp.
+// The course of a session, from its plan to its verdict. What the adaptation learns comes out of the
+// journal's commit; the walks themselves are in runner_walk.cpp.
 #include "runtime/session/runner.h"
 
 #include <algorithm>
@@ -173,7 +173,9 @@ Ended Runner::loop() {
     if (!allowed(by_operator_, ended)) return ended;
     if (!session_->next()) break;
     const Order order = *session_->next();
-    if (!make_ready(order, ended) || !perform(order, ended)) return ended;
+    acted_ = false;
+    if (!make_ready(order, ended)) return ended;
+    if (!acted_ && !perform(order, ended)) return ended;
   }
   return conclude(*session_->verdict());
 }
@@ -195,7 +197,13 @@ Ended Runner::walk(const files::PolicyFile& policy, double duration_s, std::uint
   order.draw = draw;
   order.parameters = parameters_of(policy);
   Ended ended;
-  if (!allowed(false, ended) || !make_ready(order, ended) || !perform(order, ended)) return ended;
+  acted_ = false;
+  if (!allowed(false, ended) || !make_ready(order, ended)) return ended;
+  if (acted_) {
+    return leave_session(Ended::How::refused,
+                         "stopped, or without the baton, before the walk began; ask for it again");
+  }
+  if (!perform(order, ended)) return ended;
   return {Ended::How::verdict, "walk " + std::to_string(order.walk) + " is recorded"};
 }
 
@@ -207,8 +215,10 @@ bool Runner::allowed(bool by_operator, Ended& ended) {
     if (interrupted(ended)) return false;
     if (mover_.signals().baton_lost.load(std::memory_order_acquire)) {
       if (!wait_for("baton", ended)) return false;
+      go_ = false;
     } else if (tripped() && !releases_itself(mover_.report().trip)) {
       if (!wait_for("release", ended)) return false;
+      go_ = false;
     } else if (by_operator && !go_) {
       if (!wait_for("go", ended)) return false;
     } else {
@@ -234,6 +244,7 @@ bool Runner::interrupted(Ended& ended) {
 
 bool Runner::wait_for(const std::string& what, Ended& ended) {
   waiting_for_ = what;
+  acted_ = acted_ || what != "go";
   state_ = tripped() ? v1::TRIPPED : v1::PARKED;
   keep_trip();
   if (hooks_.wait(what)) return true;

@@ -87,8 +87,13 @@ class Runner {
   void pause() { pause_ = true; }  ///< the session is left, to be resumed, as soon as the robot is parked
   /// The walk that is being walked, or the last one until the next begins. False with a reason in `words`.
   [[nodiscard]] bool mark_void(std::uint64_t walk, const std::string& reason, std::string& words);
-  /// An operator's release of a trip. False with a reason in `words`.
-  [[nodiscard]] bool release(std::string& words);
+  /// An operator's release of a trip. `stops_seen`: Signals::stops_asked when the operator asked for it; a
+  /// stop that has come since is not cleared. It permits the next walk and does not start it: at operator
+  /// pace a go is asked for anew, and a single walk has to be. False with a reason in `words`.
+  [[nodiscard]] bool release(std::string& words, std::uint64_t stops_seen);
+  [[nodiscard]] bool release(std::string& words) {
+    return release(words, mover_.signals().stops_asked.load());
+  }
   /// At stepped pace nothing ticks between orders: one parked tick, so that a stop or halt takes effect.
   void rest();
 
@@ -129,6 +134,7 @@ class Runner {
   void recall_trip();
   void keep_trip();
   void release_at_end();
+  [[nodiscard]] bool release_itself(std::string& words);
 
   const files::RobotFile& robot_;
   Mover& mover_;
@@ -148,6 +154,7 @@ class Runner {
   bool go_{false};
   bool end_{false};
   bool pause_{false};
+  bool acted_{false};  // a person had to release or take the baton since the walk was agreed to
   bool moving_{false};
   bool by_operator_{true};     // pace: a person says go and releases
   std::uint64_t walking_{0};   // the walk in progress

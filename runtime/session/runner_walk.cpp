@@ -41,7 +41,7 @@ bool Runner::out_of_trip(Ended& ended) {
   while (tripped()) {
     if (!releases_itself(mover_.report().trip)) {
       if (!wait_for("release", ended)) return false;
-    } else if (!mover_.release(words)) {
+    } else if (!release_itself(words)) {
       if (waited_s >= kLongestTrip_s) {
         ended = leave_session(Ended::How::interrupted, "the robot does not come out of its trip: " + words);
         return false;
@@ -128,8 +128,12 @@ MotionResult Runner::walk_through(const Order& order, std::string& void_reason) 
 MotionResult Runner::move(Motion motion, double duration_s, v1::RobotState state) {
   state_ = state;
   moving_ = true;
-  MotionResult result = mover_.move(motion, duration_s, [this] { hooks_.serve(); });
+  MotionResult result = mover_.move(motion, duration_s, [this] {
+    hooks_.serve();
+    keep_trip();
+  });
   moving_ = false;
+  keep_trip();
   return result;
 }
 
@@ -150,9 +154,12 @@ std::optional<Committed<Evaluation>> Runner::commit(const v1::Episode& episode, 
 bool Runner::tripped() { return mover_.report().phase != safety::Phase::armed; }
 
 // A real robot waits for its operator, and so does a simulated one when a person, or the input that stands
-// for one, has stopped it.
+// for one, has stopped it: also one that had tripped by something else before, and one of an earlier program.
 bool Runner::releases_itself(const safety::Trip& trip) const {
-  if (!mover_.simulated() || by_operator_) return false;
+  if (!mover_.simulated() || by_operator_ || trip_kept_) return false;
+  const Signals& signals = mover_.signals();
+  if (signals.stop.load(std::memory_order_acquire) || signals.halt.load(std::memory_order_acquire))
+    return false;
   switch (trip.cause) {
     case safety::Cause::operator_stop:
     case safety::Cause::operator_halt:
@@ -172,8 +179,9 @@ void Runner::recall_trip() {
   rest();
 }
 
+// As soon as it is seen: a program that is killed in its stop sequence must come back tripped.
 void Runner::keep_trip() {
-  if (trip_kept_ || !tripped()) return;
+  if (trip_kept_ || !tripped() || releases_itself(mover_.report().trip)) return;
   trip_kept_ = journal_.put(kTripKey, safety::name(mover_.report().trip.cause)).ok;
 }
 
@@ -183,24 +191,32 @@ void Runner::release_at_end() {
   std::string words;
   if (!tripped() || !releases_itself(mover_.report().trip) || !mover_.set_down(0, words)) return;
   (void)move(Motion::parked, kOnTheMark_s, v1::PARKED);
-  if (mover_.release(words) && mover_.pace() == Pace::stepped && carried_.ticks() > 0) {
+  if (release_itself(words) && mover_.pace() == Pace::stepped && carried_.ticks() > 0) {
     (void)mover_.restore(carried_);
   }
 }
 
-bool Runner::release(std::string& words) {
+bool Runner::release_itself(std::string& words) {
+  clear_own_stop(mover_.signals());
+  return mover_.release(words);
+}
+
+bool Runner::release(std::string& words, std::uint64_t stops_seen) {
   if (moving_) {
     words = "the robot is moving or stopping; release when it has come to rest";
     return false;
   }
-  if (!tripped()) {
-    clear_stops(mover_.signals());
+  if (!tripped()) {  // a stop that is set but not yet seen by the gate stays set
     words = "nothing has tripped";
     return false;
   }
   // Nobody can lift a simulated robot; the program does, as the operator would before releasing.
   if (mover_.simulated() && !mover_.set_down(0, words)) return false;
   const std::string cause = safety::name(mover_.report().trip.cause);
+  if (!clear_stops(mover_.signals(), stops_seen)) {
+    words = "a stop has come since the release was asked for; release again";
+    return false;
+  }
   if (!mover_.release(words)) return false;
   if (trip_kept_) trip_kept_ = !journal_.put(kTripKey, "").ok;
   state_ = v1::PARKED;

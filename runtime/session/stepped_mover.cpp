@@ -23,7 +23,6 @@ class SteppedMover final : public Mover {
   }
 
   bool release(std::string& words) override {
-    clear_stops(cycle_.signals());
     (void)cycle_.run(Motion::parked, cycle_.period_s());
     if (cycle_.gate().release()) return true;
     words = release_refused(cycle_.report());
@@ -46,11 +45,21 @@ class SteppedMover final : public Mover {
 
 }  // namespace
 
-void clear_stops(Signals& signals) {
-  signals.stop.store(false, std::memory_order_release);
-  signals.halt.store(false, std::memory_order_release);
-  signals.internal_stop.store(false, std::memory_order_release);
+// Sequentially consistent on purpose: whoever stops raises the count first and sets the flag second. Either
+// the count is seen here, or the flag is set after it was cleared.
+bool clear_stops(Signals& signals, std::uint64_t stops_seen) {
+  if (signals.stops_asked.load() != stops_seen) return false;
+  signals.stop.store(false);
+  signals.halt.store(false);
+  if (signals.stops_asked.load() != stops_seen) {
+    signals.stop.store(true);
+    return false;
+  }
+  clear_own_stop(signals);
+  return true;
 }
+
+void clear_own_stop(Signals& signals) { signals.internal_stop.store(false); }
 
 std::string release_refused(const CycleReport& report) {
   if (report.phase == safety::Phase::armed) return "nothing has tripped";

@@ -107,7 +107,13 @@ class WallMover final : public Mover {
     thread_ = std::thread([this, settings] { live(settings); });
     while (!ready_.load(std::memory_order_acquire)) std::this_thread::sleep_for(kPoll);
   }
+  // Whatever made the program end, the robot is not left standing to fall when the drives time out.
   ~WallMover() override {
+    cycle_.signals().internal_stop.store(true);
+    const auto until = std::chrono::steady_clock::now() + kAnswerWithin;
+    while (report().phase != safety::Phase::off && std::chrono::steady_clock::now() < until) {
+      std::this_thread::sleep_for(kPoll);
+    }
     quit_.store(true, std::memory_order_release);
     thread_.join();
   }
@@ -137,7 +143,6 @@ class WallMover final : public Mover {
   }
 
   bool release(std::string& words) override {
-    clear_stops(cycle_.signals());
     CycleOrder order;
     order.kind = CycleOrder::Kind::release;
     give(order);

@@ -218,20 +218,24 @@ class Person final : public Hooks {
     waits.push_back(what);
     return act && act(what);
   }
-  void on_episode(const v1::Episode& episode) override { episodes.push_back(episode); }
+  void on_episode(const v1::Episode& episode) override {
+    episodes.push_back(episode);
+    if (told) told();
+  }
   void on_verdict(const v1::Verdict& verdict) override { verdicts.push_back(verdict); }
 
   std::function<bool(const std::string&)> act;
+  std::function<void()> told;
   std::vector<std::string> waits;
   std::vector<v1::Episode> episodes;
   std::vector<v1::Verdict> verdicts;
 };
 
 struct Desk {
-  explicit Desk(bool confirmed = true)
+  explicit Desk(bool confirmed = true, const std::string& fault = "")
       : robot(test::shipped_robot("dunlin12")),
         policy(test::trot_file(robot)),
-        cycle(robot.robot(), policy.policy(), test::puppet(robot)),
+        cycle(robot.robot(), policy.policy(), test::puppet(robot, fault)),
         mover(make_stepped_mover(cycle)) {
     std::string error;
     journal = journal::Journal::open(folder.path(), error);
@@ -329,6 +333,100 @@ TEST(Runner, AnOperatorsStopMakesTheWalkVoidAndWaitsForRelease) {
   EXPECT_EQ(desk.person.episodes.size(), 2U);
   EXPECT_NE(std::find(desk.person.waits.begin(), desk.person.waits.end(), "release"),
             desk.person.waits.end());
+}
+
+// Stopped while the robot got ready, after the go: releasing permits a walk, it must not start one (ISO
+// 13850).
+TEST(Runner, AReleaseDoesNotStartTheWalkThatAStopHeldUp) {
+  Desk desk;
+  bool stopped = false;
+  desk.person.act = [&](const std::string& what) {
+    std::string words;
+    if (what == "go") {
+      desk.runner->go();
+      if (!stopped)
+        desk.mover->signals().stop.store(true);  // with the go: the gate sees it with the next tick
+      stopped = true;
+      return true;
+    }
+    EXPECT_EQ(what, "release");
+    EXPECT_TRUE(desk.runner->release(words)) << words;
+    return true;
+  };
+  EXPECT_EQ(desk.run().how, Ended::How::verdict);
+  EXPECT_EQ(desk.person.waits, (std::vector<std::string>{"go", "release", "go", "go", "go"}));
+  for (const v1::Episode& episode : desk.person.episodes) EXPECT_EQ(episode.outcome(), v1::COMPLETED);
+}
+
+TEST(Runner, ASingleWalkThatWasStoppedBeforeItBeganHasToBeAskedForAgain) {
+  Desk desk;
+  desk.person.act = [&](const std::string& what) {
+    std::string words;
+    EXPECT_EQ(what, "release");
+    EXPECT_TRUE(desk.runner->release(words)) << words;
+    return true;
+  };
+  desk.mover->signals().stop.store(true);
+  EXPECT_EQ(desk.runner->walk(desk.policy, 0.5, 9).how, Ended::How::refused);
+  EXPECT_TRUE(desk.person.episodes.empty());
+  EXPECT_EQ(desk.runner->walk(desk.policy, 0.5, 9).how, Ended::How::verdict);
+}
+
+// A simulated robot at auto pace gets up by itself after a fall, but not when somebody has stopped it since.
+TEST(Runner, AStopThatComesAfterAFallWaitsForAPerson) {
+  Desk desk;
+  desk.plan.set_go_by(v1::Plan::AUTO);
+  desk.cycle.signals().internal_stop.store(true);  // a trip that auto pace releases by itself ...
+  desk.runner->rest();
+  ASSERT_EQ(desk.cycle.report().trip.cause, safety::Cause::internal_stop);
+  desk.mover->signals().stop.store(true);  // ... but this one is a person's
+  desk.person.act = [](const std::string&) { return false; };
+  const Ended ended = desk.run();
+  EXPECT_EQ(ended.how, Ended::How::interrupted);
+  EXPECT_TRUE(desk.mover->signals().stop.load());
+  EXPECT_EQ(desk.cycle.report().phase, safety::Phase::off);
+  EXPECT_TRUE(desk.person.episodes.empty());
+  EXPECT_EQ(desk.person.waits, (std::vector<std::string>{"release"}));
+}
+
+TEST(Runner, AReleaseDoesNotClearAStopThatCameAfterIt) {
+  Desk desk;
+  std::string words;
+  desk.mover->signals().stop.store(true);
+  desk.mover->signals().stops_asked.store(1);
+  EXPECT_FALSE(desk.runner->release(words));  // not seen by the gate yet
+  EXPECT_TRUE(desk.mover->signals().stop.load());
+  desk.runner->rest();
+  EXPECT_FALSE(desk.runner->release(words, 0));
+  EXPECT_NE(words.find("since"), std::string::npos) << words;
+  EXPECT_EQ(desk.cycle.report().phase, safety::Phase::off);
+  EXPECT_TRUE(desk.runner->release(words, 1)) << words;
+}
+
+// So that a program that is killed before anybody was asked comes back tripped.
+TEST(Runner, ATripIsKeptBeforeItsWalkIsTold) {
+  Desk desk(true, "fault=estop;at=2300;for=10");
+  std::string kept;
+  desk.person.told = [&] { kept = desk.journal->get("latched_trip").value_or(""); };
+  EXPECT_EQ(desk.run().how, Ended::How::interrupted);
+  ASSERT_EQ(desk.person.episodes.size(), 1U);
+  EXPECT_EQ(desk.person.episodes[0].outcome(), v1::VOID);
+  EXPECT_EQ(kept, "emergency_stop");
+}
+
+TEST(Runner, AnOperatorsStopOutlivesTheProgramAtAutoPaceToo) {
+  Desk desk;
+  desk.plan.set_go_by(v1::Plan::AUTO);
+  desk.mover->signals().stop.store(true);
+  desk.person.act = [](const std::string&) { return false; };
+  EXPECT_EQ(desk.run().how, Ended::How::interrupted);
+  Cycle cycle(desk.robot.robot(), desk.policy.policy(), test::puppet(desk.robot));
+  const auto mover = make_stepped_mover(cycle);
+  desk.person.waits.clear();
+  Runner second(desk.robot, *mover, *desk.journal, desk.person);
+  EXPECT_EQ(second.resume().how, Ended::How::interrupted);
+  EXPECT_EQ(desk.person.waits, (std::vector<std::string>{"release"}));
+  EXPECT_EQ(cycle.report().phase, safety::Phase::off);
 }
 
 TEST(Runner, ALatchedTripOutlivesTheProgram) {

@@ -83,10 +83,34 @@ TEST(WallMover, AStopFromAnotherThreadEndsTheWalkAndIsReleased) {
   EXPECT_EQ(walk.trip.cause, safety::Cause::operator_stop);
   EXPECT_EQ(rig.mover->report().phase, safety::Phase::off);
   std::string words;
+  EXPECT_FALSE(rig.mover->release(words)) << "the stop is still set";
+  EXPECT_TRUE(clear_stops(rig.mover->signals(), 0));
   EXPECT_TRUE(rig.mover->release(words)) << words;
   EXPECT_EQ(rig.mover->report().phase, safety::Phase::armed);
   EXPECT_FALSE(rig.mover->release(words));
   EXPECT_EQ(words, "nothing has tripped");
+}
+
+TEST(WallMover, AReleaseClearsOnlyTheStopsThatItsOperatorHadSeen) {
+  Signals signals;
+  signals.stops_asked = 1;
+  signals.stop = true;
+  signals.internal_stop = true;
+  EXPECT_FALSE(clear_stops(signals, 0)) << "a stop came after the release was asked for";
+  EXPECT_TRUE(signals.stop);
+  EXPECT_TRUE(signals.internal_stop);
+  EXPECT_TRUE(clear_stops(signals, 1));
+  EXPECT_FALSE(signals.stop);
+  EXPECT_FALSE(signals.internal_stop);
+}
+
+TEST(WallMover, WhenItGoesAStandingRobotIsLoweredFirst) {
+  Rig rig;
+  (void)rig.mover->move(Motion::parked, 0.05, {});
+  ASSERT_TRUE(rig.mover->move(Motion::rise, 0, {}).completed);
+  rig.mover.reset();
+  EXPECT_EQ(rig.cycle.gate().phase(), safety::Phase::off);
+  EXPECT_EQ(rig.cycle.gate().trip().cause, safety::Cause::internal_stop);
 }
 
 TEST(WallMover, ALostBatonStopsARobotThatMoves) {
