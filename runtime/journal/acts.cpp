@@ -56,8 +56,9 @@ Written Journal::adopt(const Adoption& adoption) {
     }
     return objection.empty() &&
            Query(impl_->database,
-                 "INSERT INTO adoptions (policy_sha256, who, when_utc, words) VALUES (?, ?, ?, ?)",
-                 adoption.policy_sha256_hex, adoption.who, adoption.when_utc, adoption.words)
+                 "INSERT INTO adoptions (policy_sha256, who, when_utc, words, seal) VALUES (?, ?, ?, ?, ?)",
+                 adoption.policy_sha256_hex, adoption.who, adoption.when_utc, adoption.words,
+                 seal_of({adoption.policy_sha256_hex, adoption.who, adoption.when_utc, adoption.words}))
                .done();
   });
 }
@@ -71,9 +72,11 @@ std::vector<Adoption> Journal::adoptions() const {
 }
 
 Written Journal::confirm_first_start(const FirstStart& first) {
-  return impl_->write_one("first start of robot file " + first.robot_sha256_hex,
-                          "INSERT OR IGNORE INTO first_starts (robot_sha256, who, when_utc) VALUES (?, ?, ?)",
-                          first.robot_sha256_hex, first.who, first.when_utc);
+  return impl_->write_one(
+      "first start of robot file " + first.robot_sha256_hex,
+      "INSERT OR IGNORE INTO first_starts (robot_sha256, who, when_utc, seal) VALUES (?, ?, ?, ?)",
+      first.robot_sha256_hex, first.who, first.when_utc,
+      seal_of({first.robot_sha256_hex, first.who, first.when_utc}));
 }
 
 std::optional<FirstStart> Journal::first_start(const std::string& robot_sha256_hex) const {
@@ -85,8 +88,8 @@ std::optional<FirstStart> Journal::first_start(const std::string& robot_sha256_h
 }
 
 Written Journal::remember_command(const std::string& id, const std::string& answer_bytes) {
-  return impl_->write_one("command " + id, "INSERT INTO commands (id, answer_message) VALUES (?, ?)", id,
-                          Blob{answer_bytes});
+  return impl_->write_one("command " + id, "INSERT INTO commands (id, answer_message, seal) VALUES (?, ?, ?)",
+                          id, Blob{answer_bytes}, seal_of({id, answer_bytes}));
 }
 
 std::optional<std::string> Journal::command_answer(const std::string& id) const {
@@ -97,8 +100,9 @@ std::optional<std::string> Journal::command_answer(const std::string& id) const 
 Written Journal::store_telemetry(const v1::Telemetry& telemetry) {
   const std::string bytes = telemetry.SerializeAsString();
   return impl_->write_one("telemetry " + std::to_string(telemetry.sequence()),
-                          "INSERT INTO telemetry (sequence, telemetry_message) VALUES (?, ?)",
-                          telemetry.sequence(), Blob{bytes});
+                          "INSERT INTO telemetry (sequence, telemetry_message, seal) VALUES (?, ?, ?)",
+                          telemetry.sequence(), Blob{bytes},
+                          seal_of({std::to_string(telemetry.sequence()), bytes}));
 }
 
 std::vector<v1::Telemetry> Journal::telemetry(std::uint64_t from, std::uint64_t to) const {
@@ -129,7 +133,8 @@ std::uint64_t Journal::last_sequence() const {
 }
 
 Written Journal::note(std::uint64_t session, const std::string& words) {
-  return impl_->write_one("note", "INSERT INTO notes (session, words) VALUES (?, ?)", session, words);
+  return impl_->write_one("note", "INSERT INTO notes (session, words, seal) VALUES (?, ?, ?)", session, words,
+                          seal_of({std::to_string(session), words}));
 }
 
 std::vector<std::string> Journal::notes(std::uint64_t session) const {

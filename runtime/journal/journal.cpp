@@ -79,7 +79,12 @@ std::string objection_to_rows(Database& database) {
         "SELECT 'walk ' || walk || ' of session ' || session, session, walk, episode_message, seal FROM "
         "walks",
         "SELECT 'carried state', bytes, seal FROM carried_state",
-        "SELECT 'kept value ' || name, name, bytes, seal FROM kept_values"}) {
+        "SELECT 'kept value ' || name, name, bytes, seal FROM kept_values",
+        "SELECT 'adoption ' || adoption, policy_sha256, who, when_utc, words, seal FROM adoptions",
+        "SELECT 'first start of ' || robot_sha256, robot_sha256, who, when_utc, seal FROM first_starts",
+        "SELECT 'command ' || id, id, answer_message, seal FROM commands",
+        "SELECT 'telemetry ' || sequence, sequence, telemetry_message, seal FROM telemetry",
+        "SELECT 'note ' || note, session, words, seal FROM notes"}) {
     if (std::string words = first_unsealed(database, sql); !words.empty()) return words;
   }
   return "";

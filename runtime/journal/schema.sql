@@ -103,26 +103,30 @@ CREATE TABLE adoptions (
   policy_sha256 TEXT NOT NULL REFERENCES policies (sha256),
   who           TEXT NOT NULL,
   when_utc      TEXT NOT NULL,
-  words         TEXT NOT NULL
+  words         TEXT NOT NULL,
+  seal          TEXT NOT NULL                       -- of policy_sha256 to words
 );
 
 -- Robot files whose first-start procedure an operator has read and confirmed.
 CREATE TABLE first_starts (
   robot_sha256 TEXT PRIMARY KEY,
   who          TEXT NOT NULL,
-  when_utc     TEXT NOT NULL
+  when_utc     TEXT NOT NULL,
+  seal         TEXT NOT NULL                        -- of robot_sha256 to when_utc
 ) WITHOUT ROWID;
 
 -- Commands already carried out: a repeated id gets the same answer and does nothing.
 CREATE TABLE commands (
   id             TEXT PRIMARY KEY,
-  answer_message BLOB NOT NULL                      -- pastern.v1.Answer
+  answer_message BLOB NOT NULL,                     -- pastern.v1.Answer
+  seal           TEXT NOT NULL                      -- of id, answer_message
 ) WITHOUT ROWID;
 
 -- Published messages that can be fetched for ever, by sequence number.
 CREATE TABLE telemetry (
   sequence          INTEGER PRIMARY KEY,
-  telemetry_message BLOB NOT NULL                   -- pastern.v1.Telemetry
+  telemetry_message BLOB NOT NULL,                  -- pastern.v1.Telemetry
+  seal              TEXT NOT NULL                   -- of sequence, telemetry_message
 );
 
 -- Trips, releases, resumptions and the like, in words.
@@ -130,5 +134,6 @@ CREATE TABLE notes (
   note    INTEGER PRIMARY KEY,
   session INTEGER NOT NULL,                         -- 0 outside sessions
   words   TEXT NOT NULL,
-  at_utc  TEXT NOT NULL DEFAULT (strftime('%Y-%m-%dT%H:%M:%SZ', 'now'))
+  at_utc  TEXT NOT NULL DEFAULT (strftime('%Y-%m-%dT%H:%M:%SZ', 'now')),
+  seal    TEXT NOT NULL                             -- of session, words
 );
