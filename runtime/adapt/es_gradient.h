@@ -15,6 +15,10 @@
 //
 // Incumbent: the present centre x. It never walked itself; it is the mean of what the pairs said, not a lucky
 // walk, so it cannot freeze under drift, and the session's confirmation walks it before anybody adopts it.
+//
+// Defaults, measured on the simulated dunlin12 on cold_store, 50 search walks, mean gain of the confirmation:
+// an early start policy, 8 seeds, steps 1, 2, 4 with 5 pairs: +.46, +.38, +.12; the shipped one, 6 seeds,
+// step 1 with 5 and 3 pairs: +.73, +.60.
 #pragma once
 
 #include <vector>
