@@ -122,6 +122,7 @@ void Model::take_drives(const v1::Robot& robot) {
     stance_.push_back(robot.joints(j).stance_rad());
     hold_stiffness_.push_back(robot.joints(j).stiffness_nm_per_rad());
     hold_damping_.push_back(robot.joints(j).damping_nm_s_per_rad());
+    envelope_.push_back(robot.joints(j).guard().peak_torque_nm());
     lying_.push_back(robot.joints(j).lying_rad());
   }
   const auto& p = robot.pack();

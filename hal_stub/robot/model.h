@@ -27,6 +27,8 @@ class Model {
   /// The PD gains of the robot file, for drives that hold a stance by themselves.
   [[nodiscard]] const std::vector<double>& hold_stiffness() const { return hold_stiffness_; }
   [[nodiscard]] const std::vector<double>& hold_damping() const { return hold_damping_; }
+  /// The gate's peak torque of each joint, N m: no correction of a command by the drive itself goes beyond.
+  [[nodiscard]] const std::vector<double>& envelope() const { return envelope_; }
   [[nodiscard]] const v1::Sensors& sensors() const { return sensors_; }
   [[nodiscard]] const std::vector<double>& damping() const { return damping_; }  ///< of the drives, N m s/rad
   [[nodiscard]] const std::vector<double>& coulomb() const { return coulomb_; }  ///< N m
@@ -56,6 +58,7 @@ class Model {
   std::vector<double> coulomb_;
   std::vector<double> hold_stiffness_;
   std::vector<double> hold_damping_;
+  std::vector<double> envelope_;
   v1::Sensors sensors_;
   double period_s_{0.001};
   int substeps_{1};

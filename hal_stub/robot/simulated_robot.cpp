@@ -118,6 +118,7 @@ void SimulatedRobot::place(const std::vector<double>& pose, double scatter, std:
   clock_.placed = clock_.tick;
   clock_.draw = draw;
   clock_.told = 0;
+  clock_.let_go = 0;
   told_.on = told_.damping = 0;
   clock_.sent = clock_.acting = clock_.arrived = -1;
   std::fill(command_ticks_.begin(), command_ticks_.end(), -1);
@@ -198,11 +199,19 @@ void SimulatedRobot::hear() {
   }
 }
 
+/// NaN becomes 0.
+double SimulatedRobot::bounded(std::size_t joint, double torque) const {
+  const double most = model_->envelope()[joint];
+  if (torque > most) return most;
+  return torque >= -most ? torque : (torque < -most ? -most : 0.0);
+}
+
 void SimulatedRobot::hold_stance() {
   told_.on = 1;
   for (std::size_t j = 0; j < static_cast<std::size_t>(model_->joint_count()); ++j) {
-    told_.wanted[j] = model_->hold_stiffness()[j] * (model_->stance()[j] - state_.drives.rotor_angle[j]) -
-                      model_->hold_damping()[j] * state_.drives.rotor_speed[j];
+    told_.wanted[j] =
+        bounded(j, model_->hold_stiffness()[j] * (model_->stance()[j] - state_.drives.rotor_angle[j]) -
+                       model_->hold_damping()[j] * state_.drives.rotor_speed[j]);
   }
 }
 
@@ -215,16 +224,23 @@ void SimulatedRobot::tell_drives() {
   const Message& message = commands_[static_cast<std::size_t>(clock_.acting) % command_rows_];
   const double silent =
       static_cast<double>(static_cast<std::int64_t>(clock_.tick) - clock_.arrived) * model_->period_s();
-  if (!(message.on > 0) || silent > model_->drive_timeout_s() + kLetGoAfterSeconds + 1e-9) return;
+  if (!(message.on > 0)) {
+    clock_.let_go = 0;
+    return;
+  }
+  // A program that was stopped and goes on sends a torque that is long out of date: it must ask anew.
+  if (silent > model_->drive_timeout_s() + kLetGoAfterSeconds + 1e-9) clock_.let_go = 1;
+  if (clock_.let_go != 0) return;
   if (silent > model_->drive_timeout_s() + 1e-9) {
     told_.damping = 1;
     return;
   }
   told_.on = 1;
   for (std::size_t j = 0; j < static_cast<std::size_t>(model_->joint_count()); ++j) {
-    told_.wanted[j] = message.torque[j] +
-                      model_->hold_stiffness()[j] * (message.angle[j] - state_.drives.rotor_angle[j]) +
-                      model_->hold_damping()[j] * (message.speed[j] - state_.drives.rotor_speed[j]);
+    told_.wanted[j] =
+        bounded(j, message.torque[j] +
+                       model_->hold_stiffness()[j] * (message.angle[j] - state_.drives.rotor_angle[j]) +
+                       model_->hold_damping()[j] * (message.speed[j] - state_.drives.rotor_speed[j]));
   }
 }
 

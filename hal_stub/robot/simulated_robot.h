@@ -65,11 +65,11 @@ class SimulatedRobot {
   /// Sent now, in answer to the frame that read() gave last; the drives act on it after the bus's delay.
   /// Non-finite torque counts as zero. Each drive corrects the torque by its own encoder for what its joint
   /// has moved since that frame, with the joint's stiffness and damping of the robot file: a late bus then
-  /// delays the targets and does not shake the joints (common practice, no source). Its peak torque bounds
-  /// the sum.
+  /// delays the targets and does not shake the joints (common practice, no source). The gate's peak torque of
+  /// the joint bounds the sum, whatever the correction says.
   void command(const safety::Torques<>& torque, bool torque_on);
   /// One period of the cycle. Without a command for `drive_timeout_s` the drives damp, 0.5 s later they let
-  /// go.
+  /// go, and then stay off until they have been told torque off.
   void step();
   /// Newest frame. False when there is none since the last call (lost frames); `frame` is then unchanged.
   [[nodiscard]] bool read(safety::SensorFrame& frame);
@@ -119,6 +119,7 @@ class SimulatedRobot {
     std::int64_t arrived{-1};  ///< tick at which it arrived
     std::uint64_t holding{0};  ///< 1: placed standing, and no command has arrived yet
     std::uint64_t lying{0};    ///< 1: placed lying
+    std::uint64_t let_go{0};   ///< 1: timed out; off until a command says so
   };
   /// A command on its way, and what the answered frame said of the joints (without noise).
   struct Message {
@@ -145,6 +146,7 @@ class SimulatedRobot {
   void hear();
   void hold_stance();
   void tell_drives();
+  [[nodiscard]] double bounded(std::size_t joint, double torque) const;
   void apply_faults();
   void apply_drive_fault(const Fault& fault);
   [[nodiscard]] Vec3<double> push_now() const;

@@ -13,7 +13,8 @@
  *
  * Safety duties of the drives (not of the caller)
  *   Command timeout: when no write has arrived for `drive_timeout_s` (default 0.020 s) the drives damp by
- * themselves and take the torque off 0.5 s later. This holds when the process is stopped, killed or starved.
+ * themselves and take the torque off 0.5 s later; once off they stay off until a command with torque_on == 0
+ * has arrived. This holds when the process is stopped, killed or starved.
  *   Emergency stop: the input acts on the drives directly; the frame only reports it.
  *   `torque_on == 0` means no torque is produced, from the next command period on.
  *

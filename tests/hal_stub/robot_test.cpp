@@ -1,5 +1,10 @@
 // The simulated robot as a whole: it stands, walks, falls and lies; same calls, same bits.
+#include <google/protobuf/text_format.h>
 #include <gtest/gtest.h>
+
+#include <cmath>
+#include <limits>
+#include <random>
 
 #include "hal_stub/robot/advance.h"
 #include "tests/hal_stub/robots.h"
@@ -279,6 +284,84 @@ TEST_P(Robot, AnyNumberOfLegsIsStepped) {
     step_plainly(figures, site, {}, 1e-3, plain, work);
   }
   expect_same(fitted, plain);
+}
+
+/// A robot file whose gate allows less than its drives can make, as on a first start.
+files::RobotFile low_limits(const std::string& name, double share) {
+  const files::RobotFile shipped = robot_file(name);
+  v1::Robot robot = shipped.robot();
+  for (auto& joint : *robot.mutable_joints()) {
+    joint.mutable_guard()->set_peak_torque_nm(share * joint.drive().peak_torque_nm());
+  }
+  std::string text;
+  EXPECT_TRUE(google::protobuf::TextFormat::PrintToString(robot, &text));
+  files::Defects defects;
+  auto file = files::parse_robot(text, "low limits", defects);
+  EXPECT_TRUE(file) << files::lines(defects);
+  return file ? *file : shipped;
+}
+
+// The drive corrects a late torque by its own encoder: however far the joint has moved meanwhile, and
+// whatever is commanded, no torque beyond the gate's, and none when it is off or the drives have let go.
+TEST_P(Robot, ADriveNeverGoesBeyondTheGatesPeakNorActsWhenItIsOff) {
+  const files::RobotFile file = low_limits(GetParam(), 0.3);
+  const auto model = model_of(file);
+  Site site = nominal_site(*model);
+  site.command_delay_s = 0.030;
+  site.command_jitter_s = 0.020;
+  site.sensor_delay_s = 0.005;
+  SimulatedRobot robot(model, site, 5);
+  robot.place_standing(1);
+  safety::SensorFrame frame;
+  std::mt19937_64 random(11);
+  double most = 0;
+  int off = 0;
+  for (int k = 0; k < 4000; ++k) {
+    if (random() % 3 != 0) (void)robot.read(frame);
+    safety::Torques<> torque;
+    for (auto& x : torque.values) {
+      const std::uint64_t bits = random();
+      x = bits % 50 == 0 ? std::numeric_limits<double>::quiet_NaN()
+                         : (bits % 2 == 0 ? 1 : -1) * (bits % 7 == 0 ? 1e308 : 0.3 * 30.0);
+    }
+    const int part = k % 1000;
+    if (part < 300) robot.command(torque, part < 200 || part >= 250);  // then silent
+    robot.step();
+    const bool none = robot.torque_mode() == TorqueMode::off;
+    for (int j = 0; j < model->joint_count(); ++j) {
+      const auto i = static_cast<std::size_t>(j);
+      const double made = std::fabs(robot.state().drives.torque[i]);
+      ASSERT_LE(made, none ? 0.0 : model->figures().drive[i].peak_torque) << "joint " << j << " tick " << k;
+      if (robot.torque_mode() != TorqueMode::on) continue;
+      ASSERT_LE(made, model->envelope()[i]) << "joint " << j << " tick " << k;
+      most = std::max(most, made / model->envelope()[i]);
+    }
+    off += none ? 1 : 0;
+    if (part > 299 + 50 + 20 + 501) {
+      ASSERT_TRUE(none) << "tick " << k;
+    }
+  }
+  EXPECT_EQ(most, 1.0);
+  EXPECT_GT(off, 400);
+}
+
+TEST_P(Robot, DrivesThatHaveLetGoStayOffUntilTheyAreToldOff) {
+  const files::RobotFile file = robot_file(GetParam());
+  const auto model = model_of(file);
+  SimulatedRobot robot(model, nominal_site(*model), 5);
+  robot.place_standing(1);
+  Holder holder(file.robot());
+  holder.run(robot, 0.1);
+  ASSERT_EQ(robot.torque_mode(), TorqueMode::on);
+  const auto silence = std::lround((model->drive_timeout_s() + 0.6) / model->period_s());
+  for (long k = 0; k < silence; ++k) robot.step();
+  ASSERT_EQ(robot.torque_mode(), TorqueMode::off);
+  holder.run(robot, 0.05);  // the program goes on where it was stopped
+  EXPECT_EQ(robot.torque_mode(), TorqueMode::off);
+  robot.command({}, false);
+  robot.step();
+  holder.run(robot, 0.01);
+  EXPECT_EQ(robot.torque_mode(), TorqueMode::on);
 }
 
 INSTANTIATE_TEST_SUITE_P(Shipped, Robot, ::testing::Values("dunlin12", "dunlin8"));
