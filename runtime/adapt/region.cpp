@@ -98,7 +98,9 @@ std::optional<std::string> outside_trust_region(const Parameters& start, const P
   for (const Group& group : groups) {
     if (!fits(group, start.size())) return group.name;
     const double radius = radius_of(start, group, trust_region);
-    if (!(change_norm(start, candidate, group) <= radius * (1 + kRounding))) return group.name;
+    const double change = change_norm(start, candidate, group);
+    // Two norms that overflow are infinite both and compare as equal: that is not inside.
+    if (!std::isfinite(change) || !(change <= radius * (1 + kRounding))) return group.name;
   }
   const std::vector<bool> member = membership(groups, start.size());
   for (std::size_t i = 0; i < start.size(); ++i)

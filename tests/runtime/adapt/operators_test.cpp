@@ -242,6 +242,15 @@ TEST(TrustRegion, AnotherSizeOrAParameterOfNoGroupIsOutside) {
   EXPECT_TRUE(outside_trust_region(kStart, {}, groups, 0.5).has_value());
 }
 
+TEST(TrustRegion, ANormThatOverflowsIsOutside) {
+  const std::vector<Group> groups{{"all", 0, 2, 0.1}};
+  EXPECT_TRUE(outside_trust_region({1e200, 1.0}, {-1e200, 1.0}, groups, 0.5).has_value());
+  EXPECT_TRUE(
+      outside_trust_region({1e200, 1.0}, {1e200, std::numeric_limits<double>::infinity()}, groups, 0.5)
+          .has_value());
+  EXPECT_TRUE(outside_trust_region({1.0, 1.0}, {1.0, kNan}, groups, 0.5).has_value());
+}
+
 TEST(TrustRegion, AGroupThatStartsAllZeroMayNotMove) {
   const Parameters start{1, 1, 0, 0};
   Settings settings = settings_of(Kind::es_gradient, 4, 0.1, 1);
