@@ -218,6 +218,11 @@ TEST_F(Wall, RobotGoesLimpWhenTheProgramThatDrivesItIsKilledOrStopped) {
   kill(driver, SIGSTOP);
   wait_for_robot(1.2);
   expect_limp_after_silence();
+  kill(driver, SIGCONT);  // it goes on as if nothing had happened, with the torque that it was about to write
+  const std::uint64_t before = trace().back().commands;
+  wait_for_robot(0.3);
+  EXPECT_GT(trace().back().commands, before);
+  EXPECT_EQ(trace().back().torque, "off");
   kill(driver, SIGKILL);
   waitpid(driver, nullptr, 0);
 }

@@ -301,5 +301,38 @@ TEST(Onboard, AtWallPaceATerminatedProgramStopsTheWalkInOrder) {
   EXPECT_EQ(finished[0].episode.outcome(), v1::VOID);
 }
 
+// The machine held the program up for longer than the drives wait. It trips with its first tick, and after
+// the release it stays where it is.
+TEST(Onboard, AtWallPaceAProgramThatWasHeldUpTripsAndDoesNotGoOnAfterTheRelease) {
+  Onboard onboard("wall");
+  ASSERT_TRUE(onboard.start());
+  ASSERT_TRUE(onboard.take_baton());
+  ASSERT_TRUE(onboard.confirm().accepted());
+  v1::Command walk;
+  walk.mutable_walk()->set_duration_s(60);
+  ASSERT_TRUE(onboard.ask(walk).accepted());
+  const auto moves = [](const v1::Status& s) {
+    return s.robot_state() == v1::WALKING || s.robot_state() == v1::TRIPPED;
+  };
+  ASSERT_TRUE(onboard.wait_until(moves));
+  onboard.send(SIGSTOP);
+  usleep(300'000);
+  onboard.send(SIGCONT);
+  ASSERT_TRUE(onboard.wait_until([](const v1::Status& s) { return s.robot_state() == v1::TRIPPED; }));
+  EXPECT_EQ(onboard.status().trip().cause(), "tick_overrun");
+  ASSERT_TRUE(onboard.take_baton());
+  v1::Command release;
+  release.mutable_release();
+  v1::Answer released;
+  for (int i = 0; i < 50 && !released.accepted(); ++i) {
+    usleep(20'000);
+    released = onboard.ask(release);
+  }
+  EXPECT_TRUE(released.accepted()) << released.words();
+  usleep(300'000);
+  EXPECT_EQ(onboard.status().robot_state(), v1::PARKED);
+  EXPECT_EQ(onboard.end(SIGTERM), 0) << onboard.output();
+}
+
 }  // namespace
 }  // namespace pastern::test

@@ -111,6 +111,8 @@ bool Onboard::start(const std::vector<std::string>& more) {
   return client_ != nullptr;
 }
 
+void Onboard::send(int signal) const { kill(process_, signal); }
+
 int Onboard::end(int signal) {
   kill(process_, signal);
   while (read_some(pipe_, output_)) {

@@ -31,6 +31,8 @@ class Onboard {
 
   /// Starts the program and a client; false when it did not say "ready".
   [[nodiscard]] bool start(const std::vector<std::string>& more = {});
+  /// Sends the signal and does not wait.
+  void send(int signal) const;
   /// Sends the signal and waits for the end; exit status, or 128 + signal.
   int end(int signal);
 
