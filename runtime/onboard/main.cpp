@@ -80,7 +80,7 @@ std::unique_ptr<session::Mover> make_mover(const Options& options, session::Cycl
   if (options.pace == session::Pace::stepped) return session::make_stepped_mover(cycle);
   const std::optional<std::string> bytes = journal.robot_state();
   v1::CarriedState state;
-  if (bytes && state.ParseFromString(*bytes)) (void)cycle.restore(state, false);
+  if (bytes && !bytes->empty() && state.ParseFromString(*bytes)) (void)cycle.restore(state, false);
   signals_to_stop.store(&cycle.signals(), std::memory_order_release);
   return session::make_wall_mover(cycle, {options.cpu, options.priority});
 }

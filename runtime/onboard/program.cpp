@@ -93,9 +93,13 @@ bool Program::wait(const std::string& what) {
   return true;
 }
 
-// At stepped pace nothing ticks while the robot rests; a stop must be seen by the gate all the same.
+// At stepped pace nothing ticks while the robot rests; a stop must be seen by the gate all the same. The stop
+// that ends this program is no trip to be kept: it is asked for only after leave() says so.
 void Program::rest_when_asked() {
-  if (parts_.mover.pace() != session::Pace::stepped) return;
+  if (parts_.mover.pace() != session::Pace::stepped) {
+    if (!leave()) runner_.notice();
+    return;
+  }
   const session::Signals& signals = parts_.mover.signals();
   const bool stop =
       signals.stop.load(std::memory_order_acquire) || signals.halt.load(std::memory_order_acquire);

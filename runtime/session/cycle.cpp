@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <limits>
 #include <utility>
 
 #include "runtime/control/pd.h"
@@ -405,7 +406,10 @@ v1::CarriedState Cycle::save() {
 bool Cycle::restore(const v1::CarriedState& state, bool clock) {
   Impl& s = *impl_;
   safety::PerJoint<safety::Celsius> thermal;
-  for (int j = 0; j < s.joint_count && j < state.thermal_size(); ++j) thermal[j] = state.thermal(j);
+  // A joint that the state does not know is not assumed cold: the gate takes what is not a number as hot.
+  for (int j = 0; j < s.joint_count; ++j) {
+    thermal[j] = j < state.thermal_size() ? state.thermal(j) : std::numeric_limits<double>::quiet_NaN();
+  }
   s.gate.restore_thermal_state(thermal);
   if (!clock) return true;
   s.gate_tick_base = state.ticks() - (s.ticks - s.gate_tick_base);

@@ -96,6 +96,8 @@ class Runner {
   }
   /// At stepped pace nothing ticks between orders: one parked tick, so that a stop or halt takes effect.
   void rest();
+  /// At wall pace: keeps a trip that came while nothing was being done, so that a restart does not clear it.
+  void notice() { keep_trip(); }
 
   [[nodiscard]] bool in_session() const { return session_ != nullptr; }
   [[nodiscard]] const std::string& waiting_for() const { return waiting_for_; }

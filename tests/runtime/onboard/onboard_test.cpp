@@ -174,6 +174,25 @@ TEST(Onboard, AStopWhileItRestsIsConfirmedLatchesAndIsReleased) {
   EXPECT_TRUE(onboard.ask(walk).accepted());
 }
 
+TEST(Onboard, AStopWhileItRestsOutlivesAKillAtBothPaces) {
+  for (const char* pace : {"stepped", "wall"}) {
+    Onboard onboard(pace);
+    ASSERT_TRUE(onboard.start());
+    ASSERT_TRUE(onboard.take_baton());
+    ASSERT_TRUE(onboard.confirm().accepted());
+    v1::Command stop;
+    stop.mutable_stop();
+    (void)onboard.ask(stop);
+    const auto tripped = [](const v1::Status& s) { return s.robot_state() == v1::TRIPPED; };
+    ASSERT_TRUE(onboard.wait_until(tripped));
+    usleep(200'000);  // the record follows the trip
+    (void)onboard.end(SIGKILL);
+    ASSERT_TRUE(onboard.start()) << onboard.output();
+    EXPECT_TRUE(onboard.wait_until(tripped)) << pace;
+    EXPECT_EQ(onboard.end(SIGTERM), 0);
+  }
+}
+
 TEST(Onboard, ARepeatedIdIsOneCommandAlsoAfterARestart) {
   Onboard onboard;
   ASSERT_TRUE(onboard.start());

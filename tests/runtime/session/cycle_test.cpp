@@ -227,6 +227,15 @@ TEST(Cycle, TheCounterOfAllocationsCounts) {
   EXPECT_GT(test::allocations(), before) << taken.size();
 }
 
+TEST(Cycle, HeatThatTheCarriedStateDoesNotKnowIsNotAssumedAway) {
+  Rig rig;
+  v1::CarriedState state;
+  for (int j = 0; j + 1 < rig.robot.joint_count(); ++j) state.add_thermal(0.1);
+  ASSERT_TRUE(rig.cycle.restore(state, false));
+  EXPECT_EQ(rig.cycle.gate().thermal_worst(), 1.0);
+  EXPECT_EQ(rig.cycle.gate().thermal_state()[0], 0.1);
+}
+
 TEST(Cycle, SameWalkSameBitsAfterSaveAndRestore) {
   Rig first;
   ASSERT_TRUE(first.cycle.drives().carry_back(11));

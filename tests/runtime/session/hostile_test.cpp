@@ -87,7 +87,7 @@ class Life {
 
   void restore_heat() {
     v1::CarriedState state;
-    const int count = dice_.below(15);
+    const int count = robot_.joints_size() + dice_.below(3);
     for (int j = 0; j < count; ++j) state.add_thermal(dice_.one_in(2) ? dice_.hard(0.5) : 0.1);
     (void)cycle_.restore(state, false);
     ASSERT_TRUE(std::isfinite(cycle_.gate().thermal_worst()));
@@ -148,7 +148,7 @@ TEST(HostilePlugin, NothingItTellsAndNothingAnybodyDoesMovesATorqueBeyondTheRobo
     walked += life.walked;
   }
   EXPECT_GT(powered, kLives * kTicksOfALife / 10);
-  EXPECT_GT(releases, kLives * 5);
+  EXPECT_GT(releases, kLives * 2);
   EXPECT_GT(walked, kLives);
 }
 
