@@ -148,7 +148,7 @@ void FrameWatch::look(const Limits& limits, const SensorFrame& frame, bool frame
   look_for_possible(limits, frame, joint_count, found);
   look_for_age(limits, frame, frame_new, elapsed, found);
   // Also in a frame whose counter has not risen: its angles reach the fades and the policy all the same.
-  if (live) look_for_jumps(limits, frame, found);
+  if (live && frame_new) look_for_jumps(limits, frame, found);
   if (fresh_) {
     look_for_life(limits, frame, found);
     remember(frame, joint_count);

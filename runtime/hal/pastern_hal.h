@@ -48,7 +48,7 @@ typedef struct pastern_hal_frame {
   uint32_t struct_size; /* set by the caller to sizeof(pastern_hal_frame) */
   uint32_t joint_count;
   uint64_t counter; /* rises by one with every new frame */
-  int64_t time_ns;
+  int64_t time_ns;  /* of sampling; at wall pace, further from now than frame_stale_s: stale */
   double angle_rad[PASTERN_HAL_MAX_JOINTS];
   double speed_rad_s[PASTERN_HAL_MAX_JOINTS];
   double torque_nm[PASTERN_HAL_MAX_JOINTS];

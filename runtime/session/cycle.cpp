@@ -74,6 +74,7 @@ struct Cycle::Impl {
 
   // Steps of a tick, in order.
   [[nodiscard]] bool read() noexcept;
+  [[nodiscard]] bool timely() const noexcept;
   void estimate(bool fresh) noexcept;
   void steer() noexcept;
   [[nodiscard]] safety::Flags flags(bool fresh) const noexcept;
@@ -150,6 +151,15 @@ bool Cycle::Impl::read() noexcept {
     for (int j = 1; j < joint_count; ++j) winding_max_c = std::max(winding_max_c, frame.winding[j]);
   }
   return fresh;
+}
+
+// A plug-in whose frames queue up gives new ones without an end, each of them old. When torque is wanted such
+// a frame is no new one to the gate, whose stale watch finds it. As doubles: any number may stand in the
+// frame.
+bool Cycle::Impl::timely() const noexcept {
+  if (pace == Pace::stepped || motion == Motion::parked) return true;
+  const double age_s = (static_cast<double>(now.value) - static_cast<double>(frame.time.value)) * 1e-9;
+  return std::fabs(age_s) <= limits.frame_stale_s;
 }
 
 void Cycle::Impl::estimate(bool fresh) noexcept {
@@ -334,7 +344,7 @@ void Cycle::tick(safety::TimeNs due) noexcept {
   s.steer();
   const Torques<> wanted = control::pd_torques(s.gains, s.target, s.frame.angle, s.frame.speed);
   const safety::DriveCommand command =
-      s.gate.judge(s.frame, wanted, s.target.angle, s.flags(fresh), s.now, late_s);
+      s.gate.judge(s.frame, wanted, s.target.angle, s.flags(fresh && s.timely()), s.now, late_s);
   s.write_failed = !s.drives->write(command);
   if (!s.armed() || !command.torque_on()) s.signals.stopped_commands.fetch_add(1, std::memory_order_release);
   if (!(late_s <= s.limits.overrun_s)) ++s.overruns;

@@ -5,7 +5,10 @@
 //   fault=KIND      nan, lost, broken, mute (writes fail), estop, tilt, low_pack, hot; between the ticks
 //   at=N for=N      counted since the robot was put back on its mark
 //   only_draw=N     the fault comes only when draw % only_draw == 0
+//   late=N          frames say that they were sampled N ms earlier (wall pace)
 //   real=1          pretends to be real drives (another entry, see below)
+#include <time.h>
+
 #include <array>
 #include <cmath>
 #include <cstdint>
@@ -52,6 +55,8 @@ struct Puppet {
   std::uint64_t lasts{0};
   std::uint64_t only_draw{1};
   bool fresh{true};
+  bool stepped{true};
+  std::int64_t late_ns{0};
 };
 
 std::string option(const char* options, const std::string& key) {
@@ -106,6 +111,8 @@ void* open_puppet(const pastern_hal_config* config, char* error, size_t capacity
   puppet->lasts = std::strtoull(option(config->options, "for").c_str(), nullptr, 10);
   const std::string only = option(config->options, "only_draw");
   if (!only.empty()) puppet->only_draw = std::strtoull(only.c_str(), nullptr, 10);
+  puppet->stepped = config->stepped != 0;
+  puppet->late_ns = std::strtoll(option(config->options, "late").c_str(), nullptr, 10) * 1'000'000;
   puppet->body.winding.fill(20);
   put_back(*puppet, config->seed);
   return puppet;
@@ -121,7 +128,10 @@ int read_puppet(void* handle, pastern_hal_frame* frame) {
   puppet.fresh = false;
   frame->joint_count = puppet.joints;
   frame->counter = ++body.counter;
-  frame->time_ns = body.time_ns;
+  timespec now{};
+  clock_gettime(CLOCK_MONOTONIC, &now);
+  const std::int64_t wall_ns = static_cast<std::int64_t>(now.tv_sec) * 1'000'000'000 + now.tv_nsec;
+  frame->time_ns = puppet.stepped ? body.time_ns : wall_ns - puppet.late_ns;
   for (std::uint32_t j = 0; j < puppet.joints; ++j) {
     frame->angle_rad[j] = body.angle[j] + 1e-4 * noise(body);
     frame->speed_rad_s[j] = body.speed[j];

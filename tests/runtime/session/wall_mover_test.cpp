@@ -91,6 +91,20 @@ TEST(WallMover, AStopFromAnotherThreadEndsTheWalkAndIsReleased) {
   EXPECT_EQ(words, "nothing has tripped");
 }
 
+TEST(WallMover, FramesThatAreNewButOldAreStale) {
+  for (const char* late : {"late=700", "late=-700"}) {  // its frames are stale from 500 ms on
+    Rig rig(late);
+    (void)rig.mover->move(Motion::parked, 0.05, {});
+    MotionResult held = rig.mover->move(Motion::rise, 0, {});
+    if (!held.tripped) held = rig.mover->move(Motion::stand, 5, {});
+    EXPECT_TRUE(held.tripped);
+    EXPECT_EQ(held.trip.cause, safety::Cause::frame_stale);
+  }
+  Rig rig("late=5");  // a bus may take its time
+  (void)rig.mover->move(Motion::parked, 0.05, {});
+  EXPECT_TRUE(rig.mover->move(Motion::rise, 0, {}).completed);
+}
+
 TEST(WallMover, AReleaseClearsOnlyTheStopsThatItsOperatorHadSeen) {
   Signals signals;
   signals.stops_asked = 1;
