@@ -40,10 +40,12 @@ std::vector<std::string> commands_of(const std::string& markdown) {
   return commands;
 }
 
-/// Runs at the project's root with the built programs first in the path; output goes to `log`.
+/// Runs at the project's root with the built programs first in the path, on ports that the other tests leave
+/// alone; output goes to `log`.
 int run(const std::string& command, const std::string& log) {
-  const std::string whole = "cd '" + kRoot + "' && PATH='" + std::string(PASTERN_BINARY_DIR) +
-                            "/bin':$PATH " + command + " >'" + log + "' 2>&1 </dev/null";
+  const std::string whole = "cd '" + kRoot + "' && PASTERN_PORT=17741 PATH='" +
+                            std::string(PASTERN_BINARY_DIR) + "/bin':$PATH " + command + " >'" + log +
+                            "' 2>&1 </dev/null";
   const int status = std::system(whole.c_str());
   return WIFEXITED(status) ? WEXITSTATUS(status) : 128;
 }
