@@ -150,10 +150,10 @@ TEST_F(Train, ADamagedStateIsRefused) {
 TEST_F(Train, ASmallTrainingSeesThePolicyWalk) {
   TrainOptions options = tiny("small.policy");
   options.robot = test::robot_path("dunlin12");
-  options.settings.iterations = 16;
-  options.settings.directions = 24;
-  options.settings.step = 0.04;
-  options.settings.last_step = 0.02;
+  options.settings.iterations = 24;
+  options.settings.directions = 32;
+  options.settings.step = 0.025;
+  options.settings.last_step = 0.01;
   options.settings.look_every = 8;
   options.settings.look_walks = 24;
   options.walk_s = 2.5;
