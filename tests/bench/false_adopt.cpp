@@ -10,7 +10,10 @@
 int main(int argc, char** argv) {
   CLI::App app("Confirmations of a policy that is no better: how often is it adopted?");
   std::uint64_t seed = 1;
-  std::uint64_t count = 1000;
+  // An exact test with 8 pairs adopts 12 in 256 such policies. Over 1 000 confirmations the upper limit of
+  // that share is above 7 % in 13 of 100 runs by chance alone, over 2 000 in 1 of 100: the more, the less
+  // chance decides.
+  std::uint64_t count = 2000;
   unsigned threads = 2;
   bool quick = false;
   std::string robot = "dunlin12";
