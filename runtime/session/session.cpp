@@ -293,10 +293,13 @@ void Session::judge() {
   verdict.set_interval_level(interval_level);
   verdict.set_rule("confirmation: exact one-sided sign-flip test");
   std::string words = adopt ? "adopt: " : "keep the start policy: ";
-  words += text("the adapted policy earned %+.2f a walk (%.0f %% interval %+.2f to %+.2f)", effect,
-                100.0 * interval_level, interval.low, interval.high);
+  words += text("the adapted policy earned %.2f a walk", std::abs(effect)) +
+           (effect < 0 ? " less" : " more") + " than the start policy";
+  words += text(" (%.0f %% interval %+.2f to %+.2f)", 100.0 * interval_level, interval.low, interval.high);
   words += text(", p = %.4f at level %g, ", p, level) + std::to_string(differences_.size()) + " pairs";
-  if (!adopt) words += ": not told apart from chance";
+  // The interval's upper end is below zero exactly where the test the other way round is passed.
+  const bool worse = interval.high < 0;
+  if (!adopt) words += worse ? ": the adapted policy walks worse" : ": not told apart from chance";
   if (!search_ended_.empty()) words += "; " + search_ended_;
   verdict.set_words(words);
   verdict_ = verdict;

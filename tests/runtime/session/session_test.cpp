@@ -304,6 +304,25 @@ TEST(Session, FallsWithinTheConfirmationEndItAsKeep) {
   EXPECT_EQ(record.count(Part::confirmation_adapted), 2);
 }
 
+TEST(Session, AClearlyWorsePolicyIsCalledWorseAndAnUnclearOneIsNot) {
+  for (const bool clear : {true, false}) {
+    const SessionStart start = start_with(test::short_plan());
+    Session session(start);
+    Record record(start);
+    record.walk(session, [clear](const Order& order) {
+      const double aside = clear || order.batch > 0 ? -0.5 : 0.5;  // the first pair speaks for it
+      return walked(order.part == Part::search                 ? slope(order.parameters)
+                    : order.part == Part::confirmation_adapted ? 2 + aside
+                                                               : 2);
+    });
+    const std::string words = session.verdict()->words();
+    EXPECT_EQ(session.verdict()->kind(), v1::Verdict::KEEP);
+    EXPECT_EQ(session.verdict()->effect_high() < 0, clear) << words;
+    EXPECT_EQ(words.find("the adapted policy walks worse") != std::string::npos, clear) << words;
+    EXPECT_EQ(words.find("not told apart from chance") != std::string::npos, !clear) << words;
+  }
+}
+
 TEST(Session, MinutesLeaveRoomForTheConfirmation) {
   v1::Plan plan = test::short_plan();
   plan.set_search_walks(400);
