@@ -15,19 +15,27 @@ constexpr const char* kProcedure =
     "First start with a robot file. Pastern is not a certified safety function; local rules and the maker's\n"
     "instructions come first, and a person who is licensed to do this work decides.\n"
     "\n"
+    "Before you confirm (nothing moves until then):\n"
     " 1. Hang the robot on a gantry, feet clear of the ground. Nobody in reach of the legs, loose things "
     "away.\n"
     " 2. One person holds the emergency stop and does nothing else. Press it once before any torque:\n"
     "    `pastern status` must name emergency_stop. Turn it back, then `pastern release`.\n"
     " 3. Begin with low limits: a copy of the robot file with peak_torque_nm, slew_nm_per_s and\n"
-    "    speed_max_rad_per_s of every joint at a fifth or less. Raise them only after the steps below.\n"
-    " 4. Signs, one joint at a time, the others without torque: turn the joint by hand and compare the sign "
-    "of\n"
-    "    its angle with the robot file's axis; then a small torque, and see that it turns the same way.\n"
-    "    A wrong sign runs away: low limits and the hand on the emergency stop are what holds it.\n"
+    "    speed_max_rad_per_s of every joint at a fifth or less.\n"
+    " 4. Signs, one joint at a time, with the drives' own tool, the others without torque: turn the joint "
+    "by\n"
+    "    hand and compare the sign of its angle with the robot file's axis; then a small torque, and see "
+    "that\n"
+    "    it turns the same way. A wrong sign runs away: low limits and the hand on the emergency stop are\n"
+    "    what holds it.\n"
     " 5. Compare stance_rad and lying_rad with the robot's own poses, joint by joint.\n"
-    " 6. See both stops work while it hangs: `pastern stop`, then `pastern halt`; unplug the link once.\n"
-    " 7. Only then the floor: slack rope, lane clear, a short walk (`pastern walk --seconds 1`).\n";
+    "Once confirmed, still hanging:\n"
+    " 6. See both stops work: `pastern walk`, and within it `pastern stop`; again with `pastern halt`; "
+    "again\n"
+    "    with the link unplugged; again with the drives' bus cable pulled: they must damp by themselves\n"
+    "    within drive_timeout_s, be without torque half a second later, and stay so until released.\n"
+    " 7. Raise the limits in steps. A changed robot file is another file: it is confirmed anew.\n"
+    " 8. Only then the floor: slack rope, lane clear, a short walk (`pastern walk --seconds 1`).\n";
 
 class Confirm final : public LinkVerb {
  public:
@@ -76,7 +84,7 @@ bool Confirm::person_agrees(const std::string& robot, const std::string& hash) c
   const std::string wanted = hash_.empty() ? hash.substr(0, 8) : "yes";
   std::cout << (hash_.empty()
                     ? fmt::format("Type the first 8 digits of `sha256sum` of the robot file of {}: ", robot)
-                    : fmt::format("{} runs this very file ({}). Type yes when every step is done: ", robot,
+                    : fmt::format("{} runs this very file ({}). Type yes when steps 1 to 5 are done: ", robot,
                                   brief_hash(hash)))
             << std::flush;
   std::string typed;
@@ -84,9 +92,9 @@ bool Confirm::person_agrees(const std::string& robot, const std::string& hash) c
 }
 
 Exit Confirm::run_on(RobotLine& line) {
-  say(kProcedure);
   if (show_) {
-    suggest("confirm my.robot.txtpb", "when every step is done");
+    say(kProcedure);
+    suggest("confirm my.robot.txtpb", "when steps 1 to 5 are done");
     return Exit::done;
   }
   v1::Status status;
@@ -101,6 +109,7 @@ Exit Confirm::run_on(RobotLine& line) {
     complain("pastern confirm: no terminal to ask at: expected --yes-i-have-read");
     return Exit::usage;
   }
+  say(kProcedure);
   if (!yes_ && !person_agrees(status.robot(), status.robot_sha256_hex())) {
     complain("pastern confirm: not confirmed; nothing was sent");
     return Exit::refused;
@@ -109,7 +118,14 @@ Exit Confirm::run_on(RobotLine& line) {
   command.mutable_confirm_first_start()->set_robot_sha256_hex(status.robot_sha256_hex());
   command.mutable_confirm_first_start()->set_who(reach_.name);
   command.mutable_confirm_first_start()->set_read_procedure(true);
-  return command_and_suggest(line, command, "confirmed: written to the robot's journal");
+  exit = line.hold_baton();
+  if (exit != Exit::done) return exit;
+  v1::Answer answer;
+  exit = line.ask(command, answer);
+  if (exit != Exit::done) return exit;
+  say(answer.words().empty() ? "confirmed: written to the robot's journal" : answer.words());
+  suggest("walk --seconds 1", "still hanging: step 6; a session comes last");
+  return Exit::done;
 }
 
 }  // namespace
