@@ -49,6 +49,12 @@ struct Adoption {
 /// SHA-256 of the parameters as little-endian IEEE 754 doubles, in their order: 32 bytes.
 [[nodiscard]] std::string parameters_sha256(const Parameters& parameters);
 
+/// Key of put() and get() under which the onboard program writes when, on what and by whom a session was
+/// begun: "2026-01-31T12:00:00Z, simulated robot, stepped pace, by ida".
+[[nodiscard]] inline std::string begun_key(std::uint64_t session) {
+  return "begun." + std::to_string(session);
+}
+
 class Journal {
  public:
   /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, newer schema,

@@ -54,7 +54,7 @@ v1::Answer Program::act(const v1::Command& command, const Asked& asked) {
   const std::string& who = asked.who;
   switch (command.what_case()) {
     case v1::Command::kStartSession:
-      return start_session(command.start_session());
+      return start_session(command.start_session(), who);
     case v1::Command::kGo:
       return go();
     case v1::Command::kWalk:
@@ -78,7 +78,7 @@ v1::Answer Program::act(const v1::Command& command, const Asked& asked) {
   }
 }
 
-v1::Answer Program::start_session(const v1::StartSession& start) {
+v1::Answer Program::start_session(const v1::StartSession& start, const std::string& who) {
   if (runner_.in_session() || busy())
     return refused("the robot is busy; wait, or leave the session (pastern park)");
   files::Defects defects;
@@ -99,6 +99,7 @@ v1::Answer Program::start_session(const v1::StartSession& start) {
   }
   job_.kind = Job::Kind::session;
   job_.setup = std::move(setup);
+  job_.who = who;
   const bool by_go = plan->go_by() != v1::Plan::AUTO || !parts_.mover.simulated();
   return accepted("session begins, plan " + plan->name() +
                   (by_go ? "; each walk waits for go (pastern go)" : "; it walks by itself (pastern watch)"));
@@ -157,7 +158,8 @@ v1::Answer Program::park() {
   runner_.pause();
   if (!runner_.in_session()) return accepted("the robot is parked, or will be when its walk ends");
   return accepted(
-      "the robot parks after this walk and the session is left; go on with it later (pastern resume)");
+      "the robot parks, after its walk if it is in one, and the session is left; go on with it later "
+      "(pastern resume)");
 }
 
 // Empty sha: what the last verdict proposes.
@@ -187,7 +189,14 @@ v1::Answer Program::adopt(const v1::Adopt& adopt, const std::string& who) {
       files::parse_policy(*bytes, "policy " + *sha, parts_.robot, defects);
   const std::string path = parts_.journal_folder + "/" + kAdoptedFile;
   if (!policy || !files::write_durably(path, *bytes, 0644, defects)) return refused(first_line(defects));
-  const journal::Written written = parts_.journal.adopt(
+  // The history begins with the policy that the program was started with: the way back leads there.
+  journal::Written written{true, ""};
+  if (parts_.journal.adoptions().empty()) {
+    const std::string first = files::hex(parts_.policy.sha256());
+    written = parts_.journal.adopt({first, who, now_utc(), "was current before the first adoption"});
+  }
+  if (!written.ok) return refused(written.words);
+  written = parts_.journal.adopt(
       {*sha, who, now_utc(),
        adopt.policy_sha256().empty() ? "as the last verdict proposes" : "named by the operator"});
   if (!written.ok) return refused(written.words);
@@ -210,7 +219,7 @@ v1::Answer Program::confirm(const v1::ConfirmFirstStart& confirm, const std::str
   const journal::Written written = parts_.journal.confirm_first_start({found, name, now_utc()});
   if (!written.ok) return refused(written.words);
   on_note("first start with robot file " + found + " confirmed by " + name);
-  return accepted("first start confirmed by " + name + "; the robot may walk (pastern start)");
+  return accepted("first start confirmed by " + name + "; the robot may walk (pastern walk)");
 }
 
 v1::Answer Program::end_session(const std::string& who) {

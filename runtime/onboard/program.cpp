@@ -52,6 +52,7 @@ void Program::do_job() {
   const Job job = std::exchange(job_, Job{});
   session::Ended ended;
   running_ = true;
+  begun_by_ = job.who;
   switch (job.kind) {
     case Job::Kind::session:
       ended = runner_.run(*job.setup);
@@ -158,6 +159,16 @@ void Program::publish_missed() {
   }
   const std::optional<v1::Verdict> verdict = parts_.journal.verdict(row->session);
   if (verdict && (!verdict_told || !walk_told)) on_verdict(*verdict);
+}
+
+// Beside the record and no part of its digest: when, on what, by whom.
+void Program::on_begun(std::uint64_t session) {
+  const bool stepped = parts_.mover.pace() == session::Pace::stepped;
+  const std::string words = now_utc() + ", " +
+                            (parts_.mover.simulated() ? "simulated robot" : "real drives") + ", " +
+                            (stepped ? "stepped" : "wall") + " pace, by " + begun_by_;
+  (void)parts_.journal.put(journal::begun_key(session), words)
+      .ok;  // a failed journal stops the session itself
 }
 
 void Program::on_episode(const v1::Episode& episode) {

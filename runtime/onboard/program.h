@@ -46,6 +46,7 @@ class Program final : public session::Hooks {
   void serve() override;
   bool wait(const std::string& what) override;
   bool leave() override { return parts_.leaving.asked.load(std::memory_order_acquire); }
+  void on_begun(std::uint64_t session) override;
   void on_episode(const v1::Episode& episode) override;
   void on_verdict(const v1::Verdict& verdict) override;
   void on_note(const std::string& words) override;
@@ -57,6 +58,7 @@ class Program final : public session::Hooks {
     std::optional<session::SessionSetup> setup;
     double duration_s{0};
     std::uint64_t draw{0};
+    std::string who;
   };
 
   void rest_when_asked();
@@ -70,7 +72,7 @@ class Program final : public session::Hooks {
   // commands.cpp
   void answer(const Asked& asked, const v1::Command& command);
   [[nodiscard]] v1::Answer act(const v1::Command& command, const Asked& asked);
-  [[nodiscard]] v1::Answer start_session(const v1::StartSession& start);
+  [[nodiscard]] v1::Answer start_session(const v1::StartSession& start, const std::string& who);
   [[nodiscard]] v1::Answer go();
   [[nodiscard]] v1::Answer walk(const v1::Walk& walk);
   [[nodiscard]] v1::Answer mark_void(const v1::MarkVoid& mark);
@@ -93,6 +95,7 @@ class Program final : public session::Hooks {
   link::Server* server_{nullptr};
   Job job_;
   bool running_{false};
+  std::string begun_by_;  ///< who asked for the session that runs
   std::uint64_t sequence_{0};
   std::uint64_t reserved_{0};
   std::string snapshot_;  // of the journal, while it is fetched in pieces

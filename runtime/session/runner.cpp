@@ -91,6 +91,7 @@ Ended Runner::run(const SessionSetup& setup) {
   }
   if (written.ok) written = journal_.begin_session(row);
   if (!written.ok) return {Ended::How::failed, words_of("session not begun", written)};
+  hooks_.on_begun(row.session);
   clock_base_ns_ = 0;
   if (!begin(setup, row.session)) return leave_session(Ended::How::interrupted, "the record does not fit");
   return loop();

@@ -35,6 +35,8 @@ class Hooks {
   }
   /// True: leave the session in order as soon as the robot is parked.
   [[nodiscard]] virtual bool leave() { return false; }
+  /// A new session is in the journal; its first walk has not begun.
+  virtual void on_begun(std::uint64_t session) { (void)session; }
   virtual void on_episode(const v1::Episode& episode) { (void)episode; }
   virtual void on_verdict(const v1::Verdict& verdict) { (void)verdict; }
   virtual void on_note(const std::string& words) { (void)words; }

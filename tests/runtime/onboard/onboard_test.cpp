@@ -68,6 +68,12 @@ TEST(Onboard, RunsASessionToItsVerdictAndAdopts) {
   EXPECT_EQ(onboard.client().fetch(fetch)->bytes(), bytes);
   EXPECT_EQ(onboard.end(SIGTERM), 0) << onboard.output();
   EXPECT_NE(onboard.output().find("stopped in order"), std::string::npos);
+  std::string error;
+  const auto journal = journal::Journal::open(onboard.journal_folder(), error, "", true);
+  ASSERT_TRUE(journal) << error;
+  ASSERT_EQ(journal->adoptions().size(), 2U) << "the way back leads to the policy it was started with";
+  EXPECT_EQ(journal->adoptions()[0].policy_sha256_hex, onboard.policy_sha());
+  EXPECT_NE(journal->get(journal::begun_key(1)).value_or("").find(" pace, by "), std::string::npos);
 
   ASSERT_TRUE(onboard.start());
   EXPECT_EQ(onboard.status().policy_sha256_hex(), files::hex(verdict->adapted_sha256()));
