@@ -8,6 +8,7 @@
 #include <iterator>
 #include <regex>
 
+#include "runtime/journal/journal.h"
 #include "tests/tools/run.h"
 #include "tests/tools/synthetic.h"
 
@@ -117,7 +118,7 @@ TEST_F(ReportTest, MeansAreThoseOfTheWalksInItsOwnTable) {
   int rows = 0;
   double told = 0;
   const std::regex walk("^ +[0-9]+ +confirm, adapted +completed +(-?[0-9.]+) .*");
-  const std::regex mean("^ +confirmation, adapted policy +8 +0 +(-?[0-9.]+) .*");
+  const std::regex mean("^ +confirmation, adapted policy +8 +0 +0 +(-?[0-9.]+) .*");
   for (const std::string& line : lines) {
     std::smatch match;
     if (std::regex_match(line, match, walk)) sum += std::stod(match[1]), ++rows;
@@ -149,6 +150,30 @@ TEST_F(ReportTest, SessionWithoutConfirmationOrEndIsToldAsSuch) {
   const Ran ran = run({"report", "--journal", other.path(), "--text"});
   EXPECT_EQ(ran.exit, 0);
   EXPECT_NE(ran.out.find("No verdict: the session has not ended."), std::string::npos);
+}
+
+TEST_F(ReportTest, ClearlyWorseIsSaidAtTheHead) {
+  Story story;
+  story.search_walks = 0;
+  story.gain = -0.6;
+  write(story);
+  EXPECT_NE(text().find("Keep the start policy: the adapted one walks worse."), std::string::npos);
+}
+
+TEST_F(ReportTest, ASimulatedRobotIsNotTakenForARealOne) {
+  write_usual();
+  const std::string real = text();
+  EXPECT_EQ(real.find("simulated"), std::string::npos);
+  EXPECT_NE(real.find("Not adopted yet. Next: pastern adopt"), std::string::npos);
+  std::string error;
+  const auto journal = journal::Journal::open(folder_.path(), error);
+  ASSERT_TRUE(journal) << error;
+  const std::string begun = "2026-03-01T10:00:00Z, simulated robot, stepped pace, by ida";
+  ASSERT_TRUE(journal->put(journal::begun_key(1), begun).ok);
+  const std::string simulated = text();
+  EXPECT_NE(simulated.find(", begun " + begun), std::string::npos);
+  EXPECT_NE(simulated.find("better on this simulated robot"), std::string::npos);
+  EXPECT_NE(simulated.find("no proof for a real one"), std::string::npos);
 }
 
 TEST_F(ReportTest, WhatIsNotAJournalIsOneLineAndAFile) {

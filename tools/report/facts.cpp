@@ -87,6 +87,7 @@ Means means_of(const std::vector<const v1::Episode*>& walks) {
   for (const v1::Episode* walk : walks) {
     const v1::EpisodeSummary& summary = walk->summary();
     means.falls += walk->outcome() == v1::FELL ? 1 : 0;
+    means.left_lane += walk->outcome() == v1::LEFT_LANE ? 1 : 0;
     add(means.terms, walk->terms(), share);
     means.speed_m_per_s += share * summary.mean_speed_m_per_s();
     means.distance_m += share * summary.distance_m();
@@ -148,6 +149,8 @@ std::optional<Facts> gather(const journal::Journal& journal, std::uint64_t sessi
   facts.plan = files::parse_plan(row->plan_text, "plan", ignored);
   facts.verdict = journal.verdict(row->session);
   for (const auto& finished : journal.finished(row->session)) facts.walks.push_back(finished.episode);
+  facts.begun = journal.get(journal::begun_key(row->session)).value_or("");
+  facts.simulated = facts.begun.substr(0, facts.begun.find(", by ")).find("simulated") != std::string::npos;
   facts.digest = journal.digest(row->session);
   facts.notes = journal.notes(row->session);
   facts.adoptions = journal.adoptions();

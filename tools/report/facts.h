@@ -25,6 +25,7 @@ struct Pair {
 struct Means {
   std::size_t walks{0};
   std::size_t falls{0};
+  std::size_t left_lane{0};
   v1::ReturnTerms terms;
   double speed_m_per_s{0};
   double distance_m{0};
@@ -39,6 +40,8 @@ struct Means {
 struct Facts {
   std::string source;
   journal::SessionRow row;
+  std::string begun;      ///< when, on what, by whom; empty in a record that does not say
+  bool simulated{false};  ///< as `begun` says
   std::string digest;
   std::optional<v1::Plan> plan;
   std::optional<v1::Verdict> verdict;

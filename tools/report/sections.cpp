@@ -31,9 +31,25 @@ std::string robot_name(const Facts& facts) {
 std::string headline(const Facts& facts) {
   if (!facts.verdict) return "No verdict: the session has not ended.";
   if (facts.verdict->kind() == v1::Verdict::ADOPT)
-    return "Adopt the adapted policy: it walks better on this robot, here.";
+    return fmt::format("Adopt the adapted policy: it walks better on this {}robot, here.",
+                       facts.simulated ? "simulated " : "");
   if (facts.verdict->pairs() == 0) return "Keep the start policy: there was no confirmation.";
+  if (facts.verdict->effect_high() < 0) return "Keep the start policy: the adapted one walks worse.";
   return "Keep the start policy: the adapted one is not shown to be better.";
+}
+
+/// What is current on the robot because of this session, and what to do.
+std::string next_step(const Facts& facts) {
+  if (!facts.verdict) return "Next: pastern resume goes on after the last finished walk.";
+  for (const journal::Adoption& one : facts.adoptions) {
+    if (one.policy_sha256_hex != facts.adapted_sha256_hex) continue;
+    const bool still = facts.adoptions.back().policy_sha256_hex == one.policy_sha256_hex;
+    return fmt::format("Adopted by {}, {}{}.", one.who, one.when_utc,
+                       still ? "" : "; since then another policy was made current");
+  }
+  return facts.verdict->kind() == v1::Verdict::ADOPT
+             ? "Not adopted yet. Next: pastern adopt makes it current; until then the robot walks as before."
+             : "Nothing was adopted: the robot walks as before.";
 }
 
 /// What the verdict rests on, in sentences.
@@ -53,24 +69,32 @@ std::vector<std::string> grounds(const Facts& facts) {
   const std::size_t counted = facts.walks.size() - facts.count(v1::VOID);
   lines.push_back(fmt::format("{} walks counted: {} fell, {} left the lane; {} void besides.", counted,
                               facts.count(v1::FELL), facts.count(v1::LEFT_LANE), facts.count(v1::VOID)));
+  lines.push_back(next_step(facts));
   return lines;
 }
 
-void cautions(Document& document) {
-  document.cautions().rows = {{"Pastern is not a certified safety function. Local rules, the maker's "
-                               "instructions and licensed practice come first."},
-                              {"The verdict holds for this robot, this site and this day: the load, floor, "
-                               "pack and wear under which it walked. "
-                               "When one of them changes, walk again before you rely on it."},
-                              {"After adopting, first walk with the lane clear and a hand on the emergency "
-                               "stop. The way back: pastern adopt --back."}};
+void cautions(Document& document, const Facts& facts) {
+  Block& block = document.cautions();
+  if (facts.simulated) {
+    block.rows.push_back(
+        {"A simulated robot walked this session: a rehearsal, and no proof for a real one."});
+  }
+  const std::vector<std::vector<std::string>> always = {
+      {"Pastern is not a certified safety function. Local rules, the maker's "
+       "instructions and licensed practice come first."},
+      {"The verdict holds for this robot, this site and this day: the load, floor, "
+       "pack and wear under which it walked. "
+       "When one of them changes, walk again before you rely on it."},
+      {"After adopting, first walk with the lane clear and a hand on the emergency "
+       "stop. The way back: pastern adopt --back."}};
+  block.rows.insert(block.rows.end(), always.begin(), always.end());
 }
 
 void part_row(Block& table, const char* name, const Means& means) {
   if (means.walks == 0) return;
   table.rows.push_back({name, fmt::format("{}", means.walks), fmt::format("{}", means.falls),
-                        two(means.terms.total()), dash_if(means.walks < 2, two(means.spread)),
-                        two(means.speed_m_per_s)});
+                        fmt::format("{}", means.left_lane), two(means.terms.total()),
+                        dash_if(means.walks < 2, two(means.spread)), two(means.speed_m_per_s)});
 }
 
 void returns_section(Document& document, const Facts& facts) {
@@ -78,7 +102,7 @@ void returns_section(Document& document, const Facts& facts) {
   document.figure("Return of every walk, in the order in which they were walked.", returns_chart(facts));
   Block& table =
       document.table("Means over the walks that count; spread is the standard deviation from walk to walk.",
-                     {"part", "walks", "falls", "return", "spread", "speed m/s"});
+                     {"part", "walks", "falls", "left lane", "return", "spread", "speed m/s"});
   part_row(table, "baseline, start policy", means_of(facts.counted(v1::BASELINE)));
   part_row(table, "search", means_of(facts.counted(v1::SEARCH)));
   part_row(table, "confirmation, start policy", means_of(facts.counted(v1::CONFIRMATION_START)));
@@ -89,7 +113,8 @@ void returns_section(Document& document, const Facts& facts) {
     document.paragraph(fmt::format(
         "The start policy itself moved by {} between baseline and confirmation: that much is heat, pack, "
         "floor or "
-        "chance. It cannot pass for progress, because both policies of a pair walked one after the other.",
+        "chance. It cannot pass for progress, because both policies of a pair walked one after the other, in "
+        "random order.",
         signed_two(means_of(again).terms.total() - means_of(baseline).terms.total())));
   }
 }
@@ -137,6 +162,7 @@ void walking_section(Document& document, const Facts& facts) {
   };
   row("walks", fmt::format("{}", before.walks), fmt::format("{}", after.walks));
   row("falls", fmt::format("{}", before.falls), fmt::format("{}", after.falls));
+  row("left the lane", fmt::format("{}", before.left_lane), fmt::format("{}", after.left_lane));
   row("speed, m/s", two(before.speed_m_per_s), two(after.speed_m_per_s));
   row("distance along the lane, m", two(before.distance_m), two(after.distance_m));
   row("aside at the end, m", two(before.aside_m), two(after.aside_m));
@@ -277,10 +303,11 @@ void walks_section(Document& document, const Facts& facts) {
 
 Document report_of(const Facts& facts) {
   Document document;
-  document.title = fmt::format("Session {} of {}", facts.row.session, robot_name(facts));
+  document.title = fmt::format("Session {} of {}{}{}", facts.row.session, robot_name(facts),
+                               facts.begun.empty() ? "" : ", begun ", facts.begun);
   document.verdict = headline(facts);
   document.lines = grounds(facts);
-  cautions(document);
+  cautions(document, facts);
   returns_section(document, facts);
   walking_section(document, facts);
   terms_section(document, facts);

@@ -125,8 +125,12 @@ void Sheet::mark(Mark mark, Point at, double size) {
 }
 
 void Sheet::text(Point at, const std::string& words, Align align, double size, bool bold) {
-  body_ += fmt::format("<text x=\"{:.1f}\" y=\"{:.1f}\" text-anchor=\"{}\" font-size=\"{:g}\"{}>{}</text>\n",
-                       at.x, at.y, anchor(align), size, bold ? " font-weight=\"600\"" : "", xml(words));
+  // Bold words may stand among marks: a white rim keeps them legible.
+  body_ += fmt::format(
+      "<text x=\"{:.1f}\" y=\"{:.1f}\" text-anchor=\"{}\" font-size=\"{:g}\"{}>{}</text>\n", at.x, at.y,
+      anchor(align), size,
+      bold ? " font-weight=\"600\" paint-order=\"stroke\" stroke=\"#fff\" stroke-width=\"4\"" : "",
+      xml(words));
 }
 
 void Sheet::text_up(Point at, const std::string& words, double size) {
