@@ -83,6 +83,8 @@ class Follower {
   bool single_done_{false};
   bool silent_{false};
   bool introduced_{false};
+  std::optional<std::chrono::steady_clock::time_point>
+      baton_wanted_;      ///< since when the session waits for it
   std::string prompted_;  ///< what was last asked for
 };
 
@@ -165,7 +167,7 @@ void Follower::notice(const v1::Status& status) {
   progress_.update(status_.walks_done(), status_.walks_planned(), last_word_);
   if (introduced_ || choice_.json || choice_.quiet || !running) return;
   introduced_ = true;
-  say(fmt::format("session {} on {} ({}, {} pace), {} walks at the most as planned", status_.session(),
+  say(fmt::format("session {} on {} ({}, {} pace), {} walks planned at the most", status_.session(),
                   status_.robot(), status_.simulated() ? "simulated" : "real drives", status_.pace(),
                   status_.walks_planned()));
 }
@@ -176,7 +178,14 @@ bool Follower::ours() const { return status_.session() != 0 && status_.session()
 /// A baton that lapsed (this computer or the way to the robot was too slow) is taken up again. At wall pace
 /// the robot has tripped for it and moves no more before a person releases it.
 void Follower::keep_baton() {
-  const bool lapsed = line_.client().baton() == 0 || (ours() && status_.waiting_for() == "baton");
+  const auto now = std::chrono::steady_clock::now();
+  if (!ours() || status_.waiting_for() != "baton")
+    baton_wanted_.reset();
+  else if (!baton_wanted_)
+    baton_wanted_ = now;
+  // A status may be older than the baton that is held here.
+  const bool wanted = baton_wanted_ && now - *baton_wanted_ > std::chrono::milliseconds(500);
+  const bool lapsed = line_.client().baton() == 0 || wanted;
   if (!choice_.commander || line_.baton_shared() || !lapsed) return;
   wipe_progress();
   complain("the baton had lapsed: no sign of life reached the robot in time; taking it up again");
@@ -210,9 +219,11 @@ void Follower::prompt() {
 
 void Follower::send(const v1::Command& command, const std::string& done) {
   v1::Answer answer;
-  if (line_.ask(command, answer) == Exit::done)
-    say("      " + (answer.words().empty() ? done : answer.words()));
-  prompted_.clear();
+  const bool accepted = line_.ask(command, answer) == Exit::done;
+  if (accepted) say("      " + (answer.words().empty() ? done : answer.words()));
+  // Asked for again when it was refused or a walk was taken back. After a go nobody must be asked for one
+  // until the walk is over: the status may lag, and the lane is no longer safe.
+  if (!accepted || command.has_mark_void()) prompted_.clear();
 }
 
 void Follower::obey(const std::string& typed) {
@@ -262,6 +273,7 @@ Exit Follower::close(Exit exit) {
     // The robot still lowers itself; its status may lag.
     *status_.mutable_verdict() = *verdict_;
     status_.set_session_part(v1::ENDED);
+    status_.clear_waiting_for();
   }
   if (choice_.json) return exit;
   if (!verdict_ && status_.has_verdict() && status_.session_part() == v1::ENDED && !choice_.single) {
@@ -270,7 +282,8 @@ Exit Follower::close(Exit exit) {
   if (exit == Exit::tripped && prompted_.empty()) say("tripped: " + trip_words(status_.trip()));
   if (exit == Exit::refused) say("the session is interrupted; its finished walks are on disk");
   if (verdict_) say(verdict_line(*verdict_));
-  if (!choice_.brief) suggest_after(status_);
+  const bool told = exit == Exit::tripped && !prompted_.empty();  // the prompt named what to do
+  if (!choice_.brief && !told) suggest_after(status_);
   return exit;
 }
 

@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <cmath>
 
+#include "proto/files/sha256.h"
 #include "tools/pastern/follow.h"
 #include "tools/pastern/words.h"
 
@@ -148,7 +149,8 @@ std::string status_text(const v1::Status& status) {
   } else {
     fact("session", "none");
   }
-  if (status.has_verdict()) fact("verdict", verdict_line(status.verdict()));
+  if (status.has_verdict())
+    fact("verdict", verdict_line(status.verdict()).substr(std::string("verdict: ").size()));
   fact("cycle", fmt::format("{} ticks, {} overruns{}", status.ticks(), status.overruns(),
                             status.scheduling().empty() ? "" : "; " + status.scheduling()));
   fact("software", status.software());
@@ -190,7 +192,8 @@ void suggest_after(const v1::Status& status) {
     suggest("resume", "takes the baton up again; the session goes on");
   } else if (status.session_part() == v1::INTERRUPTED) {
     suggest("resume", "goes on with the interrupted session");
-  } else if (ended && status.verdict().kind() == v1::Verdict::ADOPT) {
+  } else if (ended && status.verdict().kind() == v1::Verdict::ADOPT &&
+             status.policy_sha256_hex() != files::hex(status.verdict().adapted_sha256())) {
     suggest("adopt", "makes the adapted policy current; `pastern report` first shows why");
   } else if (ended) {
     suggest("report --out report.html", "the session as one page");

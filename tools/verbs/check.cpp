@@ -181,6 +181,10 @@ Judged Check::judge(const std::string& path) const {
   Judged judged;
   judged.path = path;
   judged.kind = kind_of(path);
+  if (access(path.c_str(), R_OK) != 0 && judged.kind != Kind::unknown) {
+    judged.defects.push_back({path, "", "no file that can be read", "one"});
+    return judged;
+  }
   switch (judged.kind) {
     case Kind::robot:
       judge_robot(judged);

@@ -166,8 +166,11 @@ Exit Keys::list() const {
 Exit Keys::judge_arguments() {
   std::string missing;
   if (what_ != "list" && who_.empty()) missing = what_ == "trust" ? "the robot's .public file" : "a NAME";
-  if (what_ == "allow" && file_.empty()) missing = "--file NAME.public";
-  if (what_ == "allow" && may_.empty()) missing = "--may watch or --may command";
+  const auto add = [&missing](const char* word) {
+    missing += (missing.empty() ? "" : ", ") + std::string(word);
+  };
+  if (what_ == "allow" && file_.empty()) add("--file NAME.public");
+  if (what_ == "allow" && may_.empty()) add("--may watch or --may command");
   if (!missing.empty()) {
     complain(fmt::format("pastern keys {}: expected {}", what_, missing));
     return Exit::usage;

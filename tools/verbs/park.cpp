@@ -1,5 +1,6 @@
 // park: lowers the robot and takes the torque off.
 #include "tools/pastern/link_verb.h"
+#include "tools/pastern/words.h"
 
 namespace pastern::tools {
 namespace {
@@ -15,7 +16,23 @@ class Park final : public LinkVerb {
 
  protected:
   Exit run_on(RobotLine& line) override {
-    return command_and_suggest(line, command_of(&v1::Command::mutable_park), "parking");
+    Exit exit = line.hold_baton();
+    if (exit != Exit::done) return exit;
+    v1::Status status;
+    exit = line.status(status);
+    if (exit != Exit::done) return exit;
+    v1::Answer answer;
+    exit = line.ask(command_of(&v1::Command::mutable_park), answer);
+    if (exit != Exit::done) return exit;
+    say(answer.words().empty() ? "parking" : answer.words());
+    const v1::SessionPart part = status.session_part();
+    const bool running = part == v1::IN_BASELINE || part == v1::IN_SEARCH || part == v1::IN_CONFIRMATION;
+    if (running) {
+      suggest("resume", "goes on with the session, when it is time");
+    } else {
+      suggest_after(status);
+    }
+    return Exit::done;
   }
 };
 
