@@ -214,7 +214,10 @@ void Session::take_search(const Committed<Evaluation>& evaluation, double total)
 
 void Session::end_search(const std::string& why) {
   search_ended_ = why;
-  if (adapted() == given_.start) {
+  if (search_done_ == 0 && why.empty()) {
+    keep("nothing was searched: a batch of " + std::to_string(operator_->batch().size()) +
+         " walks does not fit into the plan's " + std::to_string(given_.plan.search_walks()));
+  } else if (adapted() == given_.start) {
     keep(why.empty() ? "the search found nothing better than the start policy"
                      : why + " and had found nothing better than the start policy");
   } else if (!why.empty() && falls_ >= given_.plan.max_falls() && !improved()) {

@@ -36,7 +36,9 @@ Exit press(RobotLine& line, bool halt, double patience_s) {
     const auto answer = line.ask_quietly(command, std::min(left, 1.0));
     ++tries;
     if (answer && !answer->accepted()) {
-      complain(fmt::format("{}: REFUSED by the robot: {}. {}", name, answer->words(), kByHand));
+      const std::string& words = answer->words();
+      const std::string said = words.rfind("refused: ", 0) == 0 ? words.substr(9) : words;
+      complain(fmt::format("{}: REFUSED by the robot: {}. {}", name, said, kByHand));
       return Exit::refused;
     }
     if (answer && answer->confirmed()) {

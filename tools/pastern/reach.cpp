@@ -142,7 +142,8 @@ Exit RobotLine::hold_baton() {
     taken = client_->take_baton(why);
   }
   if (!taken) {
-    complain(fmt::format("pastern {}: the baton was refused: {}", verb_, why));
+    const std::string said = why.rfind("refused: ", 0) == 0 ? why.substr(9) : why;
+    complain(fmt::format("pastern {}: the baton was refused: {}", verb_, said));
     return Exit::refused;
   }
   note_baton();

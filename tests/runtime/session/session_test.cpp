@@ -337,6 +337,19 @@ TEST(Session, MinutesLeaveRoomForTheConfirmation) {
   EXPECT_NE(session.verdict()->words().find("leave time"), std::string::npos) << session.verdict()->words();
 }
 
+TEST(Session, AnEmptySearchIsNotCalledAFruitlessOne) {
+  v1::Plan plan = test::short_plan(v1::Adaptation::ES_GRADIENT);
+  plan.set_search_walks(4);
+  plan.mutable_adaptation()->set_batch(3);
+  const SessionStart start = start_with(plan);
+  Session session(start);
+  Record record(start);
+  record.walk(session, on_the_slope());
+  ASSERT_TRUE(session.verdict());
+  EXPECT_NE(session.verdict()->words().find("nothing was searched: a batch of 6 walks"), std::string::npos)
+      << session.verdict()->words();
+}
+
 TEST(Session, ABatchThatDoesNotFitIsNotBegun) {
   v1::Plan plan = test::short_plan(v1::Adaptation::ES_GRADIENT);
   plan.set_search_walks(10);
