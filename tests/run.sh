@@ -25,7 +25,7 @@ step() {
 # build DIR TARGET cmake-arguments...
 build() {
   dir=$1; target=$2; shift 2
-  cmake -S . -B "$dir" -G Ninja "$@" && cmake --build "$dir" -j "$jobs" --target "$target"
+  cmake -S . -B "$dir" -G Ninja "$@" && cmake --build "$dir" -j "$jobs" --target "$target" -- -k 0
 }
 
 # tests NAME DIR ctest-arguments...: prints ctest's closing lines, which count the tests.
