@@ -22,6 +22,7 @@
 
 #include "hal_stub/robot/advance.h"
 #include "hal_stub/robot/model.h"
+#include "hal_stub/robot/period.h"
 #include "hal_stub/robot/robot_state.h"
 #include "hal_stub/robot/site.h"
 #include "safety/frames.h"
@@ -142,11 +143,11 @@ class SimulatedRobot {
 
   void take_site();
   void switch_on();
-  void place(const std::vector<double>& pose, double scatter, std::uint64_t draw);
+  void place(const std::vector<double>& pose, std::uint64_t draw);
   void hear();
   void hold_stance();
   void tell_drives();
-  [[nodiscard]] double bounded(std::size_t joint, double torque) const;
+  [[nodiscard]] Hold<double> hold_of(std::size_t joint) const;
   void apply_faults();
   void apply_drive_fault(const Fault& fault);
   [[nodiscard]] Vec3<double> push_now() const;

@@ -4,6 +4,7 @@
 #include <cmath>
 #include <limits>
 
+#include "hal_stub/robot/period.h"
 #include "hal_stub/robot/random.h"
 #include "hal_stub/robot/simulated_robot.h"
 
@@ -31,8 +32,6 @@ class Noise {
   std::size_t used_{4};
   Words words_{};
 };
-
-double saturated(double value, double range) { return std::clamp(value, -range, range); }
 
 }  // namespace
 
@@ -72,7 +71,7 @@ void SimulatedRobot::add_noise(const Sample& from, safety::SensorFrame& frame) c
     const auto j = static_cast<std::size_t>(joint);
     const double angle =
         from.angle[j] + site_.zero_offset_rad[j] + k * sensors.angle_noise_rad() * noise.next();
-    frame.angle[joint] = step > 0 ? round_even(angle * per_step) * step : angle;
+    frame.angle[joint] = step > 0 ? quantised(angle, step, per_step) : angle;
     frame.speed[joint] = from.speed[j] + k * sensors.speed_noise_rad_per_s() * noise.next();
     frame.torque[joint] = from.torque[j] + k * sensors.torque_noise_nm() * noise.next();
     frame.winding[joint] = from.winding[j];

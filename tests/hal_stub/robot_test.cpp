@@ -172,6 +172,24 @@ TEST_P(Robot, RestoredGoesOnLikeOneNeverInterrupted) {
   EXPECT_EQ(first.save(), second.save());
 }
 
+// Over a slow bus the first frames tell of the mark that the robot was placed on, never of a pose before.
+TEST_P(Robot, LateFramesBeginWithThePlacing) {
+  Site site = nominal_site(*model_);
+  site.sensor_delay_s = 0.004;
+  site.sensor_noise_ratio = 0;
+  SimulatedRobot robot(model_, site, 5);
+  robot.place_standing(3);
+  const double step = model_->sensors().encoder_step_rad();
+  for (int tick = 0; tick < 5; ++tick) {
+    safety::SensorFrame frame;
+    ASSERT_TRUE(robot.read(frame));
+    for (int j = 0; j < model_->joint_count(); ++j) {
+      EXPECT_NEAR(frame.angle[j], model_->stance()[static_cast<std::size_t>(j)], step) << "tick " << tick;
+    }
+    robot.step();
+  }
+}
+
 TEST_P(Robot, RefusesAStateOfAnotherRobotOrSite) {
   SimulatedRobot robot(model_, nominal_site(*model_), 1);
   const auto other_model =

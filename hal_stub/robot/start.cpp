@@ -1,0 +1,134 @@
+// Scalar double; the same numbers whoever asks.
+#include "hal_stub/robot/start.h"
+
+#include <algorithm>
+#include <cmath>
+
+#include "hal_stub/robot/random.h"
+
+namespace pastern::stub {
+namespace {
+
+constexpr double kPushEarliestSeconds = 0.5;  // since a walk could begin
+constexpr double kPushLatestSeconds = 4.5;
+
+/// Rotation by a rotation vector.
+Rotation<double> rotation_by(const std::array<double, 3>& v) {
+  const double angle = std::sqrt(v[0] * v[0] + v[1] * v[1] + v[2] * v[2]);
+  const double k = angle > 0 ? std::sin(angle / 2) / angle : 0.5;
+  return rotation_of(Quat<double>{std::cos(angle / 2), v[0] * k, v[1] * k, v[2] * k});
+}
+
+/// The trunk with a point load rigidly on it.
+TrunkFigures<double> loaded_trunk(const LinkFigures<double>& trunk, double load,
+                                  const std::array<double, 3>& at) {
+  const Vec3<double> where{at[0], at[1], at[2]};
+  const double mass = trunk.mass + load;
+  const Vec3<double> centre = (trunk.centre * trunk.mass + where * load) * (1 / mass);
+  const Vec3<double> d = where - trunk.centre;
+  const double m =
+      trunk.mass * load / mass;  // reduced mass: parallel-axis terms of both about the common centre
+  const auto& i = trunk.inertia;
+  return {
+      mass,
+      centre,
+      {i.xx + m * (d.y * d.y + d.z * d.z), i.yy + m * (d.x * d.x + d.z * d.z),
+       i.zz + m * (d.x * d.x + d.y * d.y), i.xy - m * d.x * d.y, i.xz - m * d.x * d.z, i.yz - m * d.y * d.z}};
+}
+
+}  // namespace
+
+SiteFigures<double> figures_of(const Model& model, const Site& site) {
+  const auto& base = model.figures();
+  SiteFigures<double> made;
+  auto& around = made.around;
+  around.trunk = loaded_trunk(base.tree.trunk, site.load_kg, site.load_at_m);
+  around.ground = {{-std::sin(site.slope_rad), 0, std::cos(site.slope_rad)},
+                   site.friction,
+                   site.ground_stiffness_n_per_m,
+                   site.ground_damping_n_s_per_m};
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
+    made.drives.strength[j] = site.strength[j];
+    made.drives.damping[j] = site.damping_nm_s_per_rad[j];
+    made.drives.coulomb[j] = site.coulomb_nm[j];
+    made.drives.half_gap[j] = site.backlash_rad[j] / 2;
+  }
+  made.drives.ambient = site.ambient_c;
+  made.pack.open_scale = 0;
+  made.pack.resistance = base.pack.resistance * site.pack_resistance_ratio;
+  return made;
+}
+
+RobotState<double> switch_on(const Model& model, const Site& site, PackSite<double>& pack) {
+  RobotState<double> state;
+  const double ratio = site.pack_voltage_ratio;
+  state.pack.charge = std::clamp(0.7 + 1.5 * (ratio - 1), 0.15, 1.0);
+  state.pack.voltage = ratio * model.figures().pack.nominal;
+  pack.open_scale = state.pack.voltage / open_voltage(state.pack.charge);
+  for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
+    state.drives.winding[j] = site.winding_start_c;
+    state.drives.housing[j] = site.winding_start_c;
+  }
+  return state;
+}
+
+Vec3<double> rate_bias_of(const Model& model, const Site& site, std::uint64_t seed) {
+  const double sd = model.sensors().rate_bias_rad_per_s() * site.sensor_noise_ratio;
+  const Words a = random_words(seed, 0, 0, Chance::robot, 0);
+  const Words b = random_words(seed, 0, 0, Chance::robot, 1);
+  return {sd * normal_of(a[0], a[1]), sd * normal_of(a[2], a[3]), sd * normal_of(b[0], b[1])};
+}
+
+Rotation<double> imu_axes_of(const Site& site) { return rotation_by(site.imu_tilt_rad); }
+
+void place_in(const Model& model, const Site& site, const std::vector<double>& pose, std::uint64_t seed,
+              std::uint64_t draw, RobotState<double>& state) {
+  const double scatter = site.start_scatter_rad;
+  const auto& tree = model.figures().tree;
+  std::array<double, safety::kMaxJoints> angle{};
+  state.body = {};
+  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
+    for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[l].joint_count); ++i) {
+      const auto& joint = tree.leg[l].joint[i];
+      const auto j = static_cast<std::size_t>(joint.order);
+      const Words w = random_words(seed, draw, 0, Chance::place, static_cast<std::uint32_t>(j) + 1);
+      angle[j] = std::clamp(pose[j] + scatter * normal_of(w[0], w[1]), joint.angle_min, joint.angle_max);
+      state.body.angle[l][i] = angle[j];
+      state.drives.rotor_angle[j] = angle[j];
+      state.drives.rotor_speed[j] = 0;
+      state.drives.torque[j] = 0;
+    }
+  }
+  const Words w = random_words(seed, draw, 0, Chance::place, 0);
+  const double yaw = scatter * normal_of(w[0], w[1]);
+  const double half = -site.slope_rad / 2;  // nose up the slope
+  const Quat<double> slope{std::cos(half), 0, std::sin(half), 0};
+  state.body.attitude = slope * Quat<double>{std::cos(yaw / 2), 0, 0, std::sin(yaw / 2)};
+  const double sink =
+      model.mass_kg() * tree.gravity / site.ground_stiffness_n_per_m / std::max(1, tree.leg_count);
+  const double height = reach_below(tree, angle.data(), {0, 0, -1}) - sink;
+  const Vec3<double> normal{-std::sin(site.slope_rad), 0, std::cos(site.slope_rad)};
+  state.body.position = normal * height;
+}
+
+Push push_of(const Model& model, const Site& site, std::uint64_t seed, std::uint64_t draw) {
+  const Words p = random_words(seed, draw, 0, Chance::push, 0);
+  const Words q = random_words(seed, draw, 0, Chance::push, 1);
+  const double mass = model.mass_kg() + site.load_kg;
+  const double size = site.push_m_per_s * normal_of(p[0], p[1]) * mass / kPushSeconds;
+  const double way = 2 * std::numbers::pi * uniform_of(p[2]);
+  return {{size * std::cos(way), size * std::sin(way), 0},
+          kPushEarliestSeconds + (kPushLatestSeconds - kPushEarliestSeconds) * uniform_of(q[0])};
+}
+
+std::size_t sensor_delay_ticks(const Model& model, const Site& site) {
+  return static_cast<std::size_t>(std::lround(site.sensor_delay_s / model.period_s()));
+}
+
+long command_delay_ticks(const Model& model, const Site& site, double chance) {
+  double late = site.command_delay_s;
+  if (site.command_jitter_s > 0) late += site.command_jitter_s * chance;
+  return std::lround(late / model.period_s());
+}
+
+}  // namespace pastern::stub
