@@ -1,7 +1,7 @@
 #!/bin/sh
 # Installs what is missing, builds, and runs every test. Quiet on success, clear on failure; works offline once the packages are there.
-#   sh tests/run.sh            everything: release, ASan+UBSan, TSan, formatting, clang-tidy
-#   sh tests/run.sh STAGE...   some of: release asan tsan format tidy
+#   sh tests/run.sh            everything: release, ASan+UBSan, TSan, fuzzers, formatting, clang-tidy
+#   sh tests/run.sh STAGE...   some of: release asan tsan fuzz format tidy
 set -eu
 cd "$(dirname "$0")/.."
 sh tools/install-packages.sh
@@ -51,6 +51,14 @@ tsan() {
     tests tests-tsan build/tsan -L threads
 }
 
+# A minute each, two at a time; seconds by PASTERN_FUZZ_SECONDS.
+fuzz() {
+  step build-fuzz build build/fuzz fuzz_targets -DCMAKE_BUILD_TYPE=Sanitizer -DPASTERN_FUZZ=ON -DCMAKE_CXX_COMPILER=clang++ \
+    -DCMAKE_C_COMPILER=clang
+  step fuzz sh -c "ls build/fuzz/corpus | xargs -P $jobs -I NAME build/fuzz/bin/fuzz_NAME -max_total_time=${PASTERN_FUZZ_SECONDS:-60} \
+    -timeout=20 -rss_limit_mb=2048 -verbosity=0 -artifact_prefix=build/logs/fuzz_NAME- build/fuzz/corpus/NAME"
+}
+
 format() {
   step format sh -c "git ls-files '*.h' '*.cpp' '*.c' | xargs clang-format --dry-run --Werror"
 }
@@ -66,11 +74,11 @@ tidy() {
   git rev-parse HEAD >build/tidy-base
 }
 
-[ $# -gt 0 ] || set -- release asan tsan format tidy
+[ $# -gt 0 ] || set -- release asan tsan fuzz format tidy
 for stage in "$@"; do
   case $stage in
-    release | asan | tsan | format | tidy) "$stage" ;;
-    *) echo "tests/run.sh: unknown stage '$stage': expected release, asan, tsan, format or tidy" >&2; exit 2 ;;
+    release | asan | tsan | fuzz | format | tidy) "$stage" ;;
+    *) echo "tests/run.sh: unknown stage '$stage': expected release, asan, tsan, fuzz, format or tidy" >&2; exit 2 ;;
   esac
 done
 echo "all passed"
