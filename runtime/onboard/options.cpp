@@ -70,7 +70,9 @@ bool take(const std::string& name, const std::string& value, Options& options, s
   for (const Option& option : table()) {
     if (option.name != name) continue;
     if (option.take(value, options)) return true;
-    error = name + ": found \"" + value + "\", expected " + std::string(option.expected);
+    error = name;
+    error += ": found \"" + value + "\", expected ";
+    error += option.expected;
     return false;
   }
   error = "found " + name + ", expected an option that is known; see pastern-onboard --help";

@@ -122,7 +122,7 @@ void Program::show_status(bool to_all) {
   v1::Telemetry telemetry = numbered();
   status.set_last_sequence(telemetry.sequence());
   *telemetry.mutable_status() = status;
-  publish(std::move(telemetry), false);
+  publish(telemetry, false);
 }
 
 v1::Telemetry Program::numbered() {
@@ -135,7 +135,7 @@ v1::Telemetry Program::numbered() {
   return telemetry;
 }
 
-void Program::publish(v1::Telemetry telemetry, bool kept) {
+void Program::publish(const v1::Telemetry& telemetry, bool kept) {
   if (kept) (void)parts_.journal.store_telemetry(telemetry).ok;
   if (server_ != nullptr) server_->publish(telemetry);
 }
@@ -174,14 +174,14 @@ void Program::on_begun(std::uint64_t session) {
 void Program::on_episode(const v1::Episode& episode) {
   v1::Telemetry telemetry = numbered();
   *telemetry.mutable_episode() = episode;
-  publish(std::move(telemetry), true);
+  publish(telemetry, true);
   show_status(false);
 }
 
 void Program::on_verdict(const v1::Verdict& verdict) {
   v1::Telemetry telemetry = numbered();
   *telemetry.mutable_verdict() = verdict;
-  publish(std::move(telemetry), true);
+  publish(telemetry, true);
 }
 
 void Program::on_note(const std::string& words) {
@@ -189,7 +189,7 @@ void Program::on_note(const std::string& words) {
   std::fflush(stdout);
   v1::Telemetry telemetry = numbered();
   telemetry.set_note(words);
-  publish(std::move(telemetry), true);
+  publish(telemetry, true);
 }
 
 }  // namespace pastern::onboard

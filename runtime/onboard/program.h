@@ -65,7 +65,7 @@ class Program final : public session::Hooks {
   void show_status(bool to_all);
   void do_job();
   [[nodiscard]] v1::Telemetry numbered();
-  void publish(v1::Telemetry telemetry, bool kept);
+  void publish(const v1::Telemetry& telemetry, bool kept);
   void publish_missed();
   [[nodiscard]] bool busy() const { return running_ || job_.kind != Job::Kind::none; }
 
