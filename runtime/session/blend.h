@@ -1,4 +1,4 @@
-// A smooth way from one pose to another. Cycle thread; no heap.
+// A smooth way from one pose to another, and what comes before a walk. Cycle thread; no heap.
 #pragma once
 
 #include <cstdint>
@@ -6,6 +6,11 @@
 #include "runtime/types/body.h"
 
 namespace pastern::session {
+
+/// Before its rise the robot lies parked for so long, for the gate's filters to see where it is ...
+inline constexpr double kOnTheMark_s = 0.1;
+/// ... and after its rise it stands for so long before it walks.
+inline constexpr double kStand_s = 0.5;
 
 /// Minimum-jerk course of time (Flash and Hogan, J. Neurosci. 5(7), 1985, eq. 1 for rest to rest):
 /// 10 t^3 - 15 t^4 + 6 t^5 for t in [0, 1]; clamped outside.

@@ -1,12 +1,11 @@
 // One walk: on the mark -> cool -> rise -> stand -> walk -> settle -> lower -> on disk; and
 // what is done about trips.
+#include "runtime/session/blend.h"
 #include "runtime/session/runner.h"
 
 namespace pastern::session {
 namespace {
 
-constexpr double kStand_s = 0.5;
-constexpr double kOnTheMark_s = 0.1;  // parked, for the gate's filters to see where the robot is
 constexpr double kCoolStep_s = 1.0;
 constexpr double kLongestCool_s = 3600.0;
 constexpr double kLongestPack_s = 600.0;

@@ -3,11 +3,13 @@
 
 #include <cmath>
 #include <numbers>
+#include <string>
 #include <vector>
 
 #include "runtime/control/pd.h"
 #include "runtime/episode/recorder.h"
 #include "runtime/policy/policy_parts.h"
+#include "runtime/session/blend.h"
 #include "safety/clamps.h"
 #include "tools/train/draws.h"
 #include "tools/train/sites.h"
@@ -46,8 +48,12 @@ struct WalkSetting::Parts {
   control::Gains<double> gains;
   episode::Weights weights;
   std::vector<Clamps> clamps;
+  JointAngles<> stance;
   double lane_half_width_m{0};
   double period_s{0};
+  int parked_ticks{0};  // before the walk, as in a session: on the mark, then up, then standing
+  int rise_ticks{0};
+  int stand_ticks{0};
   int ticks{0};           // of a walk
   int ticks_per_step{0};  // of the policy
 };
@@ -67,8 +73,15 @@ std::shared_ptr<const WalkSetting> WalkSetting::make(const v1::Robot& robot, con
   parts.weights = episode::weights_of(robot);
   parts.period_s = 1 / robot.cycle_hz();
   parts.lane_half_width_m = robot.lane().half_width_m();
-  for (const v1::Joint& joint : robot.joints()) parts.clamps.push_back(clamps_of(joint, parts.period_s));
-  parts.ticks = static_cast<int>(std::lround(walk_s * robot.cycle_hz()));
+  for (int j = 0; j < robot.joints_size(); ++j) {
+    parts.clamps.push_back(clamps_of(robot.joints(j), parts.period_s));
+    parts.stance[j] = robot.joints(j).stance_rad();
+  }
+  const auto ticks = [&robot](double s) { return static_cast<int>(std::lround(s * robot.cycle_hz())); };
+  parts.parked_ticks = ticks(session::kOnTheMark_s);
+  parts.rise_ticks = ticks(robot.rise_s());
+  parts.stand_ticks = ticks(session::kStand_s);
+  parts.ticks = ticks(walk_s);
   parts.ticks_per_step = static_cast<int>(std::lround(robot.cycle_hz() / policy.rate_hz()));
   return setting;
 }
@@ -84,6 +97,14 @@ struct WalkCourse::Work {
   BodyEstimate<> body;
   JointTarget<> target;
   safety::Torques<> torque;
+  // How the last lot's robot stood before its walk: the next trial may be of the same lot.
+  struct {
+    bool known{false};
+    Lot lot;
+    std::string robot;
+    safety::SensorFrame frame;
+    safety::Torques<> torque;
+  } stood;
   double roll_error{0};
   double pitch_error{0};
   // Yaw, place and speed count from the start's own place and heading, as the estimator's do.
@@ -125,21 +146,89 @@ void attitude_of(Work& work) {
   work.body.rate = work.frame.rate;
 }
 
+// A lost frame leaves the last one standing.
 template <class Work>
-void begin(Work& work, const stub::Site& site, const Lot& lot) {
+void read(Work& work) {
+  static_cast<void>(work.robot.read(work.frame));
+}
+
+template <class Parts, class Work>
+void drive(const Parts& parts, Work& work) {
+  const auto wanted = control::pd_torques(parts.gains, work.target, work.frame.angle, work.frame.speed);
+  for (int j = 0; j < parts.gains.joint_count; ++j) {
+    work.torque[j] = clamped(parts.clamps[static_cast<std::size_t>(j)], wanted[j], work.frame.angle[j],
+                             work.frame.speed[j], work.torque[j]);
+  }
+  work.robot.command(work.torque, true);
+  work.robot.step();
+}
+
+template <class Parts, class Work>
+void rise(const Parts& parts, Work& work) {
+  for (int tick = 0; tick < parts.parked_ticks; ++tick) {
+    read(work);
+    work.robot.command({}, false);
+    work.robot.step();
+  }
+  JointAngles<> from;
+  for (int tick = 0; tick < parts.rise_ticks; ++tick) {
+    read(work);
+    if (tick == 0) from = work.frame.angle;
+    const double share = session::smooth_share(static_cast<double>(tick + 1) / parts.rise_ticks);
+    work.target.angle = session::between(from, parts.stance, share, parts.gains.joint_count);
+    drive(parts, work);
+  }
+}
+
+template <class Parts, class Work>
+void stand(const Parts& parts, Work& work) {
+  work.target.angle = parts.stance;
+  for (int tick = 0; tick < parts.stand_ticks; ++tick) {
+    read(work);
+    drive(parts, work);
+  }
+}
+
+// As a session brings its robot to a walk. How the feet grip and how the trunk sags after a rise is felt all
+// through the walk: a robot put down in its stance drifts less. One that does not get up by itself is put on
+// its feet.
+template <class Parts, class Work>
+void come_to_stand(const Parts& parts, Work& work, std::uint64_t draw) {
+  work.robot.place_lying(draw);
+  work.torque = {};
+  work.frame = {};
+  rise(parts, work);
+  stand(parts, work);
+  if (!work.robot.fallen()) return;
+  work.robot.place_standing(draw);
+  work.torque = {};
+  stand(parts, work);
+}
+
+template <class Parts, class Work>
+void begin(const Parts& parts, Work& work, const SiteChoice& choose, const Lot& lot) {
   Draws draws(lot.seed, Purpose::walk, lot.number);
-  work.robot.renew(site, draws.word64());
-  work.robot.place_standing(draws.word64());
+  const std::uint64_t seed = draws.word64();
+  const std::uint64_t draw = draws.word64();
   work.roll_error = kAttitudeError_rad * draws.normal();
   work.pitch_error = kAttitudeError_rad * draws.normal();
+  work.robot.renew(choose(*parts.model, lot), seed);
+  std::string error;
+  auto& stood = work.stood;
+  const bool again = stood.known && stood.lot.seed == lot.seed && stood.lot.number == lot.number;
+  if (again && work.robot.restore(stood.robot, error)) {
+    work.frame = stood.frame;
+    work.torque = stood.torque;
+  } else {
+    come_to_stand(parts, work, draw);
+    stood = {true, lot, work.robot.save(), work.frame, work.torque};
+  }
   const stub::Truth truth = work.robot.truth();
   work.yaw = truth.yaw_rad;
   work.cosine = std::cos(truth.yaw_rad);
   work.sine = std::sin(truth.yaw_rad);
   work.x = truth.position_m[0];
   work.y = truth.position_m[1];
-  work.torque = {};
-  work.frame = {};
 }
 
 }  // namespace
@@ -147,12 +236,11 @@ void begin(Work& work, const stub::Site& site, const Lot& lot) {
 Score WalkCourse::run(const Parameters& parameters, const Lot& lot) {
   const WalkSetting::Parts& parts = *setting_->parts_;
   Work& work = *work_;
-  begin(work, choose_(*parts.model, lot), lot);
+  begin(parts, work, choose_, lot);
   episode::ReturnSums<double> sums;
   Score score;
   for (int tick = 0; tick < parts.ticks; ++tick) {
-    // A lost frame leaves the last one standing.
-    static_cast<void>(work.robot.read(work.frame));
+    read(work);
     if (tick % parts.ticks_per_step == 0) {
       attitude_of(work);
       const double phase = tick * parts.period_s * parts.shape.gait_hz;
@@ -160,13 +248,7 @@ Score WalkCourse::run(const Parameters& parameters, const Lot& lot) {
           policy::evaluate(parts.shape, parameters.data(), work.scratch, work.body, work.frame.angle,
                            work.frame.speed, policy::gait_phase(phase - std::floor(phase)));
     }
-    const auto wanted = control::pd_torques(parts.gains, work.target, work.frame.angle, work.frame.speed);
-    for (int j = 0; j < parts.gains.joint_count; ++j) {
-      work.torque[j] = clamped(parts.clamps[static_cast<std::size_t>(j)], wanted[j], work.frame.angle[j],
-                               work.frame.speed[j], work.torque[j]);
-    }
-    work.robot.command(work.torque, true);
-    work.robot.step();
+    drive(parts, work);
     place_of(work);
     const double power = episode::joint_power(work.frame.torque, work.frame.speed, parts.gains.joint_count);
     episode::add(sums, {work.body.velocity.x, power, work.body.position.y, work.body.yaw_rad}, parts.weights,

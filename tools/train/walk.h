@@ -1,6 +1,6 @@
 // One walk in process: the simulated robot's own sensors and drives, the same policy, PD, torque clamps and
-// return as on the robot, without the gate's latches, estimator or session. Attitude is the true one with an
-// error that stays for the walk.
+// return as on the robot, without the gate's latches, estimator or session. It begins as a walk of a session
+// does: lying on the mark, rise, stand. Attitude is the true one with an error that stays for the walk.
 #pragma once
 
 #include <functional>

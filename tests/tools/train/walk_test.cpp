@@ -40,6 +40,7 @@ TEST(Walk, IsAFunctionOfItsLotWhateverWasWalkedBefore) {
   const Score other = course.run(ground.trot, {1, 6});
   const Score again = course.run(ground.trot, {1, 5});
   EXPECT_TRUE(same(first, again));
+  EXPECT_TRUE(same(course.run(ground.trot, {1, 5}), first)) << "straight after a walk of the same lot";
   EXPECT_FALSE(same(first, other));
   EXPECT_TRUE(same(course.another()->run(ground.trot, {1, 5}), first));
 }
