@@ -2,6 +2,7 @@
 #include "runtime/episode/recorder.h"
 
 #include <limits>
+#include <numbers>
 
 #include "proto/files/geometry.h"
 
@@ -24,7 +25,8 @@ double mass_kg(const v1::Robot& robot) {
 }  // namespace
 
 FallRule fall_rule_of(const v1::Robot& robot) {
-  return {robot.return_weights().fall_tilt_rad(), kLowShare * files::stance_height(robot),
+  const double tilt = robot.return_weights().fall_tilt_rad();
+  return {tilt, tilt < std::numbers::pi ? std::cos(tilt) : -2, kLowShare * files::stance_height(robot),
           robot.lane().half_width_m()};
 }
 
@@ -33,7 +35,7 @@ double tilt_rad(double roll_rad, double pitch_rad) noexcept {
 }
 
 bool fell(const FallRule& rule, const BodyEstimate<>& body) noexcept {
-  const bool upright = tilt_rad(body.roll_rad, body.pitch_rad) <= rule.tilt_rad;
+  const bool upright = std::cos(body.roll_rad) * std::cos(body.pitch_rad) >= rule.least_upright;
   const bool high = body.position.z >= rule.least_height_m;
   return !(upright && high);
 }
@@ -58,8 +60,9 @@ bool cost_of_transport(double energy_j, double mass_kg, double distance_m, doubl
 }
 
 EpisodeRecorder::EpisodeRecorder(const v1::Robot& robot, double longest_s)
-    : weights_(weights_of(robot)), mass_kg_(mass_kg(robot)) {
+    : weights_(weights_of(robot)), mass_kg_(mass_kg(robot)), joint_count_(robot.joints_size()) {
   samples_.reserve(static_cast<std::size_t>(longest_s / kTracePeriod) + 2);
+  angles_.reserve(samples_.capacity() * static_cast<std::size_t>(joint_count_));
   begin();
 }
 
@@ -71,13 +74,14 @@ void EpisodeRecorder::begin() noexcept {
   pack_min_v_ = std::numeric_limits<double>::infinity();
   ticks_ = clamped_ticks_ = targets_clipped_ = 0;
   samples_.clear();
+  angles_.clear();
 }
 
-void EpisodeRecorder::add(const TickRecord& tick, double dt_s) noexcept {
+void EpisodeRecorder::add(const TickRecord& tick, const JointAngles<>& angle, double dt_s) noexcept {
   const BodyEstimate<>& body = tick.body;
   // Half a tick of slack: sums of dt are not exact.
   if (duration_s_ + 0.5 * dt_s >= kTracePeriod * static_cast<double>(samples_.size())) {
-    keep_sample(body);
+    keep_sample(body, angle);
   }
   const TickScore<double> score{body.velocity.x, tick.power_w, body.position.y, body.yaw_rad};
   episode::add(sums_, score, weights_, dt_s);
@@ -95,12 +99,13 @@ void EpisodeRecorder::add(const TickRecord& tick, double dt_s) noexcept {
   targets_clipped_ += static_cast<std::uint64_t>(std::max(tick.targets_clipped, 0));
 }
 
-void EpisodeRecorder::keep_sample(const BodyEstimate<>& body) noexcept {
-  if (samples_.size() < samples_.capacity()) {
-    samples_.push_back({static_cast<float>(duration_s_), static_cast<float>(body.position.x),
-                        static_cast<float>(body.position.y), static_cast<float>(body.roll_rad),
-                        static_cast<float>(body.pitch_rad), static_cast<float>(body.velocity.x)});
-  }
+void EpisodeRecorder::keep_sample(const BodyEstimate<>& body, const JointAngles<>& angle) noexcept {
+  if (samples_.size() == samples_.capacity()) return;
+  samples_.push_back({static_cast<float>(duration_s_), static_cast<float>(body.position.x),
+                      static_cast<float>(body.position.y), static_cast<float>(body.position.z),
+                      static_cast<float>(body.roll_rad), static_cast<float>(body.pitch_rad),
+                      static_cast<float>(body.yaw_rad), static_cast<float>(body.velocity.x)});
+  for (int j = 0; j < joint_count_; ++j) angles_.push_back(static_cast<float>(angle[j]));
 }
 
 EpisodeReturn EpisodeRecorder::terms(bool fell) const { return episode::terms(sums_, weights_, fell); }
@@ -138,7 +143,10 @@ v1::Trace EpisodeRecorder::trace() const {
     trace.add_roll_rad(sample.roll_rad);
     trace.add_pitch_rad(sample.pitch_rad);
     trace.add_speed_m_per_s(sample.speed_m_per_s);
+    trace.add_height_m(sample.height_m);
+    trace.add_yaw_rad(sample.yaw_rad);
   }
+  trace.mutable_joint_angle_rad()->Add(angles_.begin(), angles_.end());
   return trace;
 }
 

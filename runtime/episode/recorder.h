@@ -24,7 +24,9 @@ template <class S>
 
 /// When a walk is over early. A value that is not a number counts as fallen.
 struct FallRule {
-  double tilt_rad{0};        ///< of the body's z axis from the vertical
+  double tilt_rad{0};  ///< of the body's z axis from the vertical
+  double least_upright{
+      1};  ///< its cosine: what a tick compares, without an arc cosine; -2 beyond half a turn
   double least_height_m{0};  ///< half of the trunk's height over the feet in the stance
   double lane_half_width_m{0};
 };
@@ -60,8 +62,9 @@ class EpisodeRecorder {
 
   /// A new walk. No heap.
   void begin() noexcept;
-  /// The caller stops adding at a fall: nothing is earned after it. No heap.
-  void add(const TickRecord& tick, double dt_s) noexcept;
+  /// The caller stops adding at a fall: nothing is earned after it. `angle`: as the encoders gave it. No
+  /// heap.
+  void add(const TickRecord& tick, const JointAngles<>& angle, double dt_s) noexcept;
 
   [[nodiscard]] double duration_s() const noexcept { return duration_s_; }
   [[nodiscard]] EpisodeReturn terms(bool fell) const;
@@ -71,12 +74,13 @@ class EpisodeRecorder {
 
  private:
   struct Sample {
-    float time_s, x_m, y_m, roll_rad, pitch_rad, speed_m_per_s;
+    float time_s, x_m, y_m, height_m, roll_rad, pitch_rad, yaw_rad, speed_m_per_s;
   };
-  void keep_sample(const BodyEstimate<>& body) noexcept;
+  void keep_sample(const BodyEstimate<>& body, const JointAngles<>& angle) noexcept;
 
   Weights weights_;
   double mass_kg_{0};
+  int joint_count_{0};
   ReturnSums<double> sums_;
   double duration_s_{0};
   double pack_energy_j_{0};
@@ -91,6 +95,7 @@ class EpisodeRecorder {
   std::uint64_t clamped_ticks_{0};
   std::uint64_t targets_clipped_{0};
   std::vector<Sample> samples_;  // reserved once, never grown
+  std::vector<float> angles_;    // joint order, a row a sample; likewise
 };
 
 }  // namespace pastern::episode

@@ -238,7 +238,7 @@ void Cycle::Impl::score(bool clamped) noexcept {
   record.winding_max_c = winding_max_c;
   record.clamped = clamped;
   record.targets_clipped = clipped;
-  recorder.add(record, period_s);
+  recorder.add(record, frame.angle, period_s);
   if (episode::left_lane(fall_rule, body)) outcome = Outcome::left_lane;
 }
 

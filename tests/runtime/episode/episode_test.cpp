@@ -160,7 +160,7 @@ TEST(Recorder, FiguresOfAWalkByHand) {
   const v1::Robot robot = shipped_robot("dunlin12").robot();
   EpisodeRecorder recorder(robot);
   for (int tick = 0; tick < 5000; ++tick) {
-    recorder.add(record_at(tick), 0.001);
+    recorder.add(record_at(tick), {}, 0.001);
   }
   const v1::EpisodeSummary summary = recorder.summary();
   EXPECT_NEAR(summary.duration_s(), 5, 1e-9);
@@ -192,22 +192,40 @@ TEST(Recorder, TraceIsAtFiftyHertzWhateverTheCycle) {
     EpisodeRecorder recorder(robot);
     const int ticks = static_cast<int>(std::lround(5 / dt_s));
     for (int tick = 0; tick < ticks; ++tick) {
-      recorder.add(record_at(tick), dt_s);
+      recorder.add(record_at(tick), {}, dt_s);
     }
     const v1::Trace trace = recorder.trace();
     ASSERT_EQ(trace.time_s_size(), 250) << dt_s;
     ASSERT_EQ(trace.x_m_size(), 250);
     ASSERT_EQ(trace.speed_m_per_s_size(), 250);
+    ASSERT_EQ(trace.height_m_size(), 250);
+    ASSERT_EQ(trace.yaw_rad_size(), 250);
     for (int i = 0; i < 250; ++i) {
       EXPECT_NEAR(trace.time_s(i), 0.02 * i, 0.51 * dt_s + 1e-6);
     }
   }
 }
 
+TEST(Recorder, TraceHoldsTheJointsAnglesRowByRow) {
+  const v1::Robot robot = shipped_robot("dunlin8").robot();
+  EpisodeRecorder recorder(robot, 1.0);
+  JointAngles<> angle;
+  for (int tick = 0; tick < 2000; ++tick) {  // longer than foreseen
+    for (int j = 0; j < 8; ++j) angle[j] = tick + 0.125 * j;
+    recorder.add(record_at(tick), angle, 0.001);
+  }
+  const v1::Trace trace = recorder.trace();
+  ASSERT_EQ(trace.joint_angle_rad_size(), 8 * trace.time_s_size());
+  for (int i = 0; i < trace.time_s_size(); ++i) {
+    EXPECT_EQ(trace.joint_angle_rad(8 * i + 7) - trace.joint_angle_rad(8 * i), 0.875F);
+    EXPECT_NEAR(trace.joint_angle_rad(8 * i), 1000 * trace.time_s(i), 1);
+  }
+}
+
 TEST(Recorder, AWalkLongerThanForeseenKeepsItsFiguresAndLosesOnlyTrace) {
   EpisodeRecorder recorder(shipped_robot("dunlin8").robot(), 1.0);
   for (int tick = 0; tick < 3000; ++tick) {
-    recorder.add(record_at(tick), 0.001);
+    recorder.add(record_at(tick), {}, 0.001);
   }
   EXPECT_NEAR(recorder.summary().duration_s(), 3, 1e-9);
   EXPECT_GE(recorder.trace().time_s_size(), 50);
@@ -217,7 +235,7 @@ TEST(Recorder, AWalkLongerThanForeseenKeepsItsFiguresAndLosesOnlyTrace) {
 TEST(Recorder, BeginForgetsAndNothingAddedIsNothingSaid) {
   EpisodeRecorder recorder(shipped_robot("dunlin8").robot());
   for (int tick = 0; tick < 100; ++tick) {
-    recorder.add(record_at(tick), 0.001);
+    recorder.add(record_at(tick), {}, 0.001);
   }
   recorder.begin();
   EXPECT_EQ(recorder.trace().time_s_size(), 0);
@@ -234,7 +252,7 @@ TEST(Recorder, ARobotThatDidNotMoveHasNoCostOfTransport) {
   TickRecord record;
   record.body = upright();
   record.power_w = 50;
-  recorder.add(record, 0.001);
+  recorder.add(record, {}, 0.001);
   EXPECT_FALSE(recorder.summary().moved_forward());
   EXPECT_EQ(recorder.summary().cost_of_transport(), 0);
 }

@@ -74,7 +74,7 @@ TEST(Stages, TakeNoMemoryOnceTheyAreMade) {
       episode::TickRecord record;
       record.body = body;
       record.power_w = episode::joint_power(torque, frame.speed, 12);
-      recorder.add(record, 0.001);
+      recorder.add(record, {}, 0.001);
       sum += torque[1];
     }
     EXPECT_EQ(taken - before, 0);
