@@ -3,34 +3,10 @@
 // the matrix through each point's own Jacobian, so the arrow stays; stable far beyond the explicit limit.
 #pragma once
 
+#include "hal_stub/dynamics/ground.h"
 #include "hal_stub/dynamics/motion.h"
 
 namespace pastern::stub {
-
-/// A plane through the world's origin. Normal in world axes.
-template <class S>
-struct Ground {
-  Vec3<S> normal{S(0), S(0), S(1)};
-  S friction{S(0.8)};
-  S stiffness{S(24000)};  ///< N/m
-  S damping{S(400)};      ///< N s/m
-};
-
-/// Where the ground lies, seen from the trunk.
-template <class S>
-struct Below {
-  Vec3<S> normal;  ///< trunk axes
-  S height;        ///< of the trunk's origin, along the normal
-};
-
-/// What a point meets in a step.
-template <class S>
-struct Footing {
-  const Ground<S>& ground;
-  const Below<S>& below;
-  Constant<S> stick_speed;
-  Constant<S> dt;
-};
 
 /// What a point does in this step: force f = push - B v', B = along n n' + across (1 - n n'), all zero when
 /// it is free.
@@ -41,20 +17,21 @@ struct Touch {
   S excess;       ///< along - across
 };
 
-/// `grip`: normal force of the step before.
-template <class S>
-inline Touch<S> touch_of(const Footing<S>& on, const S& depth, const Vec3<S>& velocity,
-                         const S& grip) noexcept {
+/// `grip`: normal force of the step before. `On`: PlainFooting or ShapedFooting.
+template <class On, class S>
+inline Touch<S> touch_of(const On& on, const Lie<S>& lie, const Vec3<S>& velocity, const S& grip) noexcept {
   using C = Constant<S>;
   const auto& ground = on.ground;
-  const auto& normal = on.below.normal;
-  const S along = ground.stiffness * on.dt + ground.damping;
+  const auto& normal = lie.normal;
+  const S along = ground.stiffness * on.dt + damping_at(on, lie.depth);
   const S normal_speed = dot(velocity, normal);
-  const S push = ground.stiffness * depth - along * normal_speed;
-  const auto free = !((depth > S(0)) & (push > S(0)));
+  const S push = ground.stiffness * lie.depth - along * normal_speed;
+  const auto free = !((lie.depth > S(0)) & (push > S(0)));
   const Vec3<S> slide = velocity - normal * normal_speed;
-  const S speed = max(sqrt(dot(slide, slide)), S(on.stick_speed));
-  const S across = select(free, S(0), ground.friction * grip * (C(1) / speed));
+  const S sliding = sqrt(dot(slide, slide));
+  const S speed = max(sliding, ground.stick_speed);
+  const S friction = friction_at(on, lie.friction, sliding);
+  const S across = select(free, S(0), friction * grip * (C(1) / speed));
   const S held = select(free, S(0), push);
   return {normal * held - slide * across, across, select(free, S(0), along) - across};
 }
@@ -137,9 +114,9 @@ inline void press_leg(const Touch<S>& touch, const Vec3<S>& normal, const Vec3<S
 }
 
 /// Normal force at the end of the step, from the speed along the normal then.
-template <class S>
-inline S grip_after(const Ground<S>& ground, Constant<S> dt, const S& depth, const S& normal_speed) noexcept {
-  const S push = ground.stiffness * (depth - normal_speed * dt) - ground.damping * normal_speed;
+template <class On, class S>
+inline S grip_after(const On& on, const S& depth, const S& normal_speed) noexcept {
+  const S push = on.ground.stiffness * (depth - normal_speed * on.dt) - damping_at(on, depth) * normal_speed;
   return select(depth > S(0), max(push, S(0)), S(0));
 }
 

@@ -55,38 +55,36 @@ struct Spot {
   std::size_t point;
 };
 
-/// Depth under the ground of a spot's lowest point.
-template <class S>
-inline S depth_of(const Footing<S>& on, const Spot<S>& spot) noexcept {
-  return S(spot.radius) - on.below.height - dot(on.below.normal, spot.centre);
+template <class On, class S>
+inline Lie<S> lie_of(const On& on, const Spot<S>& spot) noexcept {
+  return lie_of(on, spot.centre, S(spot.radius));
 }
 
 /// One point of a leg of K joints.
-template <int K, class S>
-inline void press_point(const Footing<S>& on, const Spot<S>& spot, const BodyState<S>& state,
+template <int K, class On, class S>
+inline void press_point(const On& on, const Spot<S>& spot, const BodyState<S>& state,
                         Work<S>& work) noexcept {
-  const S depth = depth_of(on, spot);
-  if (!any(depth > S(0))) return;
+  const Lie<S> lie = lie_of(on, spot);
+  if (!any(lie.depth > S(0))) return;
   LegWork<S>& leg = work.leg[spot.leg];
-  const Vec3<S> r = spot.centre - on.below.normal * S(spot.radius);
+  const Vec3<S> r = spot.centre - lie.normal * S(spot.radius);
   const auto arm = arms_of<K>(leg, r);
   const Vec3<S> velocity = velocity_at<K>(work, state.rate, r, arm, state.speed[spot.leg]);
-  const Touch<S> touch = touch_of(on, depth, velocity, state.grip.leg[spot.leg][spot.point]);
-  press_leg<K>(touch, on.below.normal, r, arm, on.dt, leg);
-  press_trunk(touch, on.below.normal, r, on.dt, work);
+  const Touch<S> touch = touch_of(on, lie, velocity, state.grip.leg[spot.leg][spot.point]);
+  press_leg<K>(touch, lie.normal, r, arm, on.dt, leg);
+  press_trunk(touch, lie.normal, r, on.dt, work);
 }
 
-template <int K, class S>
-inline void grip_point(const Footing<S>& on, const Spot<S>& spot, const Work<S>& work,
-                       BodyState<S>& state) noexcept {
-  const S depth = depth_of(on, spot);
+template <int K, class On, class S>
+inline void grip_point(const On& on, const Spot<S>& spot, const Work<S>& work, BodyState<S>& state) noexcept {
+  const Lie<S> lie = lie_of(on, spot);
   S& grip = state.grip.leg[spot.leg][spot.point];
-  if (!any(depth > S(0))) {
+  if (!any(lie.depth > S(0))) {
     grip = S(0);
     return;
   }
   const LegWork<S>& leg = work.leg[spot.leg];
-  const Vec3<S> r = spot.centre - on.below.normal * S(spot.radius);
+  const Vec3<S> r = spot.centre - lie.normal * S(spot.radius);
   const auto arm = arms_of<K>(leg, r);
   PerChain<S> speed = state.speed[spot.leg];
   for (std::size_t i = 0; i < K; ++i) speed[i] = speed[i] + leg.acceleration[i] * on.dt;
@@ -95,12 +93,12 @@ inline void grip_point(const Footing<S>& on, const Spot<S>& spot, const Work<S>&
   const Vec3<S> moving{a[3], a[4], a[5]};
   const Vec3<S> after =
       velocity_at<K>(work, state.rate + turning * S(on.dt), r, arm, speed) + moving * S(on.dt);
-  grip = grip_after(on.ground, on.dt, depth, dot(after, on.below.normal));
+  grip = grip_after(on, lie.depth, dot(after, lie.normal));
 }
 
 /// Foot and knee of every leg: press (before solving) or grip (after).
-template <bool kPress, class S>
-inline void touch_legs(const Tree<Constant<S>>& tree, const Footing<S>& on, BodyState<S>& state,
+template <bool kPress, class On, class S>
+inline void touch_legs(const Tree<Constant<S>>& tree, const On& on, BodyState<S>& state,
                        Work<S>& work) noexcept {
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
@@ -119,34 +117,59 @@ inline void touch_legs(const Tree<Constant<S>>& tree, const Footing<S>& on, Body
   }
 }
 
-/// Mask: a corner of the trunk may touch.
+/// How high the ground may rise over its plane.
 template <class S>
-inline auto trunk_near(const Tree<Constant<S>>& tree, const Below<S>& below) noexcept {
-  const S reach = abs(below.normal.x) * tree.half_size.x + abs(below.normal.y) * tree.half_size.y +
-                  abs(below.normal.z) * tree.half_size.z;
-  return below.height < reach;
+inline S top_of(const PlainFooting<S>&) noexcept {
+  return S(0);
+}
+template <class S>
+inline S top_of(const ShapedFooting<S>& on) noexcept {
+  return on.ground.relief.top;
 }
 
-template <bool kPress, class S>
-inline void touch_trunk(const Tree<Constant<S>>& tree, const Footing<S>& on, BodyState<S>& state,
+/// Mask: a corner of the trunk may touch.
+template <class S>
+inline auto trunk_near(const Tree<Constant<S>>& tree, const Below<S>& below, const S& top) noexcept {
+  const S reach = abs(below.normal.x) * tree.half_size.x + abs(below.normal.y) * tree.half_size.y +
+                  abs(below.normal.z) * tree.half_size.z;
+  return below.height < reach + top;
+}
+
+template <bool kPress, class On, class S>
+inline void touch_trunk(const Tree<Constant<S>>& tree, const On& on, BodyState<S>& state,
                         Work<S>& work) noexcept {
-  if (!any(trunk_near(tree, on.below))) {
+  if (!any(trunk_near(tree, on.below, top_of(on)))) {
     if constexpr (!kPress) state.grip.corner.fill(S(0));
     return;
   }
   const auto* a = work.acceleration;
   for (std::size_t c = 0; c < kTrunkCorners; ++c) {
     const Vec3<S> r = spread<S>(tree.corner[c]);
-    const S depth = S(0) - on.below.height - dot(on.below.normal, r);
+    const Lie<S> lie = lie_of(on, r, S(0));
     const Vec3<S> velocity = work.velocity + cross(state.rate, r);
     if constexpr (kPress) {
-      if (!any(depth > S(0))) continue;
-      press_trunk(touch_of(on, depth, velocity, state.grip.corner[c]), on.below.normal, r, on.dt, work);
+      if (!any(lie.depth > S(0))) continue;
+      press_trunk(touch_of(on, lie, velocity, state.grip.corner[c]), lie.normal, r, on.dt, work);
     } else {
       const Vec3<S> gain = Vec3<S>{a[3], a[4], a[5]} + cross(Vec3<S>{a[0], a[1], a[2]}, r);
-      const S speed = dot(velocity + gain * S(on.dt), on.below.normal);
-      state.grip.corner[c] = grip_after(on.ground, on.dt, depth, speed);
+      const S speed = dot(velocity + gain * S(on.dt), lie.normal);
+      state.grip.corner[c] = grip_after(on, lie.depth, speed);
     }
+  }
+}
+
+/// Contacts of legs and trunk: press (before solving) or grip (after).
+template <bool kPress, class S>
+inline void touch_ground(const Tree<Constant<S>>& tree, const Ground<S>& ground, const Below<S>& below,
+                         Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
+  const auto touch = [&](const auto& on) {
+    touch_legs<kPress>(tree, on, state, work);
+    touch_trunk<kPress>(tree, on, state, work);
+  };
+  if (ground.plain) {
+    touch(PlainFooting<S>{ground, below, dt});
+  } else {
+    touch(ShapedFooting<S>{ground, below, stand_of(ground, work.body, state.position), dt});
   }
 }
 
@@ -182,13 +205,10 @@ inline void step_body(const Tree<Constant<S>>& tree, const Surroundings<S>& arou
   begin_step(tree, around.trunk, state, work);
   add_loads(tree, state, loads, dt, work);
   add_push(around, work);
-  const Below<S> below{turn_back(work.body, around.ground.normal), dot(around.ground.normal, state.position)};
-  const Footing<S> on{around.ground, below, tree.stick_speed, dt};
-  touch_legs<true>(tree, on, state, work);
-  touch_trunk<true>(tree, on, state, work);
+  const Below<S> below = below_of(around.ground, work.body, state.position);
+  touch_ground<true>(tree, around.ground, below, dt, state, work);
   solve(tree, work);
-  touch_legs<false>(tree, on, state, work);
-  touch_trunk<false>(tree, on, state, work);
+  touch_ground<false>(tree, around.ground, below, dt, state, work);
   integrate(tree, dt, work, state);
 }
 

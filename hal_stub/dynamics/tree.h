@@ -58,7 +58,6 @@ struct Tree {
   std::array<Vec3<C>, kTrunkCorners> corner{};  ///< trunk frame, m
   Vec3<C> half_size{};
   C gravity{C(9.80665)};     ///< standard gravity (ISO 80000-3), m/s2
-  C stick_speed{C(0.02)};    ///< friction grows linearly up to this sliding speed, m/s
   C stop_stiffness{C(600)};  ///< end stops of the joints, N m/rad
   C stop_damping{C(6)};      ///< N m s/rad
 };

@@ -18,20 +18,23 @@ namespace pastern::stub {
 struct Stepper::Impl {
   explicit Impl(const Figures<double>& of) : robot(of) {}
   FourLegged robot;
-  void (*step)(Impl&, const SiteFigures<double>&, const Told<double>&, double, RobotState<double>&,
-               RobotWork<double>&) noexcept {nullptr};
+  using Step = void (*)(Impl&, const SiteFigures<double>&, const Told<double>&, double, RobotState<double>&,
+                        RobotWork<double>&) noexcept;
+  Step step{nullptr};
+  Step on_plain{nullptr};  ///< ground; the fast form of nearly all sites
+  Step on_any{nullptr};
 
-  template <int K>
+  template <int K, bool kPlain>
   __attribute__((flatten)) static void four_plain(Impl& impl, const SiteFigures<double>& site,
                                                   const Told<double>& told, double dt,
                                                   RobotState<double>& state,
                                                   RobotWork<double>& work) noexcept {
-    step_four<K>(impl.robot, site, told, dt, state, work);
+    step_four<K, kPlain>(impl.robot, site, told, dt, state, work);
   }
-  template <int K>
+  template <int K, bool kPlain>
   PASTERN_WIDE static void four_wide(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,
                                      double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
-    step_four<K>(impl.robot, site, told, dt, state, work);
+    step_four<K, kPlain>(impl.robot, site, told, dt, state, work);
   }
   __attribute__((flatten)) static void any_plain(Impl& impl, const SiteFigures<double>& site,
                                                  const Told<double>& told, double dt,
@@ -59,11 +62,13 @@ bool is_wide() noexcept {
 
 Stepper::Stepper(const Figures<double>& figures) : impl_(std::make_unique<Impl>(figures)) {
   const bool wide = is_wide();
-  impl_->step = wide ? Impl::any_wide : Impl::any_plain;
+  impl_->step = impl_->on_plain = impl_->on_any = wide ? Impl::any_wide : Impl::any_plain;
   if (!is_four_alike(figures.tree)) return;
   pack_figures(figures, impl_->robot.four);
-  for_chain(figures.tree.leg[0].joint_count,
-            [&]<int K>() { impl_->step = wide ? Impl::four_wide<K> : Impl::four_plain<K>; });
+  for_chain(figures.tree.leg[0].joint_count, [&]<int K>() {
+    impl_->step = impl_->on_plain = wide ? Impl::four_wide<K, true> : Impl::four_plain<K, true>;
+    impl_->on_any = wide ? Impl::four_wide<K, false> : Impl::four_plain<K, false>;
+  });
 }
 
 Stepper::~Stepper() = default;
@@ -72,6 +77,7 @@ Stepper& Stepper::operator=(Stepper&& other) noexcept = default;
 
 void Stepper::take_site(const SiteFigures<double>& site) noexcept {
   if (is_four_alike(impl_->robot.figures.tree)) pack_site(site, impl_->robot.four);
+  impl_->step = site.around.ground.plain ? impl_->on_plain : impl_->on_any;
 }
 
 void Stepper::step(const SiteFigures<double>& site, const Told<double>& told, double dt,

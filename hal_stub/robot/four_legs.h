@@ -67,7 +67,6 @@ inline void pack_figures(const Figures<double>& from, FourLegs& to) noexcept {
   const auto& legs = from.tree.leg;
   to.figures.tree.leg_count = 1;
   to.figures.tree.gravity = from.tree.gravity;
-  to.figures.tree.stick_speed = from.tree.stick_speed;
   to.figures.tree.stop_stiffness = from.tree.stop_stiffness;
   to.figures.tree.stop_damping = from.tree.stop_damping;
   to.figures.teeth = {from.teeth.stiffness, from.teeth.damping};
@@ -111,8 +110,7 @@ inline void pack_figures(const Figures<double>& from, FourLegs& to) noexcept {
 
 /// What a site makes of it, once a site.
 inline void pack_site(const SiteFigures<double>& from, FourLegs& to) noexcept {
-  const auto& g = from.around.ground;
-  to.site.around.ground = {spread<Quad>(g.normal), g.friction, g.stiffness, g.damping};
+  to.site.around.ground = spread_ground<Quad>(from.around.ground);
   to.site.drives.ambient = from.drives.ambient;
   for (std::size_t i = 0; i < static_cast<std::size_t>(to.figures.tree.leg[0].joint_count); ++i) {
     to.site.drives.strength[i] = gathered(from.drives.strength, to.order[i]);
@@ -235,17 +233,26 @@ inline void integrate_four(double dt, FourWork& side) noexcept {
 
 /// Contacts of legs and trunk: press (before solving) or grip (after).
 template <bool kPress>
-inline void touch_four(FourLegged& robot, const Footing<double>& on, RobotState<double>& state,
+inline void touch_four(FourLegged& robot, const PlainFooting<double>& on, RobotState<double>& state,
                        Work<double>& work) noexcept {
   const Below<Quad> below{spread<Quad>(on.below.normal), on.below.height};
-  const auto& tree = robot.four.figures.tree;
-  const Footing<Quad> legs_on{robot.four.site.around.ground, below, tree.stick_speed, on.dt};
-  touch_legs<kPress>(tree, legs_on, robot.side.state.body, robot.side.work.body);
+  const PlainFooting<Quad> legs_on{robot.four.site.around.ground, below, on.dt};
+  touch_legs<kPress>(robot.four.figures.tree, legs_on, robot.side.state.body, robot.side.work.body);
+  touch_trunk<kPress>(robot.figures.tree, on, state.body, work);
+}
+template <bool kPress>
+inline void touch_four(FourLegged& robot, const ShapedFooting<double>& on, RobotState<double>& state,
+                       Work<double>& work) noexcept {
+  const Below<Quad> below{spread<Quad>(on.below.normal), on.below.height};
+  const auto& at = on.stand;
+  const Stand<Quad> stand{spread<Quad>(at.along), spread<Quad>(at.left), at.way, at.side};
+  const ShapedFooting<Quad> legs_on{robot.four.site.around.ground, below, stand, on.dt};
+  touch_legs<kPress>(robot.four.figures.tree, legs_on, robot.side.state.body, robot.side.work.body);
   touch_trunk<kPress>(robot.figures.tree, on, state.body, work);
 }
 
-/// step_robot for four legs of K joints.
-template <int K>
+/// step_robot for four legs of K joints, on a ground that is plain or any.
+template <int K, bool kPlain>
 inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const Told<double>& told, double dt,
                       RobotState<double>& state, RobotWork<double>& work) noexcept {
   const FourLegs& four = robot.four;
@@ -258,9 +265,14 @@ inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const 
   add_loads(four.figures.tree, side.state.body, side.work.loads, Quad(dt), legs);
   add_push(site.around, work.body);
   const auto& ground = site.around.ground;
-  const Below<double> below{turn_back(work.body.body, ground.normal),
-                            dot(ground.normal, state.body.position)};
-  const Footing<double> on{ground, below, robot.figures.tree.stick_speed, dt};
+  const Below<double> below = below_of(ground, work.body.body, state.body.position);
+  const auto on = [&] {
+    if constexpr (kPlain) {
+      return PlainFooting<double>{ground, below, dt};
+    } else {
+      return ShapedFooting<double>{ground, below, stand_of(ground, work.body.body, state.body.position), dt};
+    }
+  }();
   touch_four<true>(robot, on, state, work.body);
   eliminate_leg<K>(legs.leg[0], legs);
   sum_up(legs, work.body);
