@@ -30,6 +30,13 @@ const char* anchor(Align align) {
   return "start";
 }
 
+std::string listed(const std::vector<Point>& points) {
+  std::string list;
+  for (const Point& point : points)
+    list += fmt::format("{}{:.1f},{:.1f}", list.empty() ? "" : " ", point.x, point.y);
+  return list;
+}
+
 /// As few digits as the step needs; no minus before zero.
 std::string tick_text(double value, double step) {
   const int digits = std::max(0, static_cast<int>(-std::floor(std::log10(step) + 1e-9)));
@@ -71,11 +78,20 @@ void Sheet::line(Point from, Point to, const Pen& pen) {
 }
 
 void Sheet::path(const std::vector<Point>& points, const Pen& pen) {
-  std::string list;
-  for (const Point& point : points)
-    list += fmt::format("{}{:.1f},{:.1f}", list.empty() ? "" : " ", point.x, point.y);
-  body_ += fmt::format("<polyline points=\"{}\" fill=\"none\" stroke-linejoin=\"round\" {}/>\n", list,
-                       stroke(pen));
+  body_ += fmt::format("<polyline points=\"{}\" fill=\"none\" stroke-linejoin=\"round\" {}/>\n",
+                       listed(points), stroke(pen));
+}
+
+void Sheet::moving_path(const std::vector<std::vector<Point>>& stills, double duration_s, const Pen& pen,
+                        const char* fill) {
+  if (stills.empty()) return;
+  std::string values;
+  for (const auto& still : stills) values += (values.empty() ? "" : ";") + listed(still);
+  body_ += fmt::format(
+      "<polyline points=\"{}\" fill=\"{}\" stroke-linejoin=\"round\" stroke-linecap=\"round\" {}>"
+      "<animate attributeName=\"points\" dur=\"{:g}s\" repeatCount=\"indefinite\" "
+      "values=\"{}\"/></polyline>\n",
+      listed(stills.front()), fill, stroke(pen), duration_s, values);
 }
 
 void Sheet::box(Point corner, double width, double height, const char* fill, const Pen& pen) {
@@ -144,6 +160,15 @@ std::string Sheet::svg() const {
   return fmt::format(
       "<svg viewBox=\"0 0 {:g} {:g}\" role=\"img\" fill=\"{}\">\n<title>{}</title>\n{}</svg>\n", width_,
       height_, kInk, xml(title_), body_);
+}
+
+std::string Sheet::file() const {
+  return fmt::format(
+      "<svg xmlns=\"http://www.w3.org/2000/svg\" width=\"{0:g}\" height=\"{1:g}\" viewBox=\"0 0 {0:g} "
+      "{1:g}\" "
+      "role=\"img\" fill=\"{2}\" font-family=\"Liberation Sans, Arial, sans-serif\">\n<title>{3}</title>\n"
+      "<rect width=\"100%\" height=\"100%\" fill=\"#ffffff\"/>\n{4}</svg>\n",
+      width_, height_, kInk, xml(title_), body_);
 }
 
 void Range::hold(double value) {

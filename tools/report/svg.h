@@ -33,6 +33,9 @@ class Sheet {
   Sheet(double width, double height, std::string title);
   void line(Point from, Point to, const Pen& pen);
   void path(const std::vector<Point>& points, const Pen& pen);
+  /// A path that moves: its points at equal times of `duration_s`, over and over; all of the same number.
+  void moving_path(const std::vector<std::vector<Point>>& stills, double duration_s, const Pen& pen,
+                   const char* fill = "none");
   void box(Point corner, double width, double height, const char* fill, const Pen& pen);
   void mark(Mark mark, Point at, double size = 4.5);
   void text(Point at, const std::string& words, Align align = Align::left, double size = 12,
@@ -40,6 +43,8 @@ class Sheet {
   /// Written upwards.
   void text_up(Point at, const std::string& words, double size = 12);
   [[nodiscard]] std::string svg() const;
+  /// The same as a file of its own: namespace, size, white paper, fonts.
+  [[nodiscard]] std::string file() const;
 
  private:
   double width_;

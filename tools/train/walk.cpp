@@ -237,6 +237,7 @@ Score WalkCourse::run(const Parameters& parameters, const Lot& lot) {
   const WalkSetting::Parts& parts = *setting_->parts_;
   Work& work = *work_;
   begin(parts, work, choose_, lot);
+  if (watch_) watch_(work.robot, 0);
   episode::ReturnSums<double> sums;
   Score score;
   for (int tick = 0; tick < parts.ticks; ++tick) {
@@ -249,6 +250,7 @@ Score WalkCourse::run(const Parameters& parameters, const Lot& lot) {
                            work.frame.speed, policy::gait_phase(phase - std::floor(phase)));
     }
     drive(parts, work);
+    if (watch_) watch_(work.robot, (tick + 1) * parts.period_s);
     place_of(work);
     const double power = episode::joint_power(work.frame.torque, work.frame.speed, parts.gains.joint_count);
     episode::add(sums, {work.body.velocity.x, power, work.body.position.y, work.body.yaw_rad}, parts.weights,

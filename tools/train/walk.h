@@ -43,11 +43,15 @@ class WalkCourse final : public Course {
   [[nodiscard]] Score run(const Parameters& parameters, const Lot& lot) override;
   [[nodiscard]] std::unique_ptr<Course> another() const override;
   [[nodiscard]] double duration_s() const override;
+  /// Called after each tick of the walk with its time, and once before the first; empty: nobody looks.
+  using Watch = std::function<void(const stub::SimulatedRobot& robot, double time_s)>;
+  void watch(Watch watch) { watch_ = std::move(watch); }
 
  private:
   struct Work;
   std::shared_ptr<const WalkSetting> setting_;
   SiteChoice choose_;
+  Watch watch_;
   std::unique_ptr<Work> work_;
 };
 
