@@ -1,4 +1,4 @@
-// check: judges robot, policy, plan and scenario files; every defect in one line.
+// check: judges robot, policy, plan, scenario and URDF files; every defect in one line.
 #include <fmt/format.h>
 #include <unistd.h>
 
@@ -12,13 +12,14 @@
 #include "tools/pastern/json.h"
 #include "tools/pastern/verb.h"
 #include "tools/pastern/words.h"
+#include "tools/urdf/urdf_file.h"
 
 namespace pastern::tools {
 namespace {
 
 namespace fs = std::filesystem;
 
-enum class Kind { robot, scenario, plan, policy, unknown };
+enum class Kind { robot, scenario, plan, policy, urdf, unknown };
 
 bool ends_with(const std::string& text, const std::string& end) {
   return text.size() >= end.size() && text.compare(text.size() - end.size(), end.size(), end) == 0;
@@ -29,6 +30,7 @@ Kind kind_of(const std::string& path) {
   if (ends_with(path, ".scenario.txtpb")) return Kind::scenario;
   if (ends_with(path, ".plan.txtpb")) return Kind::plan;
   if (ends_with(path, ".policy")) return Kind::policy;
+  if (ends_with(path, ".urdf")) return Kind::urdf;
   return Kind::unknown;
 }
 
@@ -42,6 +44,8 @@ const char* name_of(Kind kind) {
       return "plan";
     case Kind::policy:
       return "policy";
+    case Kind::urdf:
+      return "urdf";
     case Kind::unknown:
       break;
   }
@@ -55,13 +59,14 @@ struct Judged {
   std::string about;  ///< in words, when sound
   std::string sha256_hex;
   files::Defects defects;
+  std::vector<std::string> still_missing;  ///< of a URDF file: what a robot file wants besides
 };
 
 class Check final : public Verb {
  public:
   const char* name() const override { return "check"; }
   const char* about() const override {
-    return "Judge robot, policy, plan and scenario files: every defect in one line.";
+    return "Judge robot, policy, plan, scenario and URDF files: every defect in one line.";
   }
   const char* group() const override { return "Before the first walk"; }
   std::vector<std::string> examples() const override {
@@ -70,14 +75,17 @@ class Check final : public Verb {
         "pastern check tools/plans/*.plan.txtpb",
         "pastern check --robot my.robot.txtpb site.scenario.txtpb start.policy",
         "pastern check --json hal_stub/robots/*.robot.txtpb hal_stub/policies/*.policy",
+        "pastern check arm.urdf",
         "",
         "A policy or a scenario is judged against its robot: --robot, else a robot file among the arguments,",
-        "else the robot files in ../robots beside it. Exit status 1: findings; 3: a file cannot be read."};
+        "else the robot files in ../robots beside it. Of a URDF file it is told what a robot file cannot "
+        "take and",
+        "why, and what is still missing. Exit status 1: findings; 3: a file cannot be read."};
   }
   void options(Options& options) override {
     options
         .texts("file", files_,
-               "Files, told apart by suffix: .robot.txtpb .scenario.txtpb .plan.txtpb .policy", true)
+               "Files, told apart by suffix: .robot.txtpb .scenario.txtpb .plan.txtpb .policy .urdf", true)
         .text("--robot", robot_, "Robot file for the policies and scenarios")
         .flag("--json", json_, "Print the findings as JSON");
   }
@@ -89,6 +97,7 @@ class Check final : public Verb {
   void judge_plan(Judged& judged) const;
   void judge_policy(Judged& judged) const;
   void judge_scenario(Judged& judged) const;
+  void judge_urdf(Judged& judged) const;
   std::vector<files::RobotFile> robots_for(const std::string& path) const;
   void print(const std::vector<Judged>& all) const;
   void print_json(const std::vector<Judged>& all) const;
@@ -177,6 +186,14 @@ void Check::judge_scenario(Judged& judged) const {
   });
 }
 
+void Check::judge_urdf(Judged& judged) const {
+  const auto urdf = read_urdf(judged.path, judged.defects);
+  if (!urdf) return;
+  judged.about = fmt::format("{}: {} joints, {} links, {:g} kg", urdf->robot.name(),
+                             urdf->robot.joints_size(), urdf->links, urdf->mass_kg);
+  judged.still_missing = urdf->still_missing;
+}
+
 Judged Check::judge(const std::string& path) const {
   Judged judged;
   judged.path = path;
@@ -198,11 +215,29 @@ Judged Check::judge(const std::string& path) const {
     case Kind::scenario:
       judge_scenario(judged);
       break;
+    case Kind::urdf:
+      judge_urdf(judged);
+      break;
     case Kind::unknown:
       break;
   }
   if (!judged.defects.empty()) judged.about.clear();
   return judged;
+}
+
+/// Lines of several fields, no longer than a terminal is wide.
+void say_missing(const Judged& judged) {
+  if (judged.still_missing.empty()) return;
+  say(fmt::format("{}: URDF does not say, and a robot file needs besides:", judged.path));
+  std::string line;
+  for (const std::string& field : judged.still_missing) {
+    if (!line.empty() && line.size() + field.size() > 96) {
+      say("  " + line);
+      line.clear();
+    }
+    line += (line.empty() ? "" : ", ") + field;
+  }
+  say("  " + line);
 }
 
 void Check::print(const std::vector<Judged>& all) const {
@@ -214,6 +249,7 @@ void Check::print(const std::vector<Judged>& all) const {
       const std::string hash =
           one.sha256_hex.empty() ? "" : fmt::format("  sha256 {}", brief_hash(one.sha256_hex));
       say(fmt::format("{}: sound  {}{}", one.path, one.about, hash));
+      say_missing(one);
     }
   }
   if (findings > 0) {
@@ -239,6 +275,8 @@ void Check::print_json(const std::vector<Judged>& all) const {
                             .add("expected", d.expected)
                             .text());
     }
+    std::vector<std::string> missing;
+    for (const std::string& field : one.still_missing) missing.push_back(json(field));
     entries.push_back(JsonObject()
                           .add("file", one.path)
                           .add("kind", name_of(one.kind))
@@ -246,6 +284,7 @@ void Check::print_json(const std::vector<Judged>& all) const {
                           .add("about", one.about)
                           .add("sha256", one.sha256_hex)
                           .raw("defects", json_list(defects))
+                          .raw("still_missing", json_list(missing))
                           .text());
   }
   say(JsonObject().raw("files", json_list(entries)).text());
@@ -254,10 +293,10 @@ void Check::print_json(const std::vector<Judged>& all) const {
 Exit Check::run() {
   for (const std::string& path : files_) {
     if (kind_of(path) != Kind::unknown) continue;
-    complain(fmt::format(
-        "pastern check: {}: unknown suffix: expected .robot.txtpb, .scenario.txtpb, .plan.txtpb or "
-        ".policy",
-        path));
+    complain(
+        fmt::format("pastern check: {}: unknown suffix: expected .robot.txtpb, .scenario.txtpb, .plan.txtpb, "
+                    ".policy or .urdf",
+                    path));
     return Exit::usage;
   }
   std::vector<Judged> all;
