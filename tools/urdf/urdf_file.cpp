@@ -40,7 +40,9 @@ void judge_skeleton(const std::string& path, UrdfRobot& made, files::Defects& de
   }
   for (const std::string& name : order) {
     const bool of_joints = name.rfind("joints[]", 0) == 0;
-    made.still_missing.push_back(of_joints ? name + " (" + std::to_string(joints[name]) + " joints)" : name);
+    made.still_missing.push_back(of_joints ? name + " (" + std::to_string(joints[name]) +
+                                                 (joints[name] == 1 ? " joint)" : " joints)")
+                                           : name);
   }
 }
 

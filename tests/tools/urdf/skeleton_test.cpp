@@ -136,7 +136,7 @@ TEST(UrdfSkeleton, LimitsAndFrictionAreTakenAndTheRestIsStillMissing) {
     return std::count(made.still_missing.begin(), made.still_missing.end(), field) == 1;
   };
   EXPECT_TRUE(missing("joints[].stance_rad (4 joints)"));
-  EXPECT_TRUE(missing("joints[].drive (1 joints)"));
+  EXPECT_TRUE(missing("joints[].drive (1 joint)"));
   EXPECT_TRUE(missing("joints[].drive.rotor_inertia_kg_m2 (3 joints)"));
   for (const char* whole : {"pack", "sensors", "guard", "legs", "trunk.size_m"})
     EXPECT_TRUE(missing(whole)) << whole;
