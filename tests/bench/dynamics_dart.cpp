@@ -62,10 +62,9 @@ void measure_difference(const Options& options) {
   for (const Shape& shape : shapes()) {
     for (const bool loaded : {false, true}) {
       const Compared c = compare(shape, loaded, options.states, options.states_a_body, options.seed);
-      promise(fmt::format("accelerations against DART, {}, {} rotors and friction, {} states", shape.name,
-                          loaded ? "with" : "without", c.states),
-              fmt::format("{:.1e} relative (DART's two ways {:.1e})", c.worst, c.reference), "<= 1e-10",
-              c.states == options.states && c.worst <= 1e-10);
+      promise(fmt::format("accelerations against DART, {}{}", shape.name, loaded ? ", friction" : ""),
+              fmt::format("{:.1e} in {} states (its two ways {:.1e})", c.worst, c.states, c.reference),
+              "<= 1e-10", c.states == options.states && c.worst <= 1e-10);
     }
   }
 }
@@ -188,14 +187,12 @@ void measure_time(const std::string& name, const Options& options) {
     return fmt::format("{:.1f} x ({:.1f} / {:.2f} us)", median(t.ratio[w]), median(t.reference),
                        median(t.ours[w]));
   };
-  promise(fmt::format("a step of the body with 4 contacts, {}, scalar double, against DART's", name),
-          told(Way::body), ">= 40 x", stood && median(t.ratio[static_cast<std::size_t>(Way::body)]) >= 40);
-  promise(fmt::format("the same with drives, heat and pack, {}, as in a dry run (double, legs side by side)",
-                      name),
-          told(Way::fitted), ">= 40 x",
+  promise(fmt::format("step, 4 contacts, against DART's: {}, scalar double", name), told(Way::body),
+          ">= 40 x", stood && median(t.ratio[static_cast<std::size_t>(Way::body)]) >= 40);
+  promise(fmt::format("with drives, heat, pack, legs side by side: {}", name), told(Way::fitted), ">= 40 x",
           stood && median(t.ratio[static_cast<std::size_t>(Way::fitted)]) >= 40);
-  printed(fmt::format("the same, {}, one leg after another", name), told(Way::plain));
-  printed(fmt::format("steps of both with 4 contacts, {}; trunk at the end", name),
+  printed(fmt::format("the same, one leg after another: {}", name), told(Way::plain));
+  printed(fmt::format("steps with 4 contacts; trunk at the end: {}", name),
           fmt::format("{:.1f} %; {:.3f} m", 100 * share, t.lowest_m));
 }
 
