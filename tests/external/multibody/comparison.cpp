@@ -38,9 +38,9 @@ const std::vector<Shape>& shapes() {
   static const std::vector<Shape> all{
       {"dunlin12", [](Lot&) { return shipped("dunlin12"); }},
       {"dunlin8", [](Lot&) { return shipped("dunlin8"); }},
-      {"4 legs of 1 to 4 joints", [](Lot& lot) { return drawn_robot(lot, 4, 1, 4); }},
-      {"8 legs of 1 to 4 joints", [](Lot& lot) { return drawn_robot(lot, 8, 1, 4); }},
-      {"1 to 8 legs of 1 to 4 joints", [](Lot& lot) { return drawn_robot(lot, lot.whole(1, 8), 1, 4); }},
+      {"4 legs of 1 to 4 joints", [](Lot& lot) { return drawn_robot(lot, {.legs = 4}); }},
+      {"8 legs of 1 to 4 joints", [](Lot& lot) { return drawn_robot(lot, {.legs = 8}); }},
+      {"1 to 8 legs of 1 to 4 joints", [](Lot& lot) { return drawn_robot(lot, {.legs = lot.whole(1, 8)}); }},
   };
   return all;
 }

@@ -80,30 +80,54 @@ Limb draw_limb(Lot& lot, int least, int most) {
   return limb;
 }
 
-void add_limb(Lot& lot, const Limb& limb, const v1::Joint& pattern, int number, v1::Robot& robot) {
-  const std::string name = "leg" + std::to_string(number) + "_";
-  for (int i = 0; i < limb.joints; ++i) {
-    const auto k = static_cast<std::size_t>(i);
-    v1::Joint& joint = *robot.add_joints();
-    joint = pattern;
-    joint.set_name(name + std::to_string(i));
-    joint.clear_parent();
-    if (i > 0) joint.set_parent(name + std::to_string(i - 1));
-    draw_axis(lot, limb.axis[k], *joint.mutable_axis());
-    somewhere(lot, *joint.mutable_origin_m(), i == 0 ? 0.3 : 0.25);
-    draw_link(lot, *joint.mutable_link(), lot.between(0.2, 2), lot.between(0.05, 0.15), limb.skewed[k]);
-    joint.set_angle_min_rad(-3);
-    joint.set_angle_max_rad(3);
-    joint.mutable_drive()->set_rotor_inertia_kg_m2(lot.between(0, 0.03));
-    joint.mutable_drive()->set_damping_nm_s_per_rad(lot.between(0.02, 0.9));
-    joint.mutable_drive()->set_coulomb_nm(lot.between(0, 1.1));
+class Growth {
+ public:
+  Growth(Lot& lot, const Kind& kind, const v1::Joint& pattern, v1::Robot& robot)
+      : lot_(lot), kind_(kind), pattern_(pattern), robot_(robot), spare_(32 - kind.legs * kind.most) {}
+
+  void limb(const Limb& limb, int number) {
+    const std::string name = "leg" + std::to_string(number) + "_";
+    for (int i = 0; i < limb.joints; ++i) {
+      const auto k = static_cast<std::size_t>(i);
+      joint(name + std::to_string(i), i > 0 ? name + std::to_string(i - 1) : "", limb.axis[k],
+            limb.skewed[k]);
+      if (spare_ > 0 && lot_.chance(kind_.branching)) {
+        joint(name + "side" + std::to_string(i), name + std::to_string(i), lot_.whole(0, 3), true);
+        --spare_;
+      }
+    }
+    v1::Leg& leg = *robot_.add_legs();
+    leg.set_name("leg" + std::to_string(number));
+    leg.set_knee(name + std::to_string(limb.joints - 1));
+    somewhere(lot_, *leg.mutable_foot_m(), 0.2);
+    leg.set_foot_radius_m(0.02);
   }
-  v1::Leg& leg = *robot.add_legs();
-  leg.set_name("leg" + std::to_string(number));
-  leg.set_knee(name + std::to_string(limb.joints - 1));
-  somewhere(lot, *leg.mutable_foot_m(), 0.2);
-  leg.set_foot_radius_m(0.02);
-}
+
+ private:
+  void joint(const std::string& name, const std::string& parent, int axis, bool skewed) {
+    v1::Joint& joint = *robot_.add_joints();
+    joint = pattern_;
+    joint.set_name(name);
+    joint.clear_parent();
+    if (!parent.empty()) joint.set_parent(parent);
+    const bool slides = lot_.chance(kind_.sliding);
+    joint.set_kind(slides ? v1::Joint::PRISMATIC : v1::Joint::HINGE);
+    draw_axis(lot_, axis, *joint.mutable_axis());
+    somewhere(lot_, *joint.mutable_origin_m(), parent.empty() ? 0.3 : 0.25);
+    draw_link(lot_, *joint.mutable_link(), lot_.between(0.2, 2), lot_.between(0.05, 0.15), skewed);
+    joint.set_angle_min_rad(slides ? -0.3 : -3);
+    joint.set_angle_max_rad(slides ? 0.3 : 3);
+    joint.mutable_drive()->set_rotor_inertia_kg_m2(lot_.between(0, 0.03));
+    joint.mutable_drive()->set_damping_nm_s_per_rad(lot_.between(0.02, 0.9));
+    joint.mutable_drive()->set_coulomb_nm(lot_.between(0, 1.1));
+  }
+
+  Lot& lot_;
+  const Kind& kind_;
+  const v1::Joint& pattern_;
+  v1::Robot& robot_;
+  int spare_;
+};
 
 }  // namespace
 
@@ -115,7 +139,7 @@ v1::Robot shipped(const std::string& name) {
   return file->robot();
 }
 
-v1::Robot drawn_robot(Lot& lot, int legs, int least, int most) {
+v1::Robot drawn_robot(Lot& lot, const Kind& kind) {
   v1::Robot robot = shipped("dunlin12");  // drives, pack and watches of an ordinary robot
   const v1::Joint pattern = robot.joints(0);
   robot.set_name("drawn");
@@ -124,10 +148,11 @@ v1::Robot drawn_robot(Lot& lot, int legs, int least, int most) {
   draw_link(lot, *robot.mutable_trunk()->mutable_link(), lot.between(2, 20), lot.between(0.1, 0.3),
             lot.chance(0.5));
   const bool alike = lot.chance(0.5);
-  Limb limb = draw_limb(lot, least, most);
-  for (int l = 0; l < legs; ++l) {
-    if (!alike && l > 0) limb = draw_limb(lot, least, most);
-    add_limb(lot, limb, pattern, l, robot);
+  Limb limb = draw_limb(lot, kind.least, kind.most);
+  Growth growth(lot, kind, pattern, robot);
+  for (int l = 0; l < kind.legs; ++l) {
+    if (!alike && l > 0) limb = draw_limb(lot, kind.least, kind.most);
+    growth.limb(limb, l);
   }
   return robot;
 }

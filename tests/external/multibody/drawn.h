@@ -29,9 +29,18 @@ class Lot {
 /// A robot file of hal_stub/robots as it is.
 [[nodiscard]] v1::Robot shipped(const std::string& name);
 
-/// `legs` limbs of `least` to `most` joints. Half of the draws have limbs all of one kind (count, axes),
-/// which the simulated robot steps side by side where there are four.
-[[nodiscard]] v1::Robot drawn_robot(Lot& lot, int legs, int least, int most);
+/// What kind of tree. At most 32 joints come of it.
+struct Kind {
+  int legs{4};
+  int least{1};  ///< joints in a limb
+  int most{4};
+  double sliding{0};    ///< share of joints that slide
+  double branching{0};  ///< share of joints that carry one more, beside the limb's next
+};
+
+/// Half of the draws have limbs all of one kind (count, axes), which the simulated robot steps side by side
+/// where there are four.
+[[nodiscard]] v1::Robot drawn_robot(Lot& lot, const Kind& kind);
 
 /// So that the drives neither limit a torque nor run hot: what is left are the equations of motion.
 void unlimit(v1::Robot& robot);

@@ -102,5 +102,30 @@ TEST(Reference, SlidingAndBranchingTreesAgreeBetweenItsOwnTwoWays) {
   EXPECT_GT(difference(Reference(dunlin().robot).by_recursion(p.motion, p.drives), a), 0.01);
 }
 
+/// What the simulated robot does not take yet must be in order here, so that a new kind is one more shape.
+TEST(Reference, DrawnTreesThatSlideAndBranchAgreeBetweenItsOwnTwoWays) {
+  Lot lot(4);
+  int sliding = 0;
+  int branches = 0;
+  for (int k = 0; k < 50; ++k) {
+    const v1::Robot robot = drawn_robot(lot, {.legs = lot.whole(1, 6), .sliding = 0.3, .branching = 0.3});
+    EXPECT_LE(robot.joints_size(), 32);
+    const Motion motion = drawn_motion(lot, robot);
+    Drives drives;
+    for (const auto& joint : robot.joints()) {
+      sliding += joint.kind() == v1::Joint::PRISMATIC ? 1 : 0;
+      branches += joint.name().find("side") != std::string::npos ? 1 : 0;
+      drives.torque.push_back(lot.between(-30, 30));
+      drives.rotor.push_back(joint.drive().rotor_inertia_kg_m2());
+      drives.viscosity.push_back(joint.drive().damping_nm_s_per_rad());
+    }
+    Reference reference(robot);
+    EXPECT_LE(difference(reference.by_mass_matrix(motion, drives), reference.by_recursion(motion, drives)),
+              kBar);
+  }
+  EXPECT_GT(sliding, 50);
+  EXPECT_GT(branches, 50);
+}
+
 }  // namespace
 }  // namespace pastern::multibody
