@@ -151,6 +151,14 @@ inline Vec3<S> lane_of(const Ground<S>& ground) noexcept {
   return {ground.normal.z, S(0), S(0) - ground.normal.x};
 }
 
+/// Of a point, along the plane's normal, m.
+template <class S>
+inline S height_over(const Ground<S>& ground, const Vec3<S>& position) noexcept {
+  const S height = dot(ground.normal, position);
+  if (ground.plain) return height;
+  return height - profile_at(ground.relief, dot(lane_of(ground), position)).height;
+}
+
 /// `body`: trunk to world; `position` of the trunk's origin, world.
 template <class S>
 inline Below<S> below_of(const Ground<S>& ground, const Rotation<S>& body, const Vec3<S>& position) noexcept {

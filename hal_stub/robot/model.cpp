@@ -174,6 +174,18 @@ void leg_places(const LegFigures<double>& leg, const double* angle, Vec3<double>
   foot = place + turn(axes, leg.foot);
 }
 
+/// f(place in trunk axes, radius) for every contact point of the limbs.
+template <class F>
+void for_points(const Tree<double>& tree, const double* angle, F&& f) {
+  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
+    Vec3<double> foot{};
+    Vec3<double> knee{};
+    leg_places(tree.leg[l], angle, foot, knee);
+    f(foot, tree.leg[l].foot_radius);
+    if (tree.leg[l].knee) f(knee, tree.leg[l].knee_radius);
+  }
+}
+
 }  // namespace
 
 Vec3<double> foot_place(const Tree<double>& tree, int leg, const double* angle) {
@@ -186,14 +198,27 @@ Vec3<double> foot_place(const Tree<double>& tree, int leg, const double* angle) 
 double reach_below(const Tree<double>& tree, const double* angle, const Vec3<double>& down) {
   double reach = std::fabs(down.x) * tree.half_size.x + std::fabs(down.y) * tree.half_size.y +
                  std::fabs(down.z) * tree.half_size.z;
-  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
-    Vec3<double> foot{};
-    Vec3<double> knee{};
-    leg_places(tree.leg[l], angle, foot, knee);
-    reach = std::max(reach, dot(foot, down) + tree.leg[l].foot_radius);
-    if (tree.leg[l].knee) reach = std::max(reach, dot(knee, down) + tree.leg[l].knee_radius);
-  }
+  for_points(tree, angle, [&](const Vec3<double>& place, double radius) {
+    reach = std::max(reach, dot(place, down) + radius);
+  });
   return reach;
+}
+
+double rest_height(const Tree<double>& tree, const double* angle, const Quat<double>& attitude,
+                   const Ground<double>& ground) {
+  const Rotation<double> body = rotation_of(attitude);
+  const double deep = -10;  // m under the plane: every point is in the ground, and its depth says how far up
+  const Vec3<double> position = ground.normal * deep;
+  const Below<double> below = below_of(ground, body, position);
+  const ShapedFooting<double> on{ground, below, stand_of(ground, body, position), 0.001};
+  double least = -1e9;
+  const auto lift = [&](const Vec3<double>& place, double radius) {
+    const Lie<double> lie = lie_of(on, place, radius);
+    least = std::max(least, deep + lie.depth / dot(lie.normal, below.normal));
+  };
+  for_points(tree, angle, lift);
+  for (const Vec3<double>& corner : tree.corner) lift(corner, 0);
+  return least;
 }
 
 }  // namespace pastern::stub

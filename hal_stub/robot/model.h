@@ -74,4 +74,9 @@ class Model {
 /// How far the lowest contact point lies under the trunk's origin along `down` (unit, trunk axes).
 [[nodiscard]] double reach_below(const Tree<double>& tree, const double* angle, const Vec3<double>& down);
 
+/// Height of the trunk's origin over the plane of any ground, along its normal, at which the first contact
+/// point touches, the trunk over the start mark; `attitude` trunk to world.
+[[nodiscard]] double rest_height(const Tree<double>& tree, const double* angle, const Quat<double>& attitude,
+                                 const Ground<double>& ground);
+
 }  // namespace pastern::stub

@@ -254,7 +254,7 @@ Truth SimulatedRobot::truth() const {
   t.pitch_rad = -std::asin(std::clamp(r.x.z, -1.0, 1.0));
   t.yaw_rad = std::atan2(r.x.y, r.x.x);
   t.tilt_rad = std::acos(std::clamp(r.z.z, -1.0, 1.0));
-  t.height_m = dot(figures_.around.ground.normal, body.position);
+  t.height_m = height_over(figures_.around.ground, body.position);
   for (const double grip : body.grip.corner) t.other_contact = t.other_contact || grip > 0;
   for (const auto& leg : body.grip.leg) t.other_contact = t.other_contact || leg[1] > 0;
   t.fallen = fallen();

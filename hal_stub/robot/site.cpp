@@ -37,6 +37,29 @@ void take_friction_of_joints(const v1::Scenario& scenario, const Model& model, S
   }
 }
 
+constexpr double kFarAcross = 1e3;  // m: a patch as wide as the lane
+
+void take_ground(const v1::Scenario& scenario, GroundShape& ground) {
+  take(scenario.has_ground_wave_height_m(), scenario.ground_wave_height_m(), ground.wave_height_m);
+  take(scenario.has_ground_wave_length_m(), scenario.ground_wave_length_m(), ground.wave_length_m);
+  take(scenario.has_friction_stick_ratio(), scenario.friction_stick_ratio(), ground.stick_ratio);
+  take(scenario.has_friction_fall(), scenario.friction_fall(), ground.friction_fall);
+  take(scenario.has_friction_stick_speed_m_per_s(), scenario.friction_stick_speed_m_per_s(),
+       ground.stick_speed_m_per_s);
+  take(scenario.has_ground_damping_rise_s_per_m(), scenario.ground_damping_rise_s_per_m(),
+       ground.damping_rise_s_per_m);
+  for (const auto& step : scenario.ground_steps()) {
+    if (ground.step_count == kMaxGroundSteps) break;
+    ground.step[static_cast<std::size_t>(ground.step_count++)] = {step.at_m(), step.height_m()};
+  }
+  for (const auto& patch : scenario.ground_patches()) {
+    if (ground.patch_count == kMaxGroundPatches) break;
+    ground.patch[static_cast<std::size_t>(ground.patch_count++)] = {
+        patch.from_m(), patch.to_m(), patch.has_right_m() ? patch.right_m() : -kFarAcross,
+        patch.has_left_m() ? patch.left_m() : kFarAcross, patch.friction()};
+  }
+}
+
 void take_faults(const v1::Scenario& scenario, const Model& model, Site& site) {
   for (const auto& fault : scenario.faults()) {
     if (site.fault_count == kMaxFaults) break;
@@ -73,6 +96,7 @@ Site site_of(const v1::Scenario& scenario, const Model& model) {
        site.ground_stiffness_n_per_m);
   take(scenario.has_ground_damping_n_s_per_m(), scenario.ground_damping_n_s_per_m(),
        site.ground_damping_n_s_per_m);
+  take_ground(scenario, site.ground);
   take(scenario.has_push_m_per_s(), scenario.push_m_per_s(), site.push_m_per_s);
   take(scenario.has_start_scatter_rad(), scenario.start_scatter_rad(), site.start_scatter_rad);
   take(scenario.has_ambient_c(), scenario.ambient_c(), site.ambient_c);

@@ -23,6 +23,36 @@ struct Fault {
   double size{0};
 };
 
+inline constexpr int kMaxGroundSteps = 16;
+inline constexpr int kMaxGroundPatches = 8;
+
+struct GroundStep {
+  double at_m{0};  ///< along the lane, where it begins to rise
+  double height_m{0};
+};
+
+struct GroundPatch {
+  double from_m{0};
+  double to_m{0};
+  double right_m{0};
+  double left_m{0};
+  double friction{0};
+};
+
+/// What stands on the slope, and how a point slides on it. As made: a plane and plain Coulomb friction.
+struct GroundShape {
+  double wave_height_m{0};  ///< crest to trough
+  double wave_length_m{1};
+  int step_count{0};
+  std::array<GroundStep, kMaxGroundSteps> step{};
+  int patch_count{0};
+  std::array<GroundPatch, kMaxGroundPatches> patch{};
+  double stick_ratio{1};             ///< friction at rest over that of sliding
+  double friction_fall{0};           ///< part of the friction lost by 0.3 m/s of sliding
+  double stick_speed_m_per_s{0.02};  ///< sticks below
+  double damping_rise_s_per_m{0};    ///< damping += stiffness * this * depth
+};
+
 struct Site {
   double load_kg{0};
   std::array<double, 3> load_at_m{};  ///< trunk frame
@@ -32,6 +62,7 @@ struct Site {
   double slope_rad{0};  ///< positive: upward along the lane
   double ground_stiffness_n_per_m{24000};
   double ground_damping_n_s_per_m{400};
+  GroundShape ground{};
   double command_delay_s{0.002};
   double command_jitter_s{0};  ///< a command is late by delay + jitter * uniform(0, 1)
   double sensor_delay_s{0};

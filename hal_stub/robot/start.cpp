@@ -3,6 +3,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numbers>
 
 #include "hal_stub/robot/random.h"
 
@@ -36,17 +37,54 @@ TrunkFigures<double> loaded_trunk(const LinkFigures<double>& trunk, double load,
        i.zz + m * (d.x * d.x + d.y * d.y), i.xy - m * d.x * d.y, i.xz - m * d.x * d.z, i.yz - m * d.y * d.z}};
 }
 
+constexpr double kShortestRiser = 0.004;  // m: a foot at 2 m/s is on it for two steps
+
+/// Waves and steps; the highest they can reach is the sum of all that rises.
+Relief<double> relief_of(const GroundShape& shape) {
+  Relief<double> relief;
+  relief.waves = shape.wave_height_m > 0;
+  relief.amplitude = relief.waves ? shape.wave_height_m / 2 : 0;
+  relief.wave_number = 2 * std::numbers::pi / shape.wave_length_m;
+  relief.top = relief.amplitude;
+  relief.riser_count = std::min(shape.step_count, kMaxRisers);
+  for (std::size_t i = 0; i < static_cast<std::size_t>(relief.riser_count); ++i) {
+    const GroundStep& step = shape.step[i];
+    relief.riser[i] = {step.at_m, step.height_m, 1 / std::max(std::fabs(step.height_m), kShortestRiser)};
+    relief.top += std::max(step.height_m, 0.0);
+  }
+  return relief;
+}
+
 }  // namespace
+
+Ground<double> ground_of(const Site& site) {
+  const GroundShape& shape = site.ground;
+  Ground<double> ground;
+  ground.normal = {-std::sin(site.slope_rad), 0, std::cos(site.slope_rad)};
+  ground.friction = site.friction;
+  ground.stiffness = site.ground_stiffness_n_per_m;
+  ground.damping = site.ground_damping_n_s_per_m;
+  ground.stick_speed = shape.stick_speed_m_per_s;
+  ground.peak = shape.stick_ratio - 1;
+  ground.fading = shape.friction_fall;
+  ground.bounce = shape.damping_rise_s_per_m;
+  ground.relief = relief_of(shape);
+  ground.patch_count = std::min(shape.patch_count, kMaxPatches);
+  for (std::size_t i = 0; i < static_cast<std::size_t>(ground.patch_count); ++i) {
+    const GroundPatch& patch = shape.patch[i];
+    ground.patch[i] = {patch.from_m, patch.to_m, patch.right_m, patch.left_m, patch.friction};
+  }
+  ground.plain = !ground.relief.waves && ground.relief.riser_count == 0 && ground.patch_count == 0 &&
+                 !(ground.peak > 0) && !(ground.fading > 0) && !(ground.bounce > 0);
+  return ground;
+}
 
 SiteFigures<double> figures_of(const Model& model, const Site& site) {
   const auto& base = model.figures();
   SiteFigures<double> made;
   auto& around = made.around;
   around.trunk = loaded_trunk(base.tree.trunk, site.load_kg, site.load_at_m);
-  around.ground = {{-std::sin(site.slope_rad), 0, std::cos(site.slope_rad)},
-                   site.friction,
-                   site.ground_stiffness_n_per_m,
-                   site.ground_damping_n_s_per_m};
+  around.ground = ground_of(site);
   for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
     made.drives.strength[j] = site.strength[j];
     made.drives.damping[j] = site.damping_nm_s_per_rad[j];
@@ -106,9 +144,10 @@ void place_in(const Model& model, const Site& site, const std::vector<double>& p
   state.body.attitude = slope * Quat<double>{std::cos(yaw / 2), 0, 0, std::sin(yaw / 2)};
   const double sink =
       model.mass_kg() * tree.gravity / site.ground_stiffness_n_per_m / std::max(1, tree.leg_count);
-  const double height = reach_below(tree, angle.data(), {0, 0, -1}) - sink;
-  const Vec3<double> normal{-std::sin(site.slope_rad), 0, std::cos(site.slope_rad)};
-  state.body.position = normal * height;
+  const Ground<double> ground = ground_of(site);
+  const double reach = ground.plain ? reach_below(tree, angle.data(), {0, 0, -1})
+                                    : rest_height(tree, angle.data(), state.body.attitude, ground);
+  state.body.position = ground.normal * (reach - sink);
 }
 
 Push push_of(const Model& model, const Site& site, std::uint64_t seed, std::uint64_t draw) {

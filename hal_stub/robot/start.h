@@ -14,6 +14,10 @@ namespace pastern::stub {
 
 inline constexpr double kPushSeconds = 0.1;  ///< a push lasts
 
+/// The ground of a site; plain when the site names nothing but slope, friction, stiffness, damping and the
+/// sticking speed.
+[[nodiscard]] Ground<double> ground_of(const Site& site);
+
 /// Everything but pack.open_scale, which holds for one charge and is set by switch_on().
 [[nodiscard]] SiteFigures<double> figures_of(const Model& model, const Site& site);
 

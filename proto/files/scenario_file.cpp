@@ -17,6 +17,7 @@ class Judge {
 
   void run() {
     site();
+    ground();
     wear();
     for (int i = 0; i < scenario_.faults_size(); ++i) fault(i);
   }
@@ -45,6 +46,36 @@ class Judge {
     within(scenario_.imu_tilt_rad().x(), 0.5, "imu_tilt_rad.x", "rad");
     within(scenario_.imu_tilt_rad().y(), 0.5, "imu_tilt_rad.y", "rad");
     within(scenario_.imu_tilt_rad().z(), 0.5, "imu_tilt_rad.z", "rad");
+  }
+
+  // Height over length of a sine of slope 0.7. Steeper is no ground to walk on, and a foot's ball would
+  // bridge the troughs.
+  static constexpr double kSteepest = 0.22;
+
+  void ground() {
+    const double height = scenario_.ground_wave_height_m();
+    const double length = scenario_.ground_wave_length_m();
+    require(scenario_.has_ground_wave_height_m() == scenario_.has_ground_wave_length_m(),
+            scenario_.has_ground_wave_height_m() ? "ground_wave_height_m" : "ground_wave_length_m",
+            "one without the other", "ground_wave_height_m and ground_wave_length_m");
+    if (length > 0) {
+      require(height <= kSteepest * length, "ground_wave_height_m", shown_number(height),
+              "at most " + shown_number(kSteepest) + " of the length " + shown_number(length) +
+                  ", so that no wave is steeper than 0.7");
+    }
+    for (int i = 0; i < scenario_.ground_steps_size(); ++i) {
+      const std::string at = "ground_steps[" + std::to_string(i) + "].height_m";
+      require(scenario_.ground_steps(i).height_m() != 0, at, "0", "a height other than 0 (m)");
+    }
+    for (int i = 0; i < scenario_.ground_patches_size(); ++i) {
+      const v1::GroundPatch& patch = scenario_.ground_patches(i);
+      const std::string at = "ground_patches[" + std::to_string(i) + "]";
+      require(patch.from_m() < patch.to_m(), at + ".to_m", shown_number(patch.to_m()),
+              "more than from_m, " + shown_number(patch.from_m()));
+      const bool sound = !patch.has_right_m() || !patch.has_left_m() || patch.right_m() < patch.left_m();
+      require(sound, at + ".left_m", shown_number(patch.left_m()),
+              "more than right_m, " + shown_number(patch.right_m()));
+    }
   }
 
   void wear() {

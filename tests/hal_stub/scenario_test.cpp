@@ -188,6 +188,60 @@ TEST_F(Field, GroundStiffnessAndDampingChangeTheLanding) {
   EXPECT_GT(sunk("ground_damping_n_s_per_m: 3000"), nominal * 1.05);
 }
 
+// The ground's own closed forms are in ground_test.cpp; here each field is seen to reach the robot.
+TEST_F(Field, WavesAndStepsTiltAndRaiseTheRobot) {
+  // Front feet on a crest, rear feet in a trough: nose up by the wave's height over the distance of the feet.
+  EXPECT_NEAR(stood("ground_wave_height_m: 0.04 ground_wave_length_m: 0.94").truth().pitch_rad,
+              stood("").truth().pitch_rad - 0.04 / 0.47, 0.03);
+  EXPECT_NEAR(stood("ground_wave_height_m: 0.04 ground_wave_length_m: 0.47").truth().pitch_rad,
+              stood("").truth().pitch_rad, 0.03);
+  EXPECT_NEAR(stood("ground_steps { at_m: -1 height_m: 0.1 }").truth().position_m[2],
+              stood("").truth().position_m[2] + 0.1, 1e-3);
+  EXPECT_LT(stood("ground_steps { at_m: 0 height_m: 0.05 }").truth().pitch_rad, -0.05);  // nose up
+}
+
+TEST_F(Field, APatchIsWhereItIs) {
+  const auto slid = [&](const std::string& patch) {
+    SimulatedRobot made = stood("slope_rad: 0.2 friction: 0.6 " + patch, 1);
+    const double before = made.truth().position_m[0];
+    Holder(file_.robot()).run(made, 2);
+    return before - made.truth().position_m[0];
+  };
+  EXPECT_GT(slid("ground_patches { from_m: -5 to_m: 5 friction: 0.08 }"), 0.3);
+  EXPECT_LT(slid("ground_patches { from_m: 1 to_m: 5 friction: 0.08 }"), 0.02);
+  EXPECT_LT(slid("ground_patches { from_m: -5 to_m: 5 right_m: 1 left_m: 2 friction: 0.08 }"), 0.02);
+}
+
+TEST_F(Field, LawsOfFrictionChangeWhatHolds) {
+  const auto slid = [&](const std::string& text) {
+    SimulatedRobot made = stood("slope_rad: 0.2 " + text, 1);
+    const double before = made.truth().position_m[0];
+    Holder(file_.robot()).run(made, 2);
+    return before - made.truth().position_m[0];
+  };
+  EXPECT_GT(slid("friction: 0.18"), 0.1);
+  EXPECT_LT(slid("friction: 0.18 friction_stick_ratio: 2"), 0.1);  // creeps only
+  EXPECT_GT(slid("friction: 0.18 friction_fall: 0.3"), slid("friction: 0.18") + 0.05);
+  EXPECT_GT(slid("friction: 0.4 friction_stick_speed_m_per_s: 0.06"), 2 * slid("friction: 0.4"));
+}
+
+TEST_F(Field, DampingThatRisesWithTheDepthHardensTheLanding) {
+  const auto hardest = [&](const std::string& text) {
+    auto r = robot("ground_damping_n_s_per_m: 0 " + text);
+    r.place_standing(1);
+    r.state().body.position.z += 0.1;
+    double most = 0;
+    Holder holder(file_.robot());
+    for (int k = 0; k < 300; ++k) {
+      holder.tick(r);
+      for (const auto& leg : r.state().body.grip.leg) most = std::max(most, leg[0]);
+    }
+    return most;
+  };
+  EXPECT_NE(hardest("ground_damping_rise_s_per_m: 2"), hardest(""));
+  EXPECT_GT(std::fabs(hardest("ground_damping_rise_s_per_m: 2") / hardest("") - 1), 0.03);
+}
+
 TEST_F(Field, APushChangesTheSpeedOnceAWalkByTheStatedSpread) {
   double squares = 0;
   const int walks = 60;

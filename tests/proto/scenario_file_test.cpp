@@ -56,6 +56,26 @@ TEST(ScenarioFile, RefusesWhatContradictsItself) {
             "s: command_jitter_s: found 0.02, expected at most command_delay_s, 0.01\n");
 }
 
+TEST(ScenarioFile, RefusesAGroundThatCannotBe) {
+  EXPECT_EQ(why([](v1::Scenario& s) { s.clear_ground_wave_length_m(); }),
+            "s: ground_wave_height_m: found one without the other, expected ground_wave_height_m and "
+            "ground_wave_length_m\n");
+  EXPECT_EQ(why([](v1::Scenario& s) {
+              s.set_ground_wave_height_m(0.3);
+              s.set_ground_wave_length_m(0.5);
+            }),
+            "s: ground_wave_height_m: found 0.3, expected at most 0.22 of the length 0.5, so that no wave is "
+            "steeper than 0.7\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_ground_steps(0)->set_height_m(0); }),
+            "s: ground_steps[0].height_m: found 0, expected a height other than 0 (m)\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_ground_patches(0)->set_to_m(0.5); }),
+            "s: ground_patches[0].to_m: found 0.5, expected more than from_m, 1\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_ground_patches(0)->set_left_m(-2); }),
+            "s: ground_patches[0].left_m: found -2, expected more than right_m, -1\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.set_friction_stick_ratio(0.9); }),
+            "s: friction_stick_ratio: found 0.9, expected a finite number at least 1 and at most 3\n");
+}
+
 TEST(ScenarioFile, RefusesALoadBesideTheRobotAndAnImuOnItsSide) {
   EXPECT_EQ(why([](v1::Scenario& s) { s.mutable_load_at_m()->set_y(-3); }),
             "s: load_at_m.y: found -3, expected between -2 and 2 (m)\n");
