@@ -29,7 +29,8 @@ bool parse_options(const std::string& text, const std::string& known,
       return false;
     }
     if (!is_known(key, known)) {
-      error = "options: found key \"" + key + "\", expected one of: " + known;
+      error = "options: found key \"" + key;
+      error += "\", expected one of: " + known;
       return false;
     }
     if (!options.emplace(key, part.substr(equal + 1)).second) {

@@ -4,6 +4,7 @@
 #include <sched.h>
 #include <sys/mman.h>
 
+#include <cmath>
 #include <csignal>
 #include <cstdio>
 #include <ctime>
@@ -44,7 +45,7 @@ void ask_for_priority() {
 }
 
 void run(SimulatedRobot& robot, BusServer& bus, Trace& trace, std::uint64_t every) {
-  const auto period = static_cast<std::int64_t>(robot.model().period_s() * 1e9 + 0.5);
+  const auto period = static_cast<std::int64_t>(std::llround(robot.model().period_s() * 1e9));
   std::int64_t due = now_ns() + period;
   std::uint64_t skipped = 0;
   for (std::uint64_t tick = 0; g_end == 0; ++tick) {

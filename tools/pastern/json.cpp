@@ -14,7 +14,8 @@ using google::protobuf::FieldDescriptor;
 using google::protobuf::Message;
 using google::protobuf::Reflection;
 
-/// `index` -1: a singular field.
+/// `index` -1: a singular field. Messages nest no deeper than our .proto files do.
+// NOLINTNEXTLINE(misc-no-recursion): a tree is walked; see above.
 std::string value_of(const Message& m, const Reflection& r, const FieldDescriptor* f, int index) {
   const bool one = index < 0;
   switch (f->cpp_type()) {
@@ -41,7 +42,6 @@ std::string value_of(const Message& m, const Reflection& r, const FieldDescripto
       return json(f->type() == FieldDescriptor::TYPE_BYTES ? files::hex(text) : text);
     }
     case FieldDescriptor::CPPTYPE_MESSAGE:
-      // Messages nest no deeper than our .proto files do.
       return json(one ? r.GetMessage(m, f) : r.GetRepeatedMessage(m, f, index));
   }
   return "null";
@@ -83,6 +83,7 @@ std::string json(const Message& message) {  // NOLINT(misc-no-recursion): depth 
     const FieldDescriptor* field = message.GetDescriptor()->field(i);
     if (field->is_repeated()) {
       std::vector<std::string> items;
+      items.reserve(static_cast<std::size_t>(reflection.FieldSize(message, field)));
       for (int n = 0; n < reflection.FieldSize(message, field); ++n) {
         items.push_back(value_of(message, reflection, field, n));
       }

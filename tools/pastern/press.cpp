@@ -28,12 +28,12 @@ Exit press(RobotLine& line, bool halt, double patience_s) {
   const auto begun = Clock::now();
   int tries = 0;
   bool received = false;
-  for (double left = patience_s; left > 0.05;
-       left = patience_s - std::chrono::duration<double>(Clock::now() - begun).count()) {
+  const auto left = [&] { return patience_s - std::chrono::duration<double>(Clock::now() - begun).count(); };
+  while (left() > 0.05) {
     // A new id each time: a repeated one would be given the first answer again.
     const v1::Command command =
         halt ? command_of(&v1::Command::mutable_halt) : command_of(&v1::Command::mutable_stop);
-    const auto answer = line.ask_quietly(command, std::min(left, 1.0));
+    const auto answer = line.ask_quietly(command, std::clamp(left(), 0.05, 1.0));
     ++tries;
     if (answer && !answer->accepted()) {
       const std::string& words = answer->words();

@@ -37,6 +37,16 @@ std::string listed(const std::vector<Point>& points) {
   return list;
 }
 
+/// Whole multiples of `step` in `range`.
+std::vector<double> ticks_in(Range range, double step) {
+  std::vector<double> ticks;
+  const long last = std::lround(std::floor(range.high / step + 1e-9));
+  for (long n = std::lround(std::ceil(range.low / step - 1e-9)); n <= last; ++n) {
+    ticks.push_back(static_cast<double>(n) * step);
+  }
+  return ticks;
+}
+
 /// As few digits as the step needs; no minus before zero.
 std::string tick_text(double value, double step) {
   const int digits = std::max(0, static_cast<int>(-std::floor(std::log10(step) + 1e-9)));
@@ -206,7 +216,7 @@ double Plot::y(double value) const {
 
 void Plot::axes(const std::string& x_name, const std::string& y_name, bool whole_x) {
   const double y_step = tick_step(y_, std::max(2, static_cast<int>(height_ / 32)));
-  for (double v = std::ceil(y_.low / y_step - 1e-9) * y_step; v <= y_.high + y_step * 1e-9; v += y_step) {
+  for (const double v : ticks_in(y_, y_step)) {
     sheet_.line({corner_.x, y(v)}, {corner_.x + width_, y(v)}, kGrid);
     sheet_.text({corner_.x - 6, y(v) + 4}, tick_text(v, y_step), Align::right, 11);
   }
@@ -219,7 +229,7 @@ void Plot::x_axis(const std::string& name, bool whole) {
   double step = tick_step(x_, std::max(2, static_cast<int>(width_ / 70)));
   if (whole) step = std::max(1.0, step);
   const double bottom = corner_.y + height_;
-  for (double v = std::ceil(x_.low / step - 1e-9) * step; v <= x_.high + step * 1e-9; v += step) {
+  for (const double v : ticks_in(x_, step)) {
     sheet_.line({x(v), bottom}, {x(v), bottom + 4}, kAxis);
     sheet_.text({x(v), bottom + 17}, tick_text(v, step), Align::middle, 11);
   }
