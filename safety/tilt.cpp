@@ -11,6 +11,10 @@ namespace {
 constexpr double kLeastSize = 0.5 * kGravity;
 constexpr double kMostSize = 1.5 * kGravity;
 
+// The first direction is the mean of so long: a robot that has just been put down may still fall the last few
+// millimetres, and one sample of that tells nothing.
+constexpr double kFirstDirection_s = 0.05;
+
 template <class Unit>
 bool finite(const Vector3<Unit, Body>& v) noexcept {
   return std::isfinite(v.x) && std::isfinite(v.y) && std::isfinite(v.z);
@@ -30,14 +34,24 @@ void TiltFilter::follow(const Vector3<RadianPerSecond, Body>& rate,
   if (!finite(acceleration)) return;
   const double size = length(acceleration);
   if (!known_) {
-    // The first direction is taken whatever its size, for there is nothing better; no direction, no start.
+    // For want of a better one, of whatever size; no direction, no start.
     if (size > 1e-3 && std::isfinite(size)) lean(acceleration, size, 1.0);
-    return;
+    if (!known_) return;
   }
-  const double weight = -std::expm1(-span_s / time_constant_s);
-  if (size >= kLeastSize && size <= kMostSize && weight >= 0.0 && weight <= 1.0) {
-    lean(acceleration, size, weight);
+  if (!(size >= kLeastSize && size <= kMostSize)) return;
+  const double weight = weight_of(span_s, time_constant_s);
+  if (weight >= 0.0 && weight <= 1.0) lean(acceleration, size, weight);
+}
+
+double TiltFilter::weight_of(double span_s, double time_constant_s) noexcept {
+  if (span_s != weighed_s_) {
+    weighed_s_ = span_s;
+    weight_ = -std::expm1(-span_s / time_constant_s);
   }
+  if (!(believed_s_ < kFirstDirection_s) || !(span_s > 0.0)) return weight_;
+  believed_s_ += span_s;
+  const double mean = span_s / believed_s_;
+  return mean > weight_ ? mean : weight_;
 }
 
 /// A direction fixed in the world turns in the body by -rate: Rodrigues' rotation about the unit axis k,

@@ -13,8 +13,9 @@ class TiltFilter {
  public:
   /// One IMU sample, `span_s` after the last. `time_constant_s`: how fast the accelerometer is believed.
   /// The accelerometer is used for the direction of gravity only while its size is near that of gravity;
-  /// otherwise (landing, push, free fall, broken) the gyro alone carries on. Values that are not finite
-  /// change nothing.
+  /// otherwise (landing, push, free fall, broken) the gyro alone carries on. The first 0.05 s of such samples
+  /// are averaged; until there is one, the first direction of any size stands. Values that are not finite
+  /// change nothing. `time_constant_s` is the same in all calls.
   void follow(const Vector3<RadianPerSecond, Body>& rate,
               const Vector3<MetrePerSecondSquared, Body>& acceleration, double span_s,
               double time_constant_s) noexcept;
@@ -32,8 +33,13 @@ class TiltFilter {
   void turn(const Vector3<RadianPerSecond, Body>& rate, double span_s) noexcept;
   void lean(const Vector3<MetrePerSecondSquared, Body>& acceleration, double size, double weight) noexcept;
 
+  [[nodiscard]] double weight_of(double span_s, double time_constant_s) noexcept;
+
   Vector3<Metre, Body> up_{0.0, 0.0, -1.0};
   bool known_{false};
+  double believed_s_{0.0};  // time of the samples near gravity's size, until the first direction is had
+  double weighed_s_{0.0};   // span that weight_ belongs to
+  double weight_{0.0};
 };
 
 }  // namespace pastern::safety

@@ -49,6 +49,9 @@ Evaluation evaluation_of(const v1::Episode& episode) {
                        : episode.outcome() == v1::LEFT_LANE ? Outcome::left_lane
                                                             : Outcome::voided;
   const v1::ReturnTerms& terms = episode.terms();
+  const std::string& cause = episode.trip().cause();
+  evaluation.stopped_by_person =
+      cause == "operator_stop" || cause == "operator_halt" || cause == "emergency_stop";
   evaluation.terms = {terms.forward(), terms.energy(), terms.drift(), terms.turn(), terms.fall()};
   return evaluation;
 }

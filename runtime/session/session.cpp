@@ -129,7 +129,7 @@ bool Session::take(const Committed<Evaluation>& evaluation, double robot_time_s)
   ++walks_;
   time_s_ = robot_time_s;
   if (told.outcome == Outcome::voided) {
-    take_void();
+    take_void(told.stopped_by_person);
     return true;
   }
   repeats_ = 0;
@@ -150,9 +150,11 @@ bool Session::take(const Committed<Evaluation>& evaluation, double robot_time_s)
   return true;
 }
 
-void Session::take_void() {
+// The limit is there for a cause that nobody has found. A person who stops a walk knows why, and had to
+// release before the next.
+void Session::take_void(bool by_person) {
   ++voids_;
-  ++repeats_;
+  if (!by_person) ++repeats_;
   if (repeats_ > given_.plan.max_void_repeats()) {
     keep("the same walk was void " + std::to_string(repeats_) + " times (the plan allows " +
          std::to_string(given_.plan.max_void_repeats()) +

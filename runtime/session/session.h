@@ -62,7 +62,7 @@ class Session {
   [[nodiscard]] double best_return() const { return best_return_; }  ///< of the search's walks; 0 before
 
  private:
-  void take_void();
+  void take_void(bool by_person);
   void take_baseline(double total);
   void take_search(const Committed<Evaluation>& evaluation, double total);
   void take_confirmation(double total, bool fell);
@@ -85,7 +85,7 @@ class Session {
   std::uint64_t walks_{0};
   std::uint32_t falls_{0};
   std::uint32_t voids_{0};
-  std::uint32_t repeats_{0};  // voids of the present order
+  std::uint32_t repeats_{0};  // voids of the present order, but for those that a person stopped
   double time_s_{0};
 
   std::uint32_t baseline_done_{0};

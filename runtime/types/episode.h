@@ -51,6 +51,7 @@ struct Evaluation {
   std::uint32_t index{0};
   Outcome outcome{Outcome::completed};
   EpisodeReturn terms;
+  bool stopped_by_person{false};  ///< stop, halt or emergency stop: says nothing of the site or the policy
 };
 
 /// A value that is on disk. Only the journal can make one, after its commit; an operator takes nothing else.

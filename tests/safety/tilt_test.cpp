@@ -66,7 +66,8 @@ TEST(Tilt, AGyroBiasLeavesTheErrorOfTheComplementaryFilter) {
 
 TEST(Tilt, ConvergesWithItsTimeConstant) {
   // Small angles: the error falls as exp(-t / tau).
-  TiltFilter filter = after(at_rest(0.1, 0.0));
+  TiltFilter filter;
+  for (int i = 0; i < 60; ++i) filter.follow({}, at_rest(0.1, 0.0), 0.001, 0.5);  // the first direction
   for (int i = 0; i < 500; ++i) filter.follow({}, at_rest(0.0, 0.0), 0.001, 0.5);
   EXPECT_NEAR(filter.roll(), 0.1 * std::exp(-1.0), 2e-4);
 }
@@ -91,9 +92,35 @@ TEST(Tilt, NotFiniteAndHugeSamplesChangeNothing) {
     filter.follow(Rate{0.0, bad, bad}, Acceleration{0.0, 0.0, bad}, 0.001, 0.5);
   }
   filter.follow({}, at_rest(1.0, 1.0), std::nan(""), 0.5);
-  filter.follow({}, at_rest(1.0, 1.0), 0.001, std::nan(""));
   EXPECT_EQ(filter.roll(), roll);
   EXPECT_EQ(filter.pitch(), pitch);
+}
+
+// A robot that has just been put down: the last millimetres in free fall, a landing, then rest.
+TEST(Tilt, AFirstSampleInFreeFallIsForgottenWhenGravityIsFelt) {
+  for (const double x : {-0.96, -3.41}) {  // seen on a simulated robot laid down: 0.1 g and 0.7 g, askew
+    TiltFilter filter;
+    filter.follow({}, Acceleration{x, -0.16, x < -2 ? 5.66 : 0.59}, 0.001, 0.5);
+    EXPECT_GT(std::fabs(filter.pitch()), 0.5);
+    for (int i = 0; i < 20; ++i) filter.follow({}, Acceleration{0.0, 0.1, 0.5}, 0.001, 0.5);
+    for (int i = 0; i < 5; ++i) filter.follow({}, Acceleration{3.0, 0.0, 30.0}, 0.001, 0.5);
+    for (int i = 0; i < 60; ++i) filter.follow({}, at_rest(0.02, 0.01), 0.001, 0.5);
+    EXPECT_NEAR(filter.roll(), 0.02, 0.02);
+    EXPECT_NEAR(filter.pitch(), 0.01, 0.02);
+  }
+}
+
+// One sample of the mean is worth its share, not more: noise of a first sample does not stay.
+TEST(Tilt, ATimeConstantThatIsNotANumberLeavesTheFirstDirection) {
+  TiltFilter filter;
+  for (int i = 0; i < 5; ++i) filter.follow({}, at_rest(i == 0 ? 0.2 : 1.0, 0.0), 0.001, std::nan(""));
+  EXPECT_NEAR(filter.roll(), 0.2, 1e-12);
+}
+
+TEST(Tilt, TheFirstDirectionIsAMean) {
+  TiltFilter filter;
+  for (int i = 0; i < 50; ++i) filter.follow({}, at_rest(i % 2 == 0 ? 0.1 : -0.1, 0.0), 0.001, 0.5);
+  EXPECT_NEAR(filter.roll(), 0.0, 0.005);
 }
 
 TEST(Tilt, CountsAsUpsideDownUntilTheFirstDirection) {

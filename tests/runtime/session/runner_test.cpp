@@ -102,6 +102,30 @@ TEST(Runner, OnTheSimulatedRobotASessionLeftAtEveryWalkEndsWithTheSameContent) {
   EXPECT_EQ(left_at_every_walk(once.given).digest, whole.digest);
 }
 
+// At wall pace the first frame after a robot was put back on its mark is some ticks old: it still falls the
+// last millimetres, and gravity is hardly felt. The gate must have forgotten that when the robot rises.
+TEST(Runner, ARobotPutDownInMidFallRisesWithoutATrip) {
+  const Case once;
+  const std::string options =
+      std::string("scenario=") + PASTERN_SOURCE_DIR + "/hal_stub/scenarios/cold_store.scenario.txtpb";
+  std::string error;
+  auto drives = hal::Drives::open(drives_config(once.robot, STUB_PATH, options, 5, Pace::stepped), error);
+  ASSERT_TRUE(drives) << error;
+  Cycle cycle(once.robot.robot(), once.policy.policy(), std::move(drives), Pace::stepped);
+  for (std::uint64_t draw = 0; draw < 4; ++draw) {
+    for (const double late_s : {0.001, 0.002, 0.003, 0.008}) {
+      ASSERT_TRUE(cycle.drives().carry_back(draw));
+      ASSERT_TRUE(cycle.run(Motion::parked, late_s).completed);
+      cycle.set_down();
+      ASSERT_TRUE(cycle.run(Motion::parked, 0.1).completed);
+      const MotionResult risen = cycle.run(Motion::rise, 0);
+      ASSERT_TRUE(risen.completed) << "draw " << draw << ", " << late_s
+                                   << " s: " << safety::name(risen.trip.cause) << " " << risen.trip.value;
+      ASSERT_TRUE(cycle.run(Motion::lower, 0).completed);
+    }
+  }
+}
+
 TEST(Runner, AFaultThatHasNothingToDoWithWalkingMakesVoidWalks) {
   Case once;
   once.given.plan.set_max_void_repeats(20);

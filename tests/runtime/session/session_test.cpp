@@ -248,6 +248,41 @@ TEST(Session, TooManyVoidsOfTheSameWalkEndItInWords) {
   EXPECT_NE(session.verdict()->words().find("void 4 times"), std::string::npos) << session.verdict()->words();
 }
 
+TEST(Session, VoidsThatAPersonStoppedDoNotCountAgainstTheRepeats) {
+  for (const char* cause : {"operator_stop", "operator_halt", "emergency_stop"}) {
+    const SessionStart start = start_with(test::short_plan());
+    Session session(start);
+    Record record(start);
+    record.walk(session, [cause](const Order& order) {
+      v1::Episode episode = order.walk <= 6 ? walked(0, v1::VOID) : walked(slope(order.parameters));
+      if (order.walk <= 6) episode.mutable_trip()->set_cause(cause);
+      return episode;
+    });
+    EXPECT_EQ(session.voids(), 6U) << cause;  // max_void_repeats is 3
+    EXPECT_EQ(session.verdict()->words().find("void"), std::string::npos) << session.verdict()->words();
+    // A session resumed from the record is told the same.
+    Session again(start);
+    for (const auto& walk : record.finished()) ASSERT_TRUE(again.next() && again.take(walk.evaluation, 0));
+    EXPECT_FALSE(again.next());
+    EXPECT_EQ(again.voids(), 6U);
+  }
+}
+
+// Others of the same walk still count, before and after.
+TEST(Session, AStopByAPersonDoesNotWashOtherVoidsAway) {
+  const SessionStart start = start_with(test::short_plan());
+  Session session(start);
+  Record record(start);
+  record.walk(session, [](const Order& order) {
+    v1::Episode episode = walked(0, v1::VOID);
+    episode.mutable_trip()->set_cause(order.walk % 2 == 0 ? "operator_stop" : "frame_stale");
+    return episode;
+  });
+  ASSERT_TRUE(session.verdict());
+  EXPECT_EQ(session.walks_done(), 7U);  // the fourth that is not a person's
+  EXPECT_NE(session.verdict()->words().find("void 4 times"), std::string::npos) << session.verdict()->words();
+}
+
 TEST(Session, FallsEndTheSearchAndAnImprovedPolicyIsConfirmed) {
   v1::Plan plan = test::short_plan(v1::Adaptation::BATCH_HILL_CLIMBING);
   plan.set_search_walks(40);
