@@ -75,7 +75,7 @@ inline auto fallen(const Tree<Constant<S>>& tree, const Ground<S>& ground, Const
   using C = Constant<S>;
   const S upright = C(1) - C(2) * (body.attitude.x * body.attitude.x + body.attitude.y * body.attitude.y);
   const S height = height_over(ground, body.position);
-  auto down = !(upright > S(C(std::cos(kFallTilt)))) | !(height > S(stance_height / C(2)));
+  auto down = !((upright > S(C(std::cos(kFallTilt)))) & (height > S(stance_height / C(2))));
   for (const S& grip : body.grip.corner) down = down | (grip > S(0));
   for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
     down = down | (body.grip.leg[l][1] > S(0));

@@ -12,8 +12,6 @@
 namespace pastern::stub {
 namespace {
 
-constexpr double kLetGoAfterSeconds = 0.5;  // of damping by the drives themselves
-
 std::uint32_t low(std::uint64_t tick) { return static_cast<std::uint32_t>(tick); }
 
 }  // namespace

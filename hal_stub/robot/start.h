@@ -12,7 +12,8 @@
 
 namespace pastern::stub {
 
-inline constexpr double kPushSeconds = 0.1;  ///< a push lasts
+inline constexpr double kPushSeconds = 0.1;        ///< a push lasts
+inline constexpr double kLetGoAfterSeconds = 0.5;  ///< of damping by the drives themselves
 
 /// The ground of a site; plain when the site names nothing but slope, friction, stiffness, damping and the
 /// sticking speed.

@@ -18,14 +18,21 @@ struct Gains {
 
 [[nodiscard]] Gains<double> gains_of(const v1::Robot& robot);  // a checked robot
 
-/// torque = stiffness * (target - angle) - damping * speed. No clamp here: the gate clamps.
+/// One joint: stiffness * (target - angle) - damping * speed. No clamp here: the gate clamps.
+template <class S, class Gain>
+[[nodiscard]] S pd_torque(const Gain& stiffness, const Gain& damping, const S& target, const S& angle,
+                          const S& speed) noexcept {
+  return stiffness * (target - angle) - damping * speed;
+}
+
+/// The same of all joints.
 template <class S>
 [[nodiscard]] Torques<S> pd_torques(const Gains<S>& gains, const JointTarget<S>& target,
                                     const JointAngles<S>& angle, const JointSpeeds<S>& speed) noexcept {
   Torques<S> torque;
   for (int j = 0; j < gains.joint_count; ++j) {
     const auto i = static_cast<std::size_t>(j);
-    torque[j] = gains.stiffness[i] * (target.angle[j] - angle[j]) - gains.damping[i] * speed[j];
+    torque[j] = pd_torque(gains.stiffness[i], gains.damping[i], target.angle[j], angle[j], speed[j]);
   }
   return torque;
 }

@@ -110,9 +110,9 @@ template <class S>
   return {acos((a * a + l * l - b * b) / (S(2) * a * l)), acos((l * l - a * a - b * b) / (S(2) * a * b))};
 }
 
+/// Plain numbers as S.
 template <class S>
-[[nodiscard]] Shape<S> shape_of(const v1::Policy& policy, const v1::Robot& robot) {
-  const Shape<double> plain = plain_shape(policy, robot);
+[[nodiscard]] Shape<S> shape_as(const Shape<double>& plain) {
   Shape<S> shape;
   for (const Input<double>& input : plain.inputs) {
     shape.inputs.push_back({input.kind, input.joint, S(input.scale), S(input.offset)});
@@ -151,11 +151,16 @@ template <class S>
 }
 
 template <class S>
+[[nodiscard]] Shape<S> shape_of(const v1::Policy& policy, const v1::Robot& robot) {
+  return shape_as<S>(plain_shape(policy, robot));
+}
+
+template <class S>
 [[nodiscard]] Scratch<S> scratch_of(const Shape<S>& shape) {
   return {std::vector<S>(shape.widest, S(0)), std::vector<S>(shape.widest, S(0))};
 }
 
-/// Sine and cosine of the gait phase; one clock for all lanes.
+/// Sine and cosine of the gait phase. Lanes with clocks of their own bring a type with S in both places.
 struct GaitPhase {
   double sine{0};
   double cosine{1};
@@ -167,9 +172,9 @@ struct GaitPhase {
   return {std::sin(kTurn * phase), std::cos(kTurn * phase)};
 }
 
-template <class S>
+template <class S, class Phase>
 [[nodiscard]] S channel_value(const Input<S>& input, const BodyEstimate<S>& body, const JointAngles<S>& angle,
-                              const JointSpeeds<S>& speed, const GaitPhase& phase) noexcept {
+                              const JointSpeeds<S>& speed, const Phase& phase) noexcept {
   switch (input.kind) {
     case v1::Channel::ROLL:
       return body.roll_rad;
@@ -195,9 +200,9 @@ template <class S>
 }
 
 /// Shape::inputs entries to `out`.
-template <class S>
+template <class S, class Phase>
 void observe(const Shape<S>& shape, const BodyEstimate<S>& body, const JointAngles<S>& angle,
-             const JointSpeeds<S>& speed, const GaitPhase& phase, S* out) noexcept {
+             const JointSpeeds<S>& speed, const Phase& phase, S* out) noexcept {
   for (std::size_t i = 0; i < shape.inputs.size(); ++i) {
     const Input<S>& input = shape.inputs[i];
     out[i] = input.scale * (channel_value(input, body, angle, speed, phase) - input.offset);
@@ -281,10 +286,10 @@ void map_actions(const Shape<S>& shape, const S* action, JointTarget<S>& target)
 }
 
 /// One step: observation, network, action map. A parameter for each thing that a policy sees.
-template <class S>  // NOLINTNEXTLINE(readability-function-size)
+template <class S, class Phase>  // NOLINTNEXTLINE(readability-function-size)
 [[nodiscard]] JointTarget<S> evaluate(const Shape<S>& shape, const S* parameters, Scratch<S>& scratch,
                                       const BodyEstimate<S>& body, const JointAngles<S>& angle,
-                                      const JointSpeeds<S>& speed, const GaitPhase& phase) noexcept {
+                                      const JointSpeeds<S>& speed, const Phase& phase) noexcept {
   observe(shape, body, angle, speed, phase, scratch.from.data());
   JointTarget<S> target;
   map_actions(shape, forward(shape, parameters, scratch), target);
