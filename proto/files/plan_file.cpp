@@ -29,16 +29,32 @@ void judge_adaptation(const v1::Plan& plan, const std::string& file, Defects& de
     refuse("search_walks", std::to_string(plan.search_walks()),
            searches ? "at least 1 for " + kind : "0: OFFERED_CANDIDATE does not search");
   }
-  const bool pairs = adaptation.kind() == Adaptation::ES_GRADIENT;
-  const std::uint32_t walks = adaptation.batch() * (pairs ? 2 : 1);
-  if (searches && adaptation.has_batch() && walks > plan.search_walks()) {
-    refuse("adaptation.batch", std::to_string(adaptation.batch()),
-           "a batch that fits into search_walks, " + std::to_string(plan.search_walks()) +
-               (pairs ? " (a pair is two walks)" : ""));
+  const std::uint32_t least = first_batch_walks(plan);
+  if (searches && plan.search_walks() > 0 && least > plan.search_walks()) {
+    refuse("search_walks", std::to_string(plan.search_walks()),
+           "at least " + std::to_string(least) + ", the first batch of " + kind);
   }
 }
 
 }  // namespace
+
+std::uint32_t first_batch_walks(const v1::Plan& plan) {
+  const Adaptation& adaptation = plan.adaptation();
+  const std::uint32_t batch = adaptation.has_batch() ? adaptation.batch() : 5;
+  const std::uint32_t repeats = adaptation.has_repeats() ? adaptation.repeats() : 3;
+  switch (adaptation.kind()) {
+    case Adaptation::SEQUENTIAL_HILL_CLIMBING:
+      return 2;
+    case Adaptation::AVERAGED_HILL_CLIMBING:
+      return 2 * repeats;
+    case Adaptation::BATCH_HILL_CLIMBING:
+      return 1 + batch;
+    case Adaptation::ES_GRADIENT:
+      return 2 * batch;
+    default:
+      return 0;
+  }
+}
 
 std::optional<v1::Plan> parse_plan(const std::string& text, const std::string& file, Defects& defects) {
   v1::Plan plan;
@@ -52,10 +68,13 @@ std::optional<v1::Plan> parse_plan(const std::string& text, const std::string& f
                        "at least " + shown_number(least) + ", the least p that " +
                            std::to_string(plan.confirmation_pairs()) + " pairs can give"});
   }
-  const double minutes = (plan.baseline_walks() + 2.0 * plan.confirmation_pairs()) * plan.walk_s() / 60;
+  const double least_walks =
+      plan.baseline_walks() + first_batch_walks(plan) + 2.0 * plan.confirmation_pairs();
+  const double minutes = least_walks * plan.walk_s() / 60;
   if (!(minutes <= plan.max_minutes())) {
     defects.push_back({file, "max_minutes", shown_number(plan.max_minutes()),
-                       "time for baseline and confirmation alone, " + shown_number(minutes) + " (min)"});
+                       "at least " + shown_number(minutes) + ": " + shown_number(least_walks) + " walks of " +
+                           shown_number(plan.walk_s()) + " s for baseline, first batch and confirmation"});
   }
   if (defects.size() != before) return std::nullopt;
   return plan;

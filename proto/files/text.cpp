@@ -32,6 +32,57 @@ class Descriptor {
   int fd_;
 };
 
+constexpr const char* kText = "text of the file's message, see proto/pastern/v1";
+
+std::string between(const std::string& text, const std::string& before, const std::string& after) {
+  const std::size_t begin = text.find(before);
+  if (begin == std::string::npos) return "";
+  const std::size_t from = begin + before.size();
+  const std::size_t end = text.find(after, from);
+  return end == std::string::npos ? "" : text.substr(from, end - from);
+}
+
+std::string quoted(const std::string& token) {
+  return token.size() > 1 && token.front() == '"' && token.back() == '"' ? token : "\"" + token + "\"";
+}
+
+std::string in_words(const std::string& kind) {
+  if (kind == "identifier") return "a field's name";
+  if (kind == "integer") return "a whole number";
+  if (kind == "double") return "a number";
+  return kind == "string" ? "a text in quotes" : kind;
+}
+
+// The parser's sentences in our form. They are not promised to stay as they are: what is not known is told
+// as it came, as a phrase and not as a sentence.
+Defect told(const std::string& place, std::string message) {
+  while (!message.empty() && (message.back() == '.' || message.back() == ' ')) message.pop_back();
+  for (const char* got : {", found ", ", got:"}) {
+    const std::size_t at = message.find(got);
+    if (message.rfind("Expected ", 0) != 0 || at == std::string::npos) continue;
+    std::string found = message.substr(at + std::string(got).size());
+    if (!found.empty() && found.front() == ' ') found.erase(0, 1);
+    if (found.size() > 3 && found.compare(0, 2, "\"\"") == 0) found = found.substr(1, found.size() - 2);
+    return {place, "", found.empty() || found == "\"\"" ? "the file's end" : quoted(found),
+            in_words(message.substr(9, at - 9))};
+  }
+  const std::string field = between(message, "has no field named \"", "\"");
+  const std::string type = between(message, "Message type \"pastern.v1.", "\"");
+  if (!field.empty() && !type.empty()) {
+    return {place, field, "a field of no such name", "a field of " + type + ", see proto/pastern/v1"};
+  }
+  const std::string value = between(message, "Unknown enumeration value of \"", "\"");
+  const std::string of = between(message, "for field \"", "\"");
+  if (!value.empty() && !of.empty()) {
+    return {place, of, "\"" + value + "\"", "one of its names, see proto/pastern/v1"};
+  }
+  const std::string twice = between(message, "Non-repeated field \"", "\" is specified multiple times");
+  if (!twice.empty()) return {place, twice, "the field twice", "it once"};
+  if (!message.empty() && message[0] >= 'A' && message[0] <= 'Z')
+    message[0] = static_cast<char>(message[0] - 'A' + 'a');
+  return {place, "", "\"" + message + "\"", kText};
+}
+
 class Collector : public google::protobuf::io::ErrorCollector {
  public:
   Collector(const std::string& file, Defects& defects) : file_(file), defects_(defects) {}
@@ -41,7 +92,7 @@ class Collector : public google::protobuf::io::ErrorCollector {
     if (++count_ > kMostComplaints) return;
     const std::string place =
         line < 0 ? file_ : file_ + ":" + std::to_string(line + 1) + ":" + std::to_string(column + 1);
-    defects_.push_back({place, "", message, "text of the file's message, see proto/pastern/v1"});
+    defects_.push_back(told(place, message));
   }
   void AddWarning(int line, google::protobuf::io::ColumnNumber column, const std::string& message) override {
     AddError(line, column, message);

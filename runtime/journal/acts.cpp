@@ -87,14 +87,20 @@ std::optional<FirstStart> Journal::first_start(const std::string& robot_sha256_h
   return std::nullopt;
 }
 
-Written Journal::remember_command(const std::string& id, const std::string& answer_bytes) {
-  return impl_->write_one("command " + id, "INSERT INTO commands (id, answer_message, seal) VALUES (?, ?, ?)",
-                          id, Blob{answer_bytes}, seal_of({id, answer_bytes}));
+Written Journal::remember_command(const CommandRow& command) {
+  const auto& [key, id, sum, answer] = command;
+  return impl_->write_one(
+      "command " + id,
+      "INSERT INTO commands (client_key, id, command_sha256, answer_message, seal) VALUES (?, ?, ?, ?, ?)",
+      key, id, sum, Blob{answer}, seal_of({key, id, sum, answer}));
 }
 
-std::optional<std::string> Journal::command_answer(const std::string& id) const {
-  Query query(impl_->database, "SELECT answer_message FROM commands WHERE id = ?", id);
-  return impl_->one_value(query, "command " + id);
+std::optional<CommandRow> Journal::command(const std::string& key, const std::string& id) const {
+  Query query(impl_->database,
+              "SELECT command_sha256, answer_message FROM commands WHERE client_key = ? AND id = ?", key, id);
+  if (query.row()) return CommandRow{key, id, query.bytes(0), query.bytes(1)};
+  impl_->sound(query, "command " + id);
+  return std::nullopt;
 }
 
 Written Journal::store_telemetry(const v1::Telemetry& telemetry) {

@@ -13,7 +13,7 @@ namespace pastern::journal {
 /// "PAT1": PRAGMA application_id of a journal.
 inline constexpr int kApplicationId = 0x50415431;
 /// PRAGMA user_version of schema.sql.
-inline constexpr int kSchemaVersion = 1;
+inline constexpr int kSchemaVersion = 2;
 
 struct Journal::Impl {
   FolderLock lock;  // before the database: dropped after it is closed

@@ -49,10 +49,12 @@ std::string objection_to(Database& database, bool& fresh) {
     return "not a journal: found application id " + std::to_string(application) + ", expected " +
            std::to_string(kApplicationId);
   const int version = number_in(database, "PRAGMA user_version");
-  if (version > kSchemaVersion)
-    return "made by a newer program: found version " + std::to_string(version) +
-           ", this program knows up to " + std::to_string(kSchemaVersion);
-  if (version < 1) return "not a journal: found version " + std::to_string(version) + ", expected 1";
+  const std::string versions =
+      "found schema version " + std::to_string(version) + ", expected " + std::to_string(kSchemaVersion);
+  if (version < 1) return "not a journal: " + versions;
+  if (version != kSchemaVersion)
+    return std::string("written by ") + (version > kSchemaVersion ? "a newer" : "an older") +
+           " program: " + versions + "; read it with that program, or begin a new journal in another folder";
   std::string verdict;
   if (!database.ask("PRAGMA quick_check(1)", verdict)) return "damaged: " + database.message();
   return verdict == "ok" ? "" : "damaged: " + verdict;
@@ -82,7 +84,7 @@ std::string objection_to_rows(Database& database) {
         "SELECT 'kept value ' || name, name, bytes, seal FROM kept_values",
         "SELECT 'adoption ' || adoption, policy_sha256, who, when_utc, words, seal FROM adoptions",
         "SELECT 'first start of ' || robot_sha256, robot_sha256, who, when_utc, seal FROM first_starts",
-        "SELECT 'command ' || id, id, answer_message, seal FROM commands",
+        "SELECT 'command ' || id, client_key, id, command_sha256, answer_message, seal FROM commands",
         "SELECT 'telemetry ' || sequence, sequence, telemetry_message, seal FROM telemetry",
         "SELECT 'note ' || note, session, words, seal FROM notes"}) {
     if (std::string words = first_unsealed(database, sql); !words.empty()) return words;

@@ -1,5 +1,5 @@
 // The durable record: SQLite, WAL, synchronous FULL. A walk is on disk before the next begins. Session thread
-// only. Schema: runtime/journal/schema.sql (documented there, versioned; a newer version is refused). Any
+// only. Schema: runtime/journal/schema.sql (documented there, versioned; another version is refused). Any
 // SQLite tool opens it. What was read is checked against its SHA-256: a journal that was changed or damaged
 // is refused when it is opened.
 #pragma once
@@ -43,11 +43,21 @@ struct Adoption {
   std::string policy_sha256_hex;
   std::string who;
   std::string when_utc;
-  std::string words;
+  std::string words;  ///< why; kWentBack for a step back
 };
+
+inline constexpr const char* kWentBack = "gone back to";
 
 /// SHA-256 of the parameters as little-endian IEEE 754 doubles, in their order: 32 bytes.
 [[nodiscard]] std::string parameters_sha256(const Parameters& parameters);
+
+/// A command that was carried out. The same id under another key is another command.
+struct CommandRow {
+  std::string key;  ///< public key of who sent it; empty without keys
+  std::string id;
+  std::string command_sha256_hex;  ///< of what it asks for, so that another command under its id is noticed
+  std::string answer;              ///< bytes of the v1::Answer
+};
 
 /// Key of put() and get() under which the onboard program writes when, on what and by whom a session was
 /// begun: "2026-01-31T12:00:00Z, simulated robot, stepped pace, by ida".
@@ -55,11 +65,17 @@ struct Adoption {
   return "begun." + std::to_string(session);
 }
 
+/// Key of put() and get() for the drives on which a session was begun: what the plug-in calls itself, a line
+/// end, its settings as they were given.
+[[nodiscard]] inline std::string drives_key(std::uint64_t session) {
+  return "drives." + std::to_string(session);
+}
+
 class Journal {
  public:
-  /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, newer schema,
-  /// not a journal, damaged, locked by another process, disk full. `vfs` names an SQLite VFS (tests), empty
-  /// for the default. `read_only`: takes no lock, creates nothing, and `folder` may be the journal file
+  /// Opens or creates `folder`/pastern.journal. Null with one line in `error`: not a folder, older or newer
+  /// schema, not a journal, damaged, locked by another process, disk full. `vfs` names an SQLite VFS (tests),
+  /// empty for the default. `read_only`: takes no lock, creates nothing, and `folder` may be the journal file
   /// itself (a copy, say). An empty file counts as a new journal: a power cut while it is made leaves one.
   [[nodiscard]] static std::unique_ptr<Journal> open(const std::string& folder, std::string& error,
                                                      const std::string& vfs = "", bool read_only = false);
@@ -116,9 +132,9 @@ class Journal {
   // Operators' acts.
   [[nodiscard]] Written confirm_first_start(const FirstStart& first);
   [[nodiscard]] std::optional<FirstStart> first_start(const std::string& robot_sha256_hex) const;
-  /// Remembers a command's answer; `seen` gives it back when the id was there before (also after a restart).
-  [[nodiscard]] Written remember_command(const std::string& id, const std::string& answer_bytes);
-  [[nodiscard]] std::optional<std::string> command_answer(const std::string& id) const;
+  /// Once a key and id; command() gives it back, also after a restart.
+  [[nodiscard]] Written remember_command(const CommandRow& command);
+  [[nodiscard]] std::optional<CommandRow> command(const std::string& key, const std::string& id) const;
   /// Telemetry that must be fetchable for ever (episodes, verdicts, notes), by sequence.
   [[nodiscard]] Written store_telemetry(const v1::Telemetry& telemetry);
   [[nodiscard]] std::vector<v1::Telemetry> telemetry(std::uint64_t from, std::uint64_t to) const;

@@ -1,9 +1,11 @@
--- Pastern's journal, version 1. An SQLite 3 database in WAL mode (synchronous FULL while the onboard program
+-- Pastern's journal, version 2. An SQLite 3 database in WAL mode (synchronous FULL while the onboard program
 -- writes it). Any SQLite tool reads it; write to it with nothing but the onboard program.
 --
 -- PRAGMA application_id = 1346458673 (0x50415431, "PAT1"): this is a journal.
--- PRAGMA user_version   = 1: the version of this schema. A program refuses a version newer than its own.
--- Rules of change: a new column has a default and raises the version; nothing is renamed or removed.
+-- PRAGMA user_version   = 2: the version of this schema. A program refuses every version but its own: a newer
+-- one, and an older one too, since nothing here carries an old record over. Version 1 had no seals at first, and
+-- commands without the key of who sent them.
+-- Rule of change: whatever changes a table raises the version.
 --
 -- Unsigned 64-bit numbers (draw) are stored as the signed integer of the same bits. SHA-256 sums are lower-case
 -- hex, 64 characters. Times ending in _utc are the computer's clock, for people only; nothing is computed from
@@ -115,11 +117,14 @@ CREATE TABLE first_starts (
   seal         TEXT NOT NULL                        -- of robot_sha256 to when_utc
 ) WITHOUT ROWID;
 
--- Commands already carried out: a repeated id gets the same answer and does nothing.
+-- Commands already carried out: a repeated id of the same key gets the same answer and does nothing.
 CREATE TABLE commands (
-  id             TEXT PRIMARY KEY,
+  client_key     TEXT NOT NULL,                     -- public key of who sent it, Z85; empty without keys
+  id             TEXT NOT NULL,
+  command_sha256 TEXT NOT NULL,                     -- of the command without id, baton and name of the sender
   answer_message BLOB NOT NULL,                     -- pastern.v1.Answer
-  seal           TEXT NOT NULL                      -- of id, answer_message
+  seal           TEXT NOT NULL,                     -- of client_key to answer_message
+  PRIMARY KEY (client_key, id)
 ) WITHOUT ROWID;
 
 -- Published messages that can be fetched for ever, by sequence number.

@@ -181,7 +181,8 @@ void Desk::submit(const Opened& opened) {
   const Ticket ticket = next_ticket();
   const Sender& sender = opened.mail->sender;
   // A full queue is no decision about the command: the same id may come again.
-  if (tickets_.size() >= kMostTickets || !line_.submit(ticket, opened.command, who(sender, opened.command))) {
+  const Asker asker{who(sender, opened.command), sender.key};
+  if (tickets_.size() >= kMostTickets || !line_.submit(ticket, opened.command, asker)) {
     return refuse(opened, "refused: too many commands are waiting; try again");
   }
   Asked& asked = remember(opened);

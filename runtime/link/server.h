@@ -28,6 +28,12 @@ struct Ticket {
   std::uint64_t number{0};
 };
 
+/// Who sent a command.
+struct Asker {
+  std::string who;  ///< for people: "ida (key tablet)"
+  std::string key;  ///< public key, Z85: ids of commands are unique within it; empty without keys
+};
+
 /// What the server calls, from the link thread. Each returns at once and never touches a disk.
 class Line {
  public:
@@ -39,7 +45,7 @@ class Line {
   virtual void baton_held(bool held) = 0;
   /// All other commands: queued for the session thread, which calls Server::answer. False when the queue is
   /// full.
-  [[nodiscard]] virtual bool submit(Ticket ticket, const v1::Command& command, const std::string& who) = 0;
+  [[nodiscard]] virtual bool submit(Ticket ticket, const v1::Command& command, const Asker& asker) = 0;
   [[nodiscard]] virtual bool submit(Ticket ticket, const v1::Fetch& fetch) = 0;
   [[nodiscard]] virtual v1::Status status() const = 0;  ///< latest snapshot, a copy under a short lock
 };

@@ -26,6 +26,14 @@ v1::Answer refused(const std::string& words) {
   return answer;
 }
 
+/// SHA-256 in hex of what a command asks for, whoever sends it under whichever baton.
+std::string sum_of(v1::Command command) {
+  command.clear_id();
+  command.clear_baton();
+  command.clear_operator_name();
+  return files::hex(files::sha256(command.SerializeAsString()));
+}
+
 std::string first_line(const files::Defects& defects) {
   if (defects.empty()) return "a file is wrong";
   const std::size_t more = defects.size() - 1;
@@ -34,24 +42,29 @@ std::string first_line(const files::Defects& defects) {
 
 }  // namespace
 
-// A repeated id is the same command: it gets the first answer again and nothing is done, also after a
-// restart.
+// A repeated id of the same key is the same command: it gets the first answer again and nothing is done, also
+// after a restart. Another command under the same id is refused, as the link does with what it remembers.
 void Program::answer(const Asked& asked, const v1::Command& command) {
   v1::Answer answer;
-  const std::optional<std::string> before = parts_.journal.command_answer(command.id());
-  if (before && answer.ParseFromString(*before)) {
+  const std::string& key = asked.asker.key;
+  const std::string sum = sum_of(command);
+  const std::optional<journal::CommandRow> before = parts_.journal.command(key, command.id());
+  if (before && before->command_sha256_hex != sum) {
+    answer = refused("the id was used for another command; a new command needs a new id");
+  } else if (before && answer.ParseFromString(before->answer)) {
     answer.set_repeated(true);
   } else {
     answer = act(command, asked);
     answer.set_id(command.id());
-    (void)parts_.journal.remember_command(command.id(), answer.SerializeAsString()).ok;
+    (void)parts_.journal.remember_command({key, command.id(), sum, answer.SerializeAsString()}).ok;
   }
+  answer.set_id(command.id());
   show_status(false);  // who asks for the status after this answer sees what the command did
   server_->answer(asked.ticket, answer);
 }
 
 v1::Answer Program::act(const v1::Command& command, const Asked& asked) {
-  const std::string& who = asked.who;
+  const std::string& who = asked.asker.who;
   switch (command.what_case()) {
     case v1::Command::kStartSession:
       return start_session(command.start_session(), who);
@@ -182,6 +195,9 @@ v1::Answer Program::adopt(const v1::Adopt& adopt, const std::string& who) {
   const std::optional<std::string> sha =
       adopt.policy_sha256().empty() ? proposed_sha(words) : files::hex(adopt.policy_sha256());
   if (!sha) return refused(words);
+  const bool adopted_before = !parts_.journal.adoptions().empty();
+  if (adopted_before && *sha == files::hex(parts_.policy.sha256()))
+    return accepted("policy " + *sha + " is current already; nothing was changed");
   const std::optional<std::string> bytes = parts_.journal.policy(*sha);
   if (!bytes) return refused("no policy with sha256 " + *sha + " in the journal");
   files::Defects defects;
@@ -191,14 +207,15 @@ v1::Answer Program::adopt(const v1::Adopt& adopt, const std::string& who) {
   if (!policy || !files::write_durably(path, *bytes, 0644, defects)) return refused(first_line(defects));
   // The history begins with the policy that the program was started with: the way back leads there.
   journal::Written written{true, ""};
-  if (parts_.journal.adoptions().empty()) {
+  if (!adopted_before) {
     const std::string first = files::hex(parts_.policy.sha256());
     written = parts_.journal.adopt({first, who, now_utc(), "was current before the first adoption"});
   }
   if (!written.ok) return refused(written.words);
-  written = parts_.journal.adopt(
-      {*sha, who, now_utc(),
-       adopt.policy_sha256().empty() ? "as the last verdict proposes" : "named by the operator"});
+  const char* why = adopt.policy_sha256().empty() ? "as the last verdict proposes"
+                    : adopt.back()                ? journal::kWentBack
+                                                  : "named by the operator";
+  written = parts_.journal.adopt({*sha, who, now_utc(), why});
   if (!written.ok) return refused(written.words);
   parts_.policy = std::move(*policy);
   on_note("policy " + *sha + " adopted by " + who);

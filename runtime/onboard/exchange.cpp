@@ -30,11 +30,11 @@ bool Exchange::stop_confirmed() const {
 
 void Exchange::baton_held(bool held) { signals_.baton_lost.store(!held, std::memory_order_release); }
 
-bool Exchange::submit(link::Ticket ticket, const v1::Command& command, const std::string& who) {
-  return push({ticket, command, who, 0});
+bool Exchange::submit(link::Ticket ticket, const v1::Command& command, const link::Asker& asker) {
+  return push({ticket, command, asker, 0});
 }
 
-bool Exchange::submit(link::Ticket ticket, const v1::Fetch& fetch) { return push({ticket, fetch, "", 0}); }
+bool Exchange::submit(link::Ticket ticket, const v1::Fetch& fetch) { return push({ticket, fetch, {}, 0}); }
 
 bool Exchange::push(Asked asked) {
   asked.stops_seen = signals_.stops_asked.load();

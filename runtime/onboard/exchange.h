@@ -20,7 +20,7 @@ namespace pastern::onboard {
 struct Asked {
   link::Ticket ticket;
   std::variant<v1::Command, v1::Fetch> what;
-  std::string who;
+  link::Asker asker;            ///< empty for a fetch
   std::uint64_t stops_seen{0};  ///< Signals::stops_asked when it came
 };
 
@@ -35,7 +35,8 @@ class Exchange final : public link::Line {
   void halt() override;
   [[nodiscard]] bool stop_confirmed() const override;
   void baton_held(bool held) override;
-  [[nodiscard]] bool submit(link::Ticket ticket, const v1::Command& command, const std::string& who) override;
+  [[nodiscard]] bool submit(link::Ticket ticket, const v1::Command& command,
+                            const link::Asker& asker) override;
   [[nodiscard]] bool submit(link::Ticket ticket, const v1::Fetch& fetch) override;
   [[nodiscard]] v1::Status status() const override;
 

@@ -98,7 +98,8 @@ int serve(const Options& options, const files::RobotFile& robot, journal::Journa
   const std::unique_ptr<session::Mover> mover = make_mover(options, cycle, journal);
   mover->signals().baton_lost.store(true, std::memory_order_release);  // until somebody holds it
   Exchange exchange(mover->signals());
-  Program program({robot, *policy, options.journal, *mover, journal, exchange, leaving});
+  Program program({robot, *policy, options.journal, *mover, journal, exchange, leaving, drives_name,
+                   options.hal_options});
   if (!program.trouble().empty()) return complain(kFile, program.trouble());
   const link::ServerConfig config{options.host,       options.command_port, options.telemetry_port,
                                   options.fetch_port, options.keys,         options.baton_lapse_ms};

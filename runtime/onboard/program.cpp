@@ -58,6 +58,7 @@ void Program::do_job() {
       ended = runner_.run(*job.setup);
       break;
     case Job::Kind::resume:
+      tell_other_drives();
       ended = runner_.resume();
       break;
     case Job::Kind::walk:
@@ -114,6 +115,8 @@ void Program::show_status(bool to_all) {
   runner_.fill(status);
   status.set_policy_sha256_hex(files::hex(parts_.policy.sha256()));
   if (!runner_.first_start_missing().empty()) status.set_waiting_for("first-start confirmation");
+  status.set_drives(parts_.drives);
+  status.set_drives_settings(parts_.drives_settings);
   status.set_last_sequence(sequence_);
   if (server_ != nullptr) status.set_baton_holder(server_->baton_holder());
   parts_.exchange.show(status);
@@ -167,8 +170,22 @@ void Program::on_begun(std::uint64_t session) {
   const std::string words = now_utc() + ", " +
                             (parts_.mover.simulated() ? "simulated robot" : "real drives") + ", " +
                             (stepped ? "stepped" : "wall") + " pace, by " + begun_by_;
-  (void)parts_.journal.put(journal::begun_key(session), words)
-      .ok;  // a failed journal stops the session itself
+  // A failed journal stops the session itself.
+  (void)parts_.journal.put(journal::begun_key(session), words).ok;
+  (void)parts_.journal.put(journal::drives_key(session), parts_.drives + "\n" + parts_.drives_settings).ok;
+}
+
+// A session that was begun on one simulated site and goes on on another must not be taken for one.
+void Program::tell_other_drives() {
+  const std::uint64_t session = runner_.interrupted_session();
+  const std::optional<std::string> begun = parts_.journal.get(journal::drives_key(session));
+  const std::string now = parts_.drives + "\n" + parts_.drives_settings;
+  if (session == 0 || !begun || *begun == now) return;
+  const std::string words = "session " + std::to_string(session) +
+                            " goes on on other drives or settings: " + parts_.drives + ", " +
+                            parts_.drives_settings;
+  (void)parts_.journal.note(session, words).ok;
+  on_note(words);
 }
 
 void Program::on_episode(const v1::Episode& episode) {

@@ -33,6 +33,8 @@ class Program final : public session::Hooks {
     journal::Journal& journal;
     Exchange& exchange;
     const Leaving& leaving;
+    std::string drives{};           ///< what the plug-in calls itself
+    std::string drives_settings{};  ///< as they were given
   };
   explicit Program(Parts parts);
 
@@ -64,6 +66,7 @@ class Program final : public session::Hooks {
   void rest_when_asked();
   void show_status(bool to_all);
   void do_job();
+  void tell_other_drives();
   [[nodiscard]] v1::Telemetry numbered();
   void publish(const v1::Telemetry& telemetry, bool kept);
   void publish_missed();

@@ -383,6 +383,10 @@ void Cycle::set_down() noexcept {
 
 void Cycle::count_missed(std::uint64_t ticks) noexcept { impl_->missed += ticks; }
 
+Motion Cycle::motion() const noexcept { return impl_->motion; }
+
+safety::TimeNs Cycle::now() const noexcept { return impl_->now; }
+
 CycleReport Cycle::report() const noexcept {
   const Impl& s = *impl_;
   CycleReport report;
@@ -397,7 +401,13 @@ CycleReport Cycle::report() const noexcept {
   report.trip = s.gate.trip();
   report.trip.tick += s.gate_tick_base;
   report.pack_voltage_v = s.frame.pack_voltage_v;
+  report.pack_current_a = s.frame.pack_current_a;
   report.winding_max_c = s.winding_max_c;
+  report.joint_count = s.seen_frame ? s.joint_count : 0;
+  report.angle = s.frame.angle;
+  report.winding = s.frame.winding;
+  report.targeted = s.armed() && s.motion != Motion::parked;
+  report.target = s.target.angle;
   report.thermal = s.gate.thermal_state();
   return report;
 }

@@ -74,7 +74,13 @@ struct CycleReport {
   safety::Hold hold{safety::Hold::none};
   safety::Trip trip;
   double pack_voltage_v{0};
+  double pack_current_a{0};
   double winding_max_c{0};
+  int joint_count{0};  ///< of the last frame; 0 before the first
+  JointAngles<> angle;
+  safety::Temperatures<> winding;
+  bool targeted{false};  ///< `target` is being followed: armed, and not parked
+  JointAngles<> target;
   safety::PerJoint<safety::Celsius> thermal;  ///< the gate's thermal memory, fractions of the limit
 };
 
@@ -113,6 +119,9 @@ class Cycle {
   void set_down() noexcept;
   void count_missed(std::uint64_t ticks) noexcept;
   [[nodiscard]] CycleReport report() const noexcept;
+  /// Of report(), for whoever asks every tick.
+  [[nodiscard]] Motion motion() const noexcept;
+  [[nodiscard]] safety::TimeNs now() const noexcept;
 
   /// What carries over between walks and over a restart: the gate's thermal memory, tick and time, and what a
   /// simulated robot saves of itself. Between motions.

@@ -130,6 +130,7 @@ class Runner {
   [[nodiscard]] Ended leave_session(Ended::How how, const std::string& words);
   void say(const std::string& words);
   void recall_last_session();
+  void tell_joints(const CycleReport& report, v1::Status& status) const;
   [[nodiscard]] std::int64_t session_ns();
   [[nodiscard]] bool tripped();
   [[nodiscard]] bool releases_itself(const safety::Trip& trip) const;

@@ -1,4 +1,7 @@
 // What the runner tells: episodes, trips, status.
+#include <algorithm>
+
+#include "proto/files/plan_file.h"
 #include "runtime/episode/recorder.h"
 #include "runtime/session/runner.h"
 
@@ -81,13 +84,37 @@ void Runner::recall_last_session() {
   last_.Clear();
   last_.set_session(row->session);
   last_.set_session_part(row->ended ? v1::ENDED : v1::INTERRUPTED);
+  files::Defects ignored;  // an unreadable plan is told when the session is resumed
+  const std::optional<v1::Plan> plan = files::parse_plan(row->plan_text, "recorded plan", ignored);
+  if (plan) last_.set_walks_planned(walks_planned(*plan));
+  double baseline = 0;
+  int baseline_walks = 0;
+  std::optional<double> best;
   for (const journal::Journal::Finished& walk : journal_.finished(row->session)) {
-    last_.set_walks_done(walk.episode.walk());
-    if (walk.episode.outcome() == v1::FELL) last_.set_falls(last_.falls() + 1);
-    if (walk.episode.outcome() == v1::VOID) last_.set_voids(last_.voids() + 1);
+    const v1::Episode& episode = walk.episode;
+    last_.set_walks_done(episode.walk());
+    if (episode.outcome() == v1::FELL) last_.set_falls(last_.falls() + 1);
+    if (episode.outcome() == v1::VOID) last_.set_voids(last_.voids() + 1);
+    if (episode.outcome() == v1::VOID) continue;
+    const double total = episode.terms().total();
+    if (episode.part() == v1::BASELINE) baseline += total, ++baseline_walks;
+    if (episode.part() == v1::SEARCH) best = std::max(best.value_or(total), total);
   }
+  if (baseline_walks > 0) last_.set_start_return(baseline / baseline_walks);
+  if (best) last_.set_best_return(*best);
   const std::optional<v1::Verdict> verdict = journal_.verdict(row->session);
   if (verdict) *last_.mutable_verdict() = *verdict;
+}
+
+void Runner::tell_joints(const CycleReport& report, v1::Status& status) const {
+  status.clear_joints();
+  for (int j = 0; j < report.joint_count; ++j) {
+    v1::JointStatus& joint = *status.add_joints();
+    joint.set_name(robot_.robot().joints(j).name());
+    joint.set_angle_rad(report.angle[j]);
+    if (report.targeted) joint.set_target_rad(report.target[j]);
+    joint.set_winding_c(report.winding[j]);
+  }
 }
 
 void Runner::fill(v1::Status& status) {
@@ -117,7 +144,9 @@ void Runner::fill(v1::Status& status) {
   status.set_scheduling(mover_.scheduling());
   status.set_simulated(mover_.simulated());
   status.set_pack_voltage_v(report.pack_voltage_v);
+  status.set_pack_current_a(report.pack_current_a);
   status.set_winding_max_c(report.winding_max_c);
+  tell_joints(report, status);
   status.set_ticks(report.ticks);
   status.set_overruns(report.overruns);
   status.set_software(software());

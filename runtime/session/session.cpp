@@ -66,6 +66,11 @@ std::string text(const char* format, double a, double b = 0, double c = 0, doubl
 
 }  // namespace
 
+std::uint64_t walks_planned(const v1::Plan& plan) {
+  const std::uint64_t search = offered(plan) ? 0 : plan.search_walks();
+  return plan.baseline_walks() + search + 2ULL * plan.confirmation_pairs();
+}
+
 std::string refusal(const SessionStart& start) {
   if (!offered(start.plan)) {
     return start.candidate
@@ -102,10 +107,7 @@ const Parameters& Session::adapted() const {
   return given_.candidate ? *given_.candidate : given_.start;
 }
 
-std::uint64_t Session::walks_planned() const {
-  const std::uint64_t search = operator_ ? given_.plan.search_walks() : 0;
-  return given_.plan.baseline_walks() + search + 2ULL * given_.plan.confirmation_pairs();
-}
+std::uint64_t Session::walks_planned() const { return session::walks_planned(given_.plan); }
 
 double Session::start_return() const { return baseline_done_ > 0 ? baseline_sum_ / baseline_done_ : 0.0; }
 
@@ -304,6 +306,8 @@ void Session::judge() {
   words += text(", p = %.4f at level %g, ", p, level) + std::to_string(differences_.size()) + " pairs";
   // The interval's upper end is below zero exactly where the test the other way round is passed.
   const bool worse = interval.high < 0;
+  if (of_no_practical_size(effect, interval.low, interval.high))
+    words += text(": real, but of no practical size (below %g)", kPracticalSize);
   if (!adopt) words += worse ? ": the adapted policy walks worse" : ": not told apart from chance";
   if (!search_ended_.empty()) words += "; " + search_ended_;
   verdict.set_words(words);

@@ -21,6 +21,9 @@ class Operator;
 
 namespace pastern::session {
 
+/// Walks of a plan at the most, voids not counted.
+[[nodiscard]] std::uint64_t walks_planned(const v1::Plan& plan);
+
 struct SessionStart {
   v1::Plan plan;  ///< checked (proto/files/plan_file.h)
   Parameters start;

@@ -252,11 +252,10 @@ class WallMover final : public Mover {
       answer(cycle_.gate().release());
     }
     if (mine_.answered != current_.number && cycle_.done()) answer(true);
-    const CycleReport now = cycle_.report();
-    const bool event = now.phase != mine_.cycle.phase || now.motion != mine_.cycle.motion;
-    if (!event && now.now.value - told_at_.value < kReportEvery_ns) return;
-    mine_.cycle = now;
-    if (reports_.push(mine_)) told_at_ = now.now;
+    const bool event = cycle_.gate().phase() != mine_.cycle.phase || cycle_.motion() != mine_.cycle.motion;
+    if (!event && cycle_.now().value - told_at_.value < kReportEvery_ns) return;
+    mine_.cycle = cycle_.report();
+    if (reports_.push(mine_)) told_at_ = mine_.cycle.now;
   }
 
   Cycle& cycle_;

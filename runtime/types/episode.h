@@ -34,6 +34,16 @@ struct EpisodeReturn {
   [[nodiscard]] double total() const { return forward + energy + drift + turn + fall; }
 };
 
+/// In return units. An effect that is shown to be there and is smaller than this is told as real but of no
+/// practical size. Our choice: an eightieth of the most that a walk of 5 s can earn (4.0). It changes the
+/// words only, never the verdict's rule.
+inline constexpr double kPracticalSize = 0.05;
+
+/// The interval excludes 0 and the effect is smaller than kPracticalSize.
+[[nodiscard]] constexpr bool of_no_practical_size(double effect, double low, double high) {
+  return (low > 0 || high < 0) && effect > -kPracticalSize && effect < kPracticalSize;
+}
+
 /// One episode to run: what, for how long, and the random stream that belongs to it.
 struct Order {
   std::uint64_t walk{0};  ///< 1, 2, 3 ... within the session, voids counted

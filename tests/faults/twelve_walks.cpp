@@ -64,8 +64,8 @@ bool begin(journal::Journal& journal, Acknowledged& done) {
 // Everything that happens around one walk.
 bool walk_once(journal::Journal& journal, Acknowledged& done, std::uint64_t walk) {
   const std::string command = "go " + std::to_string(walk);
-  if (!journal.command_answer(command)) {
-    if (!journal.remember_command(command, "accepted").ok) return false;
+  if (!journal.command("", command)) {
+    if (!journal.remember_command({"", command, "", "accepted"}).ok) return false;
     done.commands.push_back(command);
   }
   std::string why;
@@ -133,7 +133,7 @@ std::string missing(const journal::Journal& journal, const Acknowledged& done) {
   if (!at_least(journal.robot_state(), done.robot_state_of)) return "carried state";
   if (!at_least(journal.get("windings"), done.value_of)) return "kept value";
   for (const std::string& command : done.commands)
-    if (journal.command_answer(command) != "accepted") return "command";
+    if (const auto row = journal.command("", command); !row || row->answer != "accepted") return "command";
   if (journal.telemetry(1, done.telemetry).size() != done.telemetry) return "telemetry";
   if (done.policy && journal.policy(policy_sum()) != kPolicyBytes) return "policy";
   if (done.first_start && !journal.first_start(std::string(64, 'a'))) return "first start";

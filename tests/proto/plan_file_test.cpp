@@ -44,8 +44,27 @@ TEST(PlanFile, ASearchHasWalksAndAnOfferedCandidateHasNone) {
 TEST(PlanFile, ABatchMustFitIntoTheSearch) {
   EXPECT_EQ(why([](v1::Plan& p) { p.mutable_adaptation()->set_batch(25); }), "accepted");
   EXPECT_EQ(why([](v1::Plan& p) { p.mutable_adaptation()->set_batch(26); }),
-            "p: adaptation.batch: found 26, expected a batch that fits into search_walks, 50 (a pair is two "
-            "walks)\n");
+            "p: search_walks: found 50, expected at least 52, the first batch of ES_GRADIENT\n");
+}
+
+TEST(PlanFile, ABatchOfTheOperatorsDefaultSizeMustFitToo) {
+  const auto with = [](v1::Adaptation::Kind kind, std::uint32_t walks) {
+    return why([kind, walks](v1::Plan& p) {
+      p.mutable_adaptation()->clear_batch();
+      if (kind != v1::Adaptation::ES_GRADIENT) p.mutable_adaptation()->clear_step();
+      p.mutable_adaptation()->set_kind(kind);
+      p.set_search_walks(walks);
+    });
+  };
+  for (const auto& [kind, least] :
+       {std::pair{v1::Adaptation::ES_GRADIENT, 10U}, std::pair{v1::Adaptation::BATCH_HILL_CLIMBING, 6U},
+        std::pair{v1::Adaptation::AVERAGED_HILL_CLIMBING, 6U},
+        std::pair{v1::Adaptation::SEQUENTIAL_HILL_CLIMBING, 2U}}) {
+    EXPECT_EQ(with(kind, least), "accepted");
+    EXPECT_EQ(with(kind, least - 1), "p: search_walks: found " + std::to_string(least - 1) +
+                                         ", expected at least " + std::to_string(least) +
+                                         ", the first batch of " + v1::Adaptation::Kind_Name(kind) + "\n");
+  }
 }
 
 // 2^-5 = 0.03125 is the least p of an exact one-sided sign-flip test over five pairs.
@@ -62,10 +81,18 @@ TEST(PlanFile, ALevelThatTheTestCannotReachIsRefused) {
             "give\n");
 }
 
-TEST(PlanFile, MinutesMustHoldBaselineAndConfirmation) {
-  EXPECT_EQ(why([](v1::Plan& p) { p.set_max_minutes(1.7); }),
-            "p: max_minutes: found 1.7, expected time for baseline and confirmation alone, 1.75 (min)\n");
-  EXPECT_EQ(why([](v1::Plan& p) { p.set_max_minutes(1.75); }), "accepted");
+// (5 + 2 x 5 + 2 x 8) walks of 6 s: 3.1 minutes.
+TEST(PlanFile, MinutesMustHoldBaselineABatchAndConfirmation) {
+  const auto with = [](double minutes) {
+    return why([minutes](v1::Plan& p) {
+      p.set_walk_s(6);
+      p.set_max_minutes(minutes);
+    });
+  };
+  EXPECT_EQ(with(3),
+            "p: max_minutes: found 3, expected at least 3.1: 31 walks of 6 s for baseline, first "
+            "batch and confirmation\n");
+  EXPECT_EQ(with(3.11), "accepted");
 }
 
 }  // namespace

@@ -46,11 +46,33 @@ TEST(TextFile, UnknownFieldIsNamedWithLineAndColumn) {
   const auto line = 1 + std::count(sound.begin(), sound.end(), '\n');
   const std::string text = why(sound + "colour: 3\n");
   EXPECT_EQ(text.rfind("a.plan.txtpb:" + std::to_string(line) + ":", 0), 0U) << text;
-  EXPECT_NE(text.find("colour"), std::string::npos) << text;
+  EXPECT_NE(text.find(": colour: found a field of no such name, expected a field of Plan, see "),
+            std::string::npos)
+      << text;
+}
+
+// What the parser says comes in sentences of several forms; every one of ours is a single phrase.
+TEST(TextFile, TheParsersSentencesAreToldInTheFormOfADefect) {
+  const auto line = [](const std::string& text) { return why(text).substr(0, why(text).find('\n')); };
+  EXPECT_EQ(line("name: \"x\"\n\"A\" { }\n"), "a.plan.txtpb:2:5: found \"{\", expected a field's name");
+  EXPECT_EQ(line("seed: 3\nseed: 4\n"), "a.plan.txtpb:2:5: seed: found the field twice, expected it once");
+  EXPECT_EQ(line("go_by: NOBODY\n"),
+            "a.plan.txtpb:2:1: go_by: found \"NOBODY\", expected one of its names, see proto/pastern/v1");
+  EXPECT_EQ(line("walk_s: five\n"), "a.plan.txtpb:1:9: found \"five\", expected a number");
+  EXPECT_EQ(line("name \"x\""), "a.plan.txtpb:1:6: found \"x\", expected \":\"");
+  for (const char* text : {"name: 3\n", "walk_s: five\n", "seed: -1\n", "seed: 99999999999999999999999\n",
+                           "name: \"x\n", "{", "}", "adaptation {", "adaptation: 3", "adaptation { kind: }",
+                           "name \"x\"", "\"A\".", "seed: 0x", "# \n@"}) {
+    const std::string told = why(text);
+    EXPECT_NE(told.find("found "), std::string::npos) << told;
+    for (const char* ugly : {"., expected", "\"., ", ".., ", ".\"\n", "found Expected", "got:", "found , "}) {
+      EXPECT_EQ(told.find(ugly), std::string::npos) << ugly << " in " << told;
+    }
+  }
 }
 
 TEST(TextFile, AFieldSaidTwiceIsRefused) {
-  EXPECT_NE(why(fixture::text(fixture::plan()) + "seed: 3\n").find("specified multiple times"),
+  EXPECT_NE(why(fixture::text(fixture::plan()) + "seed: 3\n").find("seed: found the field twice"),
             std::string::npos);
 }
 

@@ -128,6 +128,38 @@ TEST_F(CheckTest, ScenarioWantsARobotAndFitsOnlyOneThatHasItsJoints) {
   EXPECT_NE(judged.out.find("no_such_joint"), std::string::npos) << judged.out;
 }
 
+TEST_F(CheckTest, ScenarioNamesEveryRobotThatItFits) {
+  const std::string knee = shipped("hal_stub/scenarios/worn_knee.scenario.txtpb");
+  const Ran both = run({"check", knee});
+  EXPECT_EQ(both.exit, 0) << both.out;
+  EXPECT_NE(both.out.find("fits dunlin12, dunlin8"), std::string::npos) << both.out;
+  const Ran one = run({"check", "--robot", shipped("hal_stub/robots/dunlin8.robot.txtpb"), knee});
+  EXPECT_NE(one.out.find("fits dunlin8\n"), std::string::npos) << one.out;
+  const std::string text = "name: \"mine\"\nwear { joint: \"front_left_abduction\" strength: 0.5 }\n";
+  const Ran some = run({"check", shipped("hal_stub/robots/dunlin8.robot.txtpb"),
+                        shipped("hal_stub/robots/dunlin12.robot.txtpb"), file("mine.scenario.txtpb", text)});
+  EXPECT_NE(some.out.find("mine: fits dunlin12; does not fit dunlin8"), std::string::npos) << some.out;
+  const Ran none =
+      run({"check", shipped("hal_stub/robots/dunlin8.robot.txtpb"),
+           shipped("hal_stub/robots/dunlin12.robot.txtpb"),
+           file("bad.scenario.txtpb", "name: \"bad\"\nwear { joint: \"tail\" strength: 0.5 }\n")});
+  EXPECT_EQ(none.exit, 1);
+  EXPECT_NE(none.out.find("(judged against dunlin"), std::string::npos) << none.out;
+}
+
+TEST_F(CheckTest, PlanThatCouldSearchNothingIsAFinding) {
+  const std::string text =
+      "name: \"mine\"\nadaptation { kind: ES_GRADIENT }\nseed: 1\nwalk_s: 5\n"
+      "baseline_walks: 5\nsearch_walks: 9\nconfirmation_pairs: 8\nconfirmation_level: 0.05\n"
+      "max_falls: 5\nmax_minutes: 2\nmax_void_repeats: 3\ngo_by: AUTO\n";
+  const Ran ran = run({"check", file("mine.plan.txtpb", text)});
+  EXPECT_EQ(ran.exit, 1);
+  EXPECT_NE(ran.out.find("search_walks: found 9, expected at least 10, the first batch of ES_GRADIENT\n"),
+            std::string::npos)
+      << ran.out;
+  EXPECT_NE(ran.out.find("max_minutes: found 2, expected at least 2.58"), std::string::npos) << ran.out;
+}
+
 TEST_F(CheckTest, DamagedPolicyIsToldAndNeverSound) {
   const std::string bytes = files::pack_policy(small_policy());
   const std::string robot = shipped("hal_stub/robots/dunlin8.robot.txtpb");

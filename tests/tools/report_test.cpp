@@ -3,6 +3,7 @@
 #include <gtest/gtest.h>
 
 #include <algorithm>
+#include <cmath>
 #include <filesystem>
 #include <fstream>
 #include <iterator>
@@ -174,6 +175,57 @@ TEST_F(ReportTest, ASimulatedRobotIsNotTakenForARealOne) {
   EXPECT_NE(simulated.find(", begun " + begun), std::string::npos);
   EXPECT_NE(simulated.find("better on this simulated robot"), std::string::npos);
   EXPECT_NE(simulated.find("no proof for a real one"), std::string::npos);
+}
+
+TEST_F(ReportTest, WhereTheSessionRanIsNamedOnThePageInTheTextAndAsJson) {
+  write_usual();
+  std::string error;
+  const auto told = [&](const std::string& on, const std::string& drives) {
+    const auto journal = journal::Journal::open(folder_.path(), error);
+    ASSERT_TRUE(journal) << error;
+    ASSERT_TRUE(
+        journal->put(journal::begun_key(1), "2026-03-01T10:00:00Z, " + on + ", wall pace, by ida").ok);
+    ASSERT_TRUE(journal->put(journal::drives_key(1), drives).ok);
+  };
+  EXPECT_EQ(text().find("Walked on"), std::string::npos) << "a record that does not say";
+  told("simulated robot", "simulated robot\nscenario=/sites/cold_store.scenario.txtpb;pace=wall");
+  const std::string on_site = "Walked on: simulated robot, site cold_store.";
+  EXPECT_NE(text().find(on_site), std::string::npos) << text();
+  EXPECT_NE(text_of_page(page()).find(on_site), std::string::npos);
+  EXPECT_NE(text().find("scenario=/sites/cold_store.scenario.txtpb;pace=wall"), std::string::npos);
+  const auto json = [&] { return run({"report", "--journal", folder_.path(), "--json"}).out; };
+  EXPECT_NE(json().find("\"simulated\": true"), std::string::npos) << json();
+  EXPECT_NE(json().find("\"site\": \"cold_store\""), std::string::npos);
+  told("simulated robot", "simulated robot\nsocket=/run/robot");
+  EXPECT_NE(text().find("Walked on: simulated robot, site not named in its settings."), std::string::npos);
+  told("real drives", "ring bus\nport=/dev/bus0");
+  EXPECT_NE(text().find("Walked on: real drives (ring bus)."), std::string::npos) << text();
+  EXPECT_NE(json().find("\"simulated\": false"), std::string::npos);
+  EXPECT_NE(json().find("\"site\": \"\""), std::string::npos);
+}
+
+TEST_F(ReportTest, CostOfTransportSaysWhoseMassItIs) {
+  write_usual();
+  EXPECT_NE(text().find("cost of transport, by the robot file's mass"), std::string::npos);
+  EXPECT_NE(text_of_page(page()).find("a load that the file does not know is not in it"), std::string::npos);
+}
+
+TEST_F(ReportTest, RealButTinyIsSaidAtTheHead) {
+  for (const double gain : {0.03, -0.03, 0.3}) {
+    Folder folder;
+    Story story;
+    story.search_walks = 0;
+    story.gain = gain;
+    story.even = true;
+    ASSERT_TRUE(write_session(folder.path(), story));
+    const std::string text = run({"report", "--journal", folder.path(), "--text"}).out;
+    const bool tiny = std::abs(gain) < 0.05;
+    EXPECT_NE(text.find(gain > 0 ? "Adopt the adapted policy" : "Keep the start policy"), std::string::npos);
+    EXPECT_EQ(text.find("; real, but of no practical size.") != std::string::npos, tiny) << text;
+    const std::string json = run({"report", "--journal", folder.path(), "--json"}).out;
+    EXPECT_NE(json.find(tiny ? "\"of_no_practical_size\": true" : "\"of_no_practical_size\": false"),
+              std::string::npos);
+  }
 }
 
 TEST_F(ReportTest, WhatIsNotAJournalIsOneLineAndAFile) {

@@ -55,7 +55,7 @@ std::vector<v1::Command> ScriptedRobot::taken() const {
   return taken_;
 }
 
-bool ScriptedRobot::submit(link::Ticket ticket, const v1::Command& command, const std::string&) {
+bool ScriptedRobot::submit(link::Ticket ticket, const v1::Command& command, const link::Asker&) {
   {
     const std::lock_guard<std::mutex> lock(mutex_);
     taken_.push_back(command);

@@ -42,7 +42,8 @@ class ScriptedRobot final : public link::Line {
   void halt() override { ++halts; }
   [[nodiscard]] bool stop_confirmed() const override { return confirms.load(); }
   void baton_held(bool) override {}
-  [[nodiscard]] bool submit(link::Ticket ticket, const v1::Command& command, const std::string& who) override;
+  [[nodiscard]] bool submit(link::Ticket ticket, const v1::Command& command,
+                            const link::Asker& asker) override;
   [[nodiscard]] bool submit(link::Ticket ticket, const v1::Fetch& fetch) override;
   [[nodiscard]] v1::Status status() const override;
 

@@ -133,6 +133,61 @@ TEST_F(SessionTest, FromTheFirstStartToTheReport) {
   EXPECT_EQ(run({"check", "--robot", robot(), folder_.path() + "/saved.policy"}).exit, 0);
 }
 
+/// Value of a field whose value is a text, in a line of JSON; its last one.
+std::string last_text(const std::string& json, const std::string& field) {
+  const std::string key = "\"" + field + "\": \"";
+  const std::size_t at = json.rfind(key);
+  if (at == std::string::npos) return "";
+  return json.substr(at + key.size(), json.find('"', at + key.size()) - at - key.size());
+}
+
+TEST_F(SessionTest, AdoptsTwiceAndGoesBackStepByStepAlsoAfterARestart) {
+  auto process = onboard();
+  const auto current = [&] { return last_text(run(with({"status", "--json"})).out, "policy_sha256_hex"); };
+  const Ran none = run(with({"adopt", "--back"}));
+  EXPECT_EQ(none.exit, 2);
+  EXPECT_NE(none.err.find("no policy was adopted yet"), std::string::npos) << none.err;
+  ASSERT_EQ(run(with({"confirm", "--yes-i-have-read", robot()})).exit, 0);
+  std::vector<std::string> way{current()};
+  for (int i = 0; i < 2; ++i) {
+    const int verdict = run(with({"start", plan_})).exit;
+    ASSERT_TRUE(verdict == 0 || verdict == 1);
+    const Ran told = run(with({"report", "--json", "--session", std::to_string(i + 1)}));
+    way.push_back(last_text(told.out, "adapted_sha256"));
+    ASSERT_EQ(way.back().size(), 64U) << told.out.substr(0, 2000);
+    const Ran adopted = run(with({"adopt", way.back()}));
+    ASSERT_EQ(adopted.exit, 0) << adopted.err;
+    EXPECT_EQ(current(), way.back());
+    EXPECT_NE(run(with({"adopt", way.back()})).out.find("is current already"), std::string::npos);
+  }
+  for (const bool restart : {false, true}) {
+    if (restart) {
+      process->end(SIGTERM);
+      process = onboard();
+      ASSERT_EQ(run(with({"adopt", way[1].substr(0, 8)})).exit, 0) << "forward again, by its first digits";
+      ASSERT_EQ(run(with({"adopt", way[2].substr(0, 8)})).exit, 0);
+      EXPECT_EQ(current(), way[2]);
+    }
+    for (const int step : {1, 0}) {
+      const std::size_t to = static_cast<std::size_t>(step);
+      const Ran back = run(with({"adopt", "--back"}));
+      EXPECT_EQ(back.exit, 0) << back.err;
+      EXPECT_NE(back.out.find("policy " + way[to] + " is current"), std::string::npos) << back.out;
+      EXPECT_EQ(current(), way[to]) << "step to " << to << " after a restart: " << restart;
+    }
+    const Ran end = run(with({"adopt", "--back"}));
+    EXPECT_EQ(end.exit, 2);
+    EXPECT_NE(end.err.find("found the first policy current"), std::string::npos) << end.err;
+  }
+  const Ran history = run(with({"adopt", "--history"}));
+  EXPECT_EQ(history.exit, 0);
+  EXPECT_EQ(lines_of(history.out).size(), 1U + 3U + 2U + 2U + 2U + 1U) << history.out;  // head, rows, next
+  process->end(SIGTERM);
+  process = onboard();
+  EXPECT_EQ(current(), way[0]);
+  EXPECT_EQ(run(with({"walk", "--seconds", "1"})).exit, 0) << "the policy that it went back to walks";
+}
+
 TEST_F(SessionTest, SessionWhoseGroundToolWasKilledWaitsAndIsTakenUpAgain) {
   const auto process = onboard();
   ASSERT_EQ(run(with({"confirm", "--yes-i-have-read", robot()})).exit, 0);

@@ -18,7 +18,8 @@ namespace {
 
 class Writer {
  public:
-  Writer(journal::Journal& journal, std::uint64_t session) : journal_(journal), session_(session) {}
+  Writer(journal::Journal& journal, std::uint64_t session, bool even)
+      : journal_(journal), session_(session), spread_(even ? 0 : 0.22) {}
 
   bool walk(v1::Part part, std::uint32_t batch, double level, const Parameters& parameters,
             v1::Outcome outcome, const std::string& void_reason = "") {
@@ -30,7 +31,7 @@ class Writer {
     episode.set_draw(walk_);
     episode.set_outcome(outcome);
     episode.set_void_reason(void_reason);
-    fill(episode, level + 0.22 * normal_(random_));
+    fill(episode, level + spread_ * normal_(random_));
     std::string why;
     last_total_ = episode.terms().total();
     return journal_.commit(episode, parameters, "", why).has_value();
@@ -89,6 +90,7 @@ class Writer {
 
   journal::Journal& journal_;
   std::uint64_t session_;
+  double spread_;
   std::uint64_t walk_{0};
   double last_total_{0};
   std::mt19937_64 random_{7};
@@ -204,7 +206,7 @@ bool write_session(const std::string& folder, const Story& story) {
   if (!journal->store_policy(start_bytes, start_hash).ok) return false;
   if (!journal->store_policy(adapted_bytes, files::hex(adapted_hash)).ok) return false;
   if (!journal->begin_session(row).ok) return false;
-  Writer writer(*journal, row.session);
+  Writer writer(*journal, row.session, story.even);
   bool good = true;
   for (int i = 0; i < 5; ++i) good = good && writer.walk(v1::BASELINE, 0, 2.4, start, v1::COMPLETED);
   good = good && search(writer, story, start);

@@ -14,6 +14,7 @@ struct Story {
   double gain{0.6};  ///< of the adapted policy over the start policy
   bool end{true};    ///< the session has a verdict
   bool confirm{true};
+  bool even{false};  ///< without chance from walk to walk
   std::string void_reason{"somebody bumped it"};
 };
 

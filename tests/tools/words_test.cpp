@@ -54,6 +54,59 @@ TEST(WordsTest, ProgressForetellsFromThePaceSinceItBeganToWatch) {
   EXPECT_EQ(progress.line().find("-"), std::string::npos);
 }
 
+TEST(WordsTest, TimeToGoStandsStillWhileTheSessionWaitsForAPerson) {
+  Progress progress;
+  const auto at = [](int seconds) { return Progress::Clock::time_point{} + std::chrono::seconds(seconds); };
+  progress.update(0, 10, at(0));
+  progress.update(2, 10, at(10), true);  // 5 s a walk; now it waits for go
+  const double left = progress.seconds_to_go().value();
+  EXPECT_DOUBLE_EQ(left, 40);
+  for (int seconds = 11; seconds < 600; seconds += 7) {
+    progress.update(2, 10, at(seconds), true);
+    EXPECT_DOUBLE_EQ(progress.seconds_to_go().value(), left) << seconds;
+  }
+  progress.update(2, 10, at(600), false);  // go
+  EXPECT_DOUBLE_EQ(progress.seconds_to_go().value(), left);
+  progress.update(2, 10, at(603), false);  // walks, and the estimate does not creep up meanwhile
+  EXPECT_DOUBLE_EQ(progress.seconds_to_go().value(), left);
+  progress.update(3, 10, at(605), true);
+  EXPECT_NEAR(progress.seconds_to_go().value(), 35, 1);
+}
+
+TEST(WordsTest, DrivesAreNamedAndASimulatedSiteToo) {
+  EXPECT_EQ(drives_words(true, "simulated robot", "scenario=hal_stub/scenarios/wet_ramp.scenario.txtpb"),
+            "simulated robot, site wet_ramp");
+  EXPECT_EQ(drives_words(true, "puppet", "start=1;scenario=mine.txtpb"),
+            "simulated robot (puppet), site mine.txtpb");
+  EXPECT_EQ(drives_words(true, "simulated robot", "socket=/run/x"),
+            "simulated robot, site not named in its settings");
+  EXPECT_EQ(drives_words(false, "ring bus", "scenario=x"), "real drives (ring bus)");
+  EXPECT_EQ(drives_words(false, "", ""), "real drives");
+  EXPECT_EQ(site_of("scenario="), "");
+}
+
+TEST(WordsTest, StatusHasATableOfJointsThatLinesUp) {
+  v1::Status status;
+  status.set_robot("dunlin12");
+  status.set_ticks(1);
+  status.set_pack_voltage_v(25.25);
+  status.set_pack_current_a(3.5);
+  for (const char* name : {"front_left_hip", "knee"}) {
+    v1::JointStatus& joint = *status.add_joints();
+    joint.set_name(name);
+    joint.set_angle_rad(std::string(name) == "knee" ? -1.5 : std::nan(""));
+    joint.set_winding_c(31.25);
+  }
+  status.mutable_joints(1)->set_target_rad(-1.25);
+  const std::string text = status_text(status);
+  EXPECT_NE(text.find("pack        25.2 V, 3.5 A\n"), std::string::npos) << text;
+  EXPECT_NE(text.find("joint           angle rad  target rad  winding C\n"
+                      "front_left_hip          -           -       31.2\n"
+                      "knee               -1.500      -1.250       31.2\n"),
+            std::string::npos)
+      << text;
+}
+
 TEST(WordsTest, WalkThatNeverBeganHasNoFigures) {
   v1::Episode episode;
   episode.set_walk(5);

@@ -65,6 +65,7 @@ class Follower {
   void look_at_once();
   void keep_baton();
   [[nodiscard]] bool ours() const;
+  [[nodiscard]] bool waits_for_person() const;
   [[nodiscard]] std::optional<Exit> ended() const;
   [[nodiscard]] std::optional<Exit> tripped() const;
   [[nodiscard]] Exit close(Exit exit);
@@ -105,7 +106,7 @@ void Follower::show_progress() {
 void Follower::take(const v1::Episode& episode) {
   const bool ours = episode.session() != 0 && episode.session() >= choice_.session;
   seen_ = seen_ || ours;
-  if (ours) progress_.update(episode.walk(), status_.walks_planned(), last_word_);
+  if (ours) progress_.update(episode.walk(), status_.walks_planned(), last_word_, waits_for_person());
   single_done_ = single_done_ || episode.part() == v1::SINGLE;
   if (choice_.json || choice_.quiet) return;
   const bool tenth = !at_terminal() && !choice_.single && episode.walk() % 10 == 0;
@@ -164,16 +165,23 @@ void Follower::notice(const v1::Status& status) {
   const bool running = part == v1::IN_BASELINE || part == v1::IN_SEARCH || part == v1::IN_CONFIRMATION;
   if (ours() && (running || (choice_.resumed && part == v1::ENDED))) seen_ = true;
   if (!seen_ || choice_.single) return;
-  progress_.update(status_.walks_done(), status_.walks_planned(), last_word_);
+  progress_.update(status_.walks_done(), status_.walks_planned(), last_word_, waits_for_person());
   if (introduced_ || choice_.json || choice_.quiet || !running) return;
   introduced_ = true;
   say(fmt::format("session {} on {} ({}, {} pace), {} walks planned at the most", status_.session(),
-                  status_.robot(), status_.simulated() ? "simulated" : "real drives", status_.pace(),
-                  status_.walks_planned()));
+                  status_.robot(),
+                  drives_words(status_.simulated(), status_.drives(), status_.drives_settings()),
+                  status_.pace(), status_.walks_planned()));
 }
 
 /// The session to follow, and not one before it that the robot still tells of.
 bool Follower::ours() const { return status_.session() != 0 && status_.session() >= choice_.session; }
+
+/// Not for heat or pack: those pass by themselves and belong to the pace.
+bool Follower::waits_for_person() const {
+  const std::string& waits = status_.waiting_for();
+  return waits == "go" || waits == "release" || waits == "baton";
+}
 
 /// A baton that lapsed (this computer or the way to the robot was too slow) is taken up again. At wall pace
 /// the robot has tripped for it and moves no more before a person releases it.

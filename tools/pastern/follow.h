@@ -27,18 +27,29 @@ namespace pastern::tools {
 /// The robot's own words: "verdict: adopt: ...".
 [[nodiscard]] std::string verdict_line(const v1::Verdict& verdict);
 
+/// What the robot walks on: "simulated robot, site cold_store", "real drives (NAME)". The site's name is that
+/// of the scenario file in the plug-in's settings.
+[[nodiscard]] std::string drives_words(bool simulated, const std::string& drives,
+                                       const std::string& settings);
+/// Name of the scenario in a simulated robot's settings; empty when they name none.
+[[nodiscard]] std::string site_of(const std::string& settings);
+
 /// "[=====     ] 34 of 76 walks, about 48 s to go".
 class Progress {
  public:
   using Clock = std::chrono::steady_clock;
-  /// The first call is where measuring begins: what was done before does not count for the pace.
-  void update(std::uint64_t done, std::uint64_t planned, Clock::time_point now);
+  /// The first call is where measuring begins: what was done before does not count for the pace, nor does
+  /// time in which the session waits for a person (`waits`). The pace changes with each walk only.
+  void update(std::uint64_t done, std::uint64_t planned, Clock::time_point now, bool waits = false);
   [[nodiscard]] std::string line() const;
   /// Nothing before a second walk was seen.
   [[nodiscard]] std::optional<double> seconds_to_go() const;
 
  private:
-  std::optional<std::pair<std::uint64_t, Clock::time_point>> first_;
+  std::optional<std::uint64_t> first_;
+  Clock::time_point last_;
+  double active_s_{0};  ///< since the first call, without waiting for people
+  bool waited_{false};
   std::uint64_t done_{0};
   std::uint64_t planned_{0};
   double per_walk_s_{0};

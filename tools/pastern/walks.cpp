@@ -18,6 +18,20 @@ std::string remark(const v1::Episode& episode) {
   return episode.has_trip() && !episode.trip().cause().empty() ? "  " + trip_words(episode.trip()) : "";
 }
 
+std::string angle(double rad) { return std::isfinite(rad) ? fmt::format("{:+.3f}", rad + 0.0) : "-"; }
+
+/// A line a joint; empty before the robot was read.
+std::string joints_text(const v1::Status& status) {
+  if (status.joints().empty()) return "";
+  Table table({"joint", "angle rad", "target rad", "winding C"});
+  for (const v1::JointStatus& joint : status.joints()) {
+    table.row({joint.name(), angle(joint.angle_rad()),
+               joint.has_target_rad() ? angle(joint.target_rad()) : "-",
+               std::isfinite(joint.winding_c()) ? fmt::format("{:.1f}", joint.winding_c() + 0.0) : "-"});
+  }
+  return table.text();
+}
+
 }  // namespace
 
 bool walked(const v1::Episode& episode) { return episode.summary().duration_s() > 0; }
@@ -120,27 +134,56 @@ std::string verdict_line(const v1::Verdict& verdict) {
   return "verdict: " + (verdict.words().empty() ? kind : verdict.words());
 }
 
+std::string site_of(const std::string& settings) {
+  static const std::string key = "scenario=";
+  static const std::string suffix = ".scenario.txtpb";
+  for (std::size_t at = 0; at < settings.size();) {
+    const std::size_t end = std::min(settings.find(';', at), settings.size());
+    const std::string part = settings.substr(at, end - at);
+    at = end + 1;
+    if (part.compare(0, key.size(), key) != 0) continue;
+    const std::string name = part.substr(std::max(part.rfind('/') + 1, key.size()));
+    const bool usual =
+        name.size() > suffix.size() && name.compare(name.size() - suffix.size(), suffix.size(), suffix) == 0;
+    return usual ? name.substr(0, name.size() - suffix.size()) : name;
+  }
+  return "";
+}
+
+std::string drives_words(bool simulated, const std::string& drives, const std::string& settings) {
+  const std::string usual = simulated ? "simulated robot" : "real drives";
+  const std::string named = drives.empty() || drives == usual ? usual : usual + " (" + drives + ")";
+  if (!simulated) return named;
+  const std::string site = site_of(settings);
+  return named + ", " + (site.empty() ? "site not named in its settings" : "site " + site);
+}
+
 std::string status_text(const v1::Status& status) {
   std::string out;
   const auto fact = [&](const std::string& name, const std::string& value) {
     if (!value.empty()) out += fmt::format("{:<12}{}\n", name, value);
   };
-  fact("robot", fmt::format("{}, {}, {} pace; file sha256 {}", status.robot(),
-                            status.simulated() ? "simulated" : "real drives", status.pace(),
+  fact("robot", fmt::format("{}, {} pace; file sha256 {}", status.robot(), status.pace(),
                             brief_hash(status.robot_sha256_hex())));
+  fact("drives", drives_words(status.simulated(), status.drives(), status.drives_settings()));
+  fact("settings", status.drives_settings());
   fact("state", words(status.robot_state()));
   fact("waiting for", status.waiting_for());
   if (status.has_trip()) fact("trip", trip_words(status.trip()));
   fact("policy", "sha256 " + brief_hash(status.policy_sha256_hex()));
   const bool read = status.ticks() > 0;  // before the first tick no sensor has been read
-  fact("pack", read ? fmt::format("{:.1f} V", status.pack_voltage_v()) : "not read yet");
+  fact("pack", read
+                   ? fmt::format("{:.1f} V, {:.1f} A", status.pack_voltage_v(), status.pack_current_a() + 0.0)
+                   : "not read yet");
   fact("hottest",
        read ? fmt::format("{:.0f} deg C", std::round(status.winding_max_c()) + 0.0) : "not read yet");
   fact("baton", status.baton_holder().empty() ? "nobody holds it" : "held by " + status.baton_holder());
   if (status.session() != 0) {
-    fact("session", fmt::format("{}: {}; {} of {} walks, {} falls, {} void", status.session(),
-                                words(status.session_part()), status.walks_done(), status.walks_planned(),
-                                status.falls(), status.voids()));
+    const std::string planned =
+        status.walks_planned() == 0 ? "" : fmt::format(" of {}", status.walks_planned());
+    fact("session",
+         fmt::format("{}: {}; {}{} walks, {} falls, {} void", status.session(), words(status.session_part()),
+                     status.walks_done(), planned, status.falls(), status.voids()));
     const auto known = [](double value) {
       return value == 0 ? std::string("-") : fmt::format("{:.2f}", value);
     };
@@ -154,17 +197,21 @@ std::string status_text(const v1::Status& status) {
   fact("cycle", fmt::format("{} ticks, {} overruns{}", status.ticks(), status.overruns(),
                             status.scheduling().empty() ? "" : "; " + status.scheduling()));
   fact("software", status.software());
-  return out;
+  return out + joints_text(status);
 }
 
-void Progress::update(std::uint64_t done, std::uint64_t planned, Clock::time_point now) {
+void Progress::update(std::uint64_t done, std::uint64_t planned, Clock::time_point now, bool waits) {
+  if (!first_ || done < *first_) {
+    first_ = done;
+    active_s_ = per_walk_s_ = 0;
+  } else if (!waited_) {
+    active_s_ += std::chrono::duration<double>(now - last_).count();
+  }
+  last_ = now;
+  waited_ = waits;
+  if (done > *first_ && done > done_) per_walk_s_ = active_s_ / static_cast<double>(done - *first_);
   done_ = done;
   planned_ = planned;
-  if (!first_ || done < first_->first) first_ = {done, now};
-  if (done > first_->first) {
-    per_walk_s_ = std::chrono::duration<double>(now - first_->second).count() /
-                  static_cast<double>(done - first_->first);
-  }
 }
 
 std::optional<double> Progress::seconds_to_go() const {

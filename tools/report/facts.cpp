@@ -151,6 +151,9 @@ std::optional<Facts> gather(const journal::Journal& journal, std::uint64_t sessi
   for (const auto& finished : journal.finished(row->session)) facts.walks.push_back(finished.episode);
   facts.begun = journal.get(journal::begun_key(row->session)).value_or("");
   facts.simulated = facts.begun.substr(0, facts.begun.find(", by ")).find("simulated") != std::string::npos;
+  const std::string drives = journal.get(journal::drives_key(row->session)).value_or("");
+  facts.drives = drives.substr(0, drives.find('\n'));
+  if (facts.drives.size() < drives.size()) facts.drives_settings = drives.substr(facts.drives.size() + 1);
   facts.digest = journal.digest(row->session);
   facts.notes = journal.notes(row->session);
   facts.adoptions = journal.adoptions();

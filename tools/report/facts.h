@@ -42,6 +42,8 @@ struct Facts {
   journal::SessionRow row;
   std::string begun;      ///< when, on what, by whom; empty in a record that does not say
   bool simulated{false};  ///< as `begun` says
+  std::string drives;     ///< what the plug-in calls itself; empty in a record that does not say
+  std::string drives_settings;
   std::string digest;
   std::optional<v1::Plan> plan;
   std::optional<v1::Verdict> verdict;

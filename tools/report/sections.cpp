@@ -28,13 +28,21 @@ std::string robot_name(const Facts& facts) {
   return facts.start ? facts.start->robot() : "robot";
 }
 
+/// The headline's end: says so when an effect is there but too small to matter.
+std::string size_words(const v1::Verdict& verdict) {
+  const bool tiny = verdict.pairs() > 0 &&
+                    of_no_practical_size(verdict.effect(), verdict.effect_low(), verdict.effect_high());
+  return tiny ? "; real, but of no practical size." : ".";
+}
+
 std::string headline(const Facts& facts) {
   if (!facts.verdict) return "No verdict: the session has not ended.";
   if (facts.verdict->kind() == v1::Verdict::ADOPT)
-    return fmt::format("Adopt the adapted policy: it walks better on this {}robot, here.",
-                       facts.simulated ? "simulated " : "");
+    return fmt::format("Adopt the adapted policy: it walks better on this {}robot, here{}",
+                       facts.simulated ? "simulated " : "", size_words(*facts.verdict));
   if (facts.verdict->pairs() == 0) return "Keep the start policy: there was no confirmation.";
-  if (facts.verdict->effect_high() < 0) return "Keep the start policy: the adapted one walks worse.";
+  if (facts.verdict->effect_high() < 0)
+    return "Keep the start policy: the adapted one walks worse" + size_words(*facts.verdict);
   return "Keep the start policy: the adapted one is not shown to be better.";
 }
 
@@ -52,14 +60,27 @@ std::string next_step(const Facts& facts) {
              : "Nothing was adopted: the robot walks as before.";
 }
 
+/// Where the session ran; empty in a record that does not say.
+std::string walked_on(const Facts& facts) {
+  if (facts.begun.empty()) return "";
+  return drives_words(facts.simulated, facts.drives, facts.drives_settings);
+}
+
 /// What the verdict rests on, in sentences.
 std::vector<std::string> grounds(const Facts& facts) {
   std::vector<std::string> lines;
+  if (const std::string on = walked_on(facts); !on.empty()) lines.push_back("Walked on: " + on + ".");
   if (facts.verdict && facts.verdict->pairs() > 0) {
     const v1::Verdict& v = *facts.verdict;
     lines.push_back(fmt::format(
         "Return of a walk, adapted less start policy: {:+.2f} ({:g} % interval {:+.2f} to {:+.2f}).",
         v.effect(), 100 * v.interval_level(), v.effect_low(), v.effect_high()));
+    if (of_no_practical_size(v.effect(), v.effect_low(), v.effect_high())) {
+      lines.push_back(
+          fmt::format("Below {:g} return units an effect counts as of no practical size, however "
+                      "sure it is.",
+                      kPracticalSize));
+    }
     lines.push_back(fmt::format("Rule: {}; p = {:.4f} from {} pairs, level {:g}.", v.rule(), v.p_value(),
                                 v.pairs(), v.level()));
   }
@@ -170,7 +191,11 @@ void walking_section(Document& document, const Facts& facts) {
   row("pitch, rms, degrees", degrees(before.pitch_rms_rad), degrees(after.pitch_rms_rad));
   row("greatest roll, degrees", degrees(before.roll_max_rad), degrees(after.roll_max_rad));
   row("greatest pitch, degrees", degrees(before.pitch_max_rad), degrees(after.pitch_max_rad));
-  row("cost of transport", two(before.cost_of_transport), two(after.cost_of_transport));
+  row("cost of transport, by the robot file's mass", two(before.cost_of_transport),
+      two(after.cost_of_transport));
+  document.paragraph(
+      "Cost of transport: joint energy over weight and distance. The weight is that of the masses in the "
+      "robot file; a load that the file does not know is not in it, and makes the figure look higher.");
 }
 
 void terms_section(Document& document, const Facts& facts) {
@@ -244,6 +269,8 @@ void record_section(Document& document, const Facts& facts) {
   fact("software", facts.row.software);
   fact("report by", fmt::format("pastern {}", PASTERN_VERSION));
   fact("robot", robot_name(facts));
+  fact("drives", walked_on(facts));
+  fact("settings of the drives", facts.drives_settings);
   fact("robot file sha256", facts.row.robot_sha256_hex);
   fact("start policy sha256", facts.row.start_policy_sha256_hex);
   fact("adapted policy sha256", facts.adapted_sha256_hex);

@@ -2,6 +2,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <set>
 
 #include "proto/files/durable.h"
 #include "tools/pastern/copy.h"
@@ -23,7 +24,7 @@ class Adopt final : public LinkVerb {
     return {
         "pastern adopt                       what the last verdict proposes",
         "pastern adopt --history             what was current, since when, by whom",
-        "pastern adopt --back                the policy that was current before this one",
+        "pastern adopt --back                the policy before the current one; again: the one before that",
         "pastern adopt 3fa94c01              any policy in the history, by the first digits of its sha256",
         "pastern adopt --save adopted.policy the current policy's file, for your own record"};
   }
@@ -31,7 +32,7 @@ class Adopt final : public LinkVerb {
  protected:
   void more_options(Options& options) override {
     options.text("sha256", hash_, "First digits (at least 4) of a policy in the history")
-        .flag("--back", back_, "The policy that was current before this one")
+        .flag("--back", back_, "The policy before the current one; again: the one before that")
         .flag("--history", history_, "List what was current, oldest first")
         .flag("--json", json_, "With --history: as JSON")
         .text("--save", save_, "Write the current policy's file here");
@@ -43,8 +44,7 @@ class Adopt final : public LinkVerb {
   Exit show_history(const std::vector<journal::Adoption>& history) const;
   Exit save_current(RobotLine& line);
   Exit adopt(RobotLine& line, const std::string& hash);
-  [[nodiscard]] std::optional<std::string> chosen(const std::vector<journal::Adoption>& history,
-                                                  const std::string& current) const;
+  [[nodiscard]] std::optional<std::string> chosen(const std::vector<journal::Adoption>& history) const;
 
   std::string hash_;
   bool back_{false};
@@ -65,6 +65,18 @@ Exit Adopt::before() {
     return Exit::usage;
   }
   return Exit::done;
+}
+
+/// The policies that lead up to the current one, oldest first. A step back takes the last one off, so that
+/// two steps back do not lead forward again.
+std::vector<std::string> way_here(const std::vector<journal::Adoption>& history) {
+  std::vector<std::string> way;
+  for (const journal::Adoption& one : history) {
+    const bool back = one.words == journal::kWentBack;
+    while (back && !way.empty() && way.back() != one.policy_sha256_hex) way.pop_back();
+    if (way.empty() || way.back() != one.policy_sha256_hex) way.push_back(one.policy_sha256_hex);
+  }
+  return way;
 }
 
 Exit Adopt::show_history(const std::vector<journal::Adoption>& history) const {
@@ -93,29 +105,33 @@ Exit Adopt::show_history(const std::vector<journal::Adoption>& history) const {
   std::string text = table.text();
   text.pop_back();
   say(text);
-  suggest(history.size() > 1 ? "adopt --back" : "adopt --save adopted.policy",
-          history.size() > 1 ? "goes back to the one before the last" : "keeps a copy of the current policy");
+  const bool back = way_here(history).size() > 1;
+  suggest(back ? "adopt --back" : "adopt --save adopted.policy",
+          back ? "goes back to the one before the current" : "keeps a copy of the current policy");
   return Exit::done;
 }
 
 /// The policy that SHA256 or --back names; nothing after a complaint.
-std::optional<std::string> Adopt::chosen(const std::vector<journal::Adoption>& history,
-                                         const std::string& current) const {
-  std::vector<std::string> fitting;
-  for (auto one = history.rbegin(); one != history.rend(); ++one) {
-    const std::string& hash = one->policy_sha256_hex;
-    const bool fits = back_ ? hash != current : hash.compare(0, hash_.size(), hash_) == 0;
-    const bool known = std::find(fitting.begin(), fitting.end(), hash) != fitting.end();
-    if (fits && !known) fitting.push_back(hash);
+std::optional<std::string> Adopt::chosen(const std::vector<journal::Adoption>& history) const {
+  if (back_) {
+    const std::vector<std::string> way = way_here(history);
+    if (way.size() > 1) return way[way.size() - 2];
+    complain(
+        history.empty()
+            ? "pastern adopt: --back: no policy was adopted yet, so there is none to go back to"
+            : "pastern adopt: --back: found the first policy current, expected a later one; pastern adopt "
+              "--history lists all, pastern adopt SHA256 takes any");
+    return std::nullopt;
   }
-  if (back_ && !fitting.empty()) return fitting.front();
-  if (!back_ && fitting.size() == 1) return fitting.front();
+  std::set<std::string> fitting;
+  for (const journal::Adoption& one : history) {
+    if (one.policy_sha256_hex.compare(0, hash_.size(), hash_) == 0) fitting.insert(one.policy_sha256_hex);
+  }
+  if (fitting.size() == 1) return *fitting.begin();
   // A whole hash may also name a policy that walked but never was current; the robot judges it.
-  if (!back_ && hash_.size() == 64) return hash_;
-  complain(
-      back_ ? "pastern adopt: --back: no earlier policy is in the history"
-            : fmt::format("pastern adopt: found {} policies in the history that begin with {}, expected one",
-                          fitting.size(), hash_));
+  if (hash_.size() == 64) return hash_;
+  complain(fmt::format("pastern adopt: found {} policies in the history that begin with {}, expected one",
+                       fitting.size(), hash_));
   return std::nullopt;
 }
 
@@ -142,6 +158,7 @@ Exit Adopt::adopt(RobotLine& line, const std::string& hash) {
     bytes.push_back(static_cast<char>(std::stoi(hash.substr(i, 2), nullptr, 16)));
   }
   command.mutable_adopt()->set_policy_sha256(bytes);
+  command.mutable_adopt()->set_back(back_);
   Exit exit = line.hold_baton();
   if (exit != Exit::done) return exit;
   v1::Answer answer;
@@ -160,10 +177,7 @@ Exit Adopt::run_on(RobotLine& line) {
   if (!copy) return exit;
   const auto history = copy->journal().adoptions();
   if (history_) return show_history(history);
-  v1::Status status;
-  exit = line.status(status);
-  if (exit != Exit::done) return exit;
-  const auto hash = chosen(history, status.policy_sha256_hex());
+  const auto hash = chosen(history);
   return hash ? adopt(line, *hash) : Exit::usage;
 }
 

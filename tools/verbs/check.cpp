@@ -1,7 +1,9 @@
 // check: judges robot, policy, plan, scenario and URDF files; every defect in one line.
 #include <fmt/format.h>
+#include <fmt/ranges.h>
 #include <unistd.h>
 
+#include <algorithm>
 #include <filesystem>
 #include <optional>
 
@@ -58,6 +60,7 @@ struct Judged {
   Kind kind{Kind::unknown};
   std::string about;  ///< in words, when sound
   std::string sha256_hex;
+  std::string against;  ///< robot against which the defects are told, where there was a choice
   files::Defects defects;
   std::vector<std::string> still_missing;  ///< of a URDF file: what a robot file wants besides
 };
@@ -148,24 +151,38 @@ void Check::judge_plan(Judged& judged) const {
                              plan->walk_s(), plan->max_falls(), plan->max_minutes());
 }
 
-/// The defects against the robot that fits best are the ones to tell: fewest.
+/// Judged against every robot that may be its own. Returns the names of those that it fits; when it fits none
+/// the defects against the one that fits best (fewest) are told, and which one that was.
 template <class Read>
-void judge_against(const std::vector<files::RobotFile>& robots, Judged& judged, Read read) {
+std::vector<std::string> judge_against(const std::vector<files::RobotFile>& robots, Judged& judged,
+                                       Read read) {
   if (robots.empty()) {
     judged.defects.push_back({judged.path, "", "no sound robot file to judge it against", "--robot FILE"});
-    return;
+    return {};
   }
+  std::vector<std::string> fits;
   std::optional<files::Defects> least;
   for (const files::RobotFile& robot : robots) {
     files::Defects defects;
-    if (read(robot, defects) && defects.empty()) return;
-    if (!least || defects.size() < least->size()) least = defects;
+    if (read(robot, defects) && defects.empty()) {
+      fits.push_back(robot.robot().name());
+    } else if (!least || defects.size() < least->size()) {
+      least = defects;
+      judged.against = robot.robot().name();
+    }
   }
-  judged.defects = *least;
+  if (fits.empty()) judged.defects = *least;
+  return fits;
+}
+
+/// "dunlin12, dunlin8".
+std::string listed(std::vector<std::string> names) {
+  std::sort(names.begin(), names.end());
+  return fmt::format("{}", fmt::join(names, ", "));
 }
 
 void Check::judge_policy(Judged& judged) const {
-  judge_against(robots_for(judged.path), judged, [&](const files::RobotFile& robot, files::Defects& defects) {
+  const auto read = [&](const files::RobotFile& robot, files::Defects& defects) {
     const auto policy = files::read_policy(judged.path, robot, defects);
     if (!policy) return false;
     judged.sha256_hex = files::hex(policy->sha256());
@@ -174,16 +191,27 @@ void Check::judge_policy(Judged& judged) const {
                     policy->policy().robot(), policy->policy().parameters_size(),
                     policy->policy().channels_size(), policy->policy().rate_hz(), policy->policy().gait_hz());
     return true;
-  });
+  };
+  (void)judge_against(robots_for(judged.path), judged, read);
 }
 
 void Check::judge_scenario(Judged& judged) const {
-  judge_against(robots_for(judged.path), judged, [&](const files::RobotFile& robot, files::Defects& defects) {
+  std::string scenario_name;
+  const std::vector<files::RobotFile> robots = robots_for(judged.path);
+  const auto read = [&](const files::RobotFile& robot, files::Defects& defects) {
     const auto scenario = files::read_scenario(judged.path, robot, defects);
     if (!scenario) return false;
-    judged.about = fmt::format("{}: fits {}", scenario->name(), robot.robot().name());
+    scenario_name = scenario->name();
     return true;
-  });
+  };
+  const std::vector<std::string> fits = judge_against(robots, judged, read);
+  judged.about = fmt::format("{}: fits {}", scenario_name, listed(fits));
+  std::vector<std::string> others;
+  for (const files::RobotFile& robot : robots) {
+    const std::string& name = robot.robot().name();
+    if (std::find(fits.begin(), fits.end(), name) == fits.end()) others.push_back(name);
+  }
+  if (!others.empty()) judged.about += "; does not fit " + listed(others);
 }
 
 void Check::judge_urdf(Judged& judged) const {
@@ -244,7 +272,8 @@ void Check::print(const std::vector<Judged>& all) const {
   std::size_t findings = 0;
   for (const Judged& one : all) {
     findings += one.defects.size();
-    for (const files::Defect& defect : one.defects) say(defect.line());
+    const std::string against = one.against.empty() ? "" : "  (judged against " + one.against + ")";
+    for (const files::Defect& defect : one.defects) say(defect.line() + against);
     if (one.defects.empty()) {
       const std::string hash =
           one.sha256_hex.empty() ? "" : fmt::format("  sha256 {}", brief_hash(one.sha256_hex));
@@ -283,6 +312,7 @@ void Check::print_json(const std::vector<Judged>& all) const {
                           .add("sound", one.defects.empty())
                           .add("about", one.about)
                           .add("sha256", one.sha256_hex)
+                          .add("judged_against", one.defects.empty() ? std::string() : one.against)
                           .raw("defects", json_list(defects))
                           .raw("still_missing", json_list(missing))
                           .text());

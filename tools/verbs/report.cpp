@@ -6,6 +6,7 @@
 #include "proto/files/durable.h"
 #include "proto/files/robot_file.h"
 #include "tools/pastern/copy.h"
+#include "tools/pastern/follow.h"
 #include "tools/pastern/json.h"
 #include "tools/pastern/words.h"
 #include "tools/report/sections.h"
@@ -68,10 +69,20 @@ void Report::print_json(const Facts& facts) const {
     walk.clear_trace();
     walks.push_back(json(walk));
   }
+  const bool tiny = facts.verdict && facts.verdict->pairs() > 0 &&
+                    of_no_practical_size(facts.verdict->effect(), facts.verdict->effect_low(),
+                                         facts.verdict->effect_high());
   say(JsonObject()
           .add("session", facts.row.session)
           .add("ended", facts.row.ended)
           .add("software", facts.row.software)
+          .add("begun", facts.begun)
+          .add("simulated", facts.simulated)
+          .add("drives", facts.drives)
+          .add("drives_settings", facts.drives_settings)
+          .add("site", facts.simulated ? site_of(facts.drives_settings) : "")
+          .add("practical_size", kPracticalSize)
+          .add("of_no_practical_size", tiny)
           .add("robot_sha256", facts.row.robot_sha256_hex)
           .add("start_policy_sha256", facts.row.start_policy_sha256_hex)
           .add("digest", facts.digest)

@@ -72,15 +72,38 @@ TEST(Refusal, FilesThatAreNoJournal) {
   EXPECT_TRUE(read_file(other.file()) == before);
 }
 
-TEST(Refusal, ASchemaNewerThanTheProgram) {
+TEST(Refusal, ASchemaOfAnotherVersionNewerOrOlder) {
   const Folder folder;
   sound_bytes(folder);
-  alter(folder.file(), "PRAGMA user_version = 2");
-  EXPECT_NE(refusal(folder.path()).find("newer program: found version 2, this program knows up to 1"),
+  alter(folder.file(), "PRAGMA user_version = 3");
+  EXPECT_NE(refusal(folder.path()).find("written by a newer program: found schema version 3, expected 2"),
             std::string::npos);
   EXPECT_NE(refusal(folder.path(), true).find("newer program"), std::string::npos);
   alter(folder.file(), "PRAGMA user_version = 0");
-  EXPECT_NE(refusal(folder.path()).find("version 0"), std::string::npos);
+  EXPECT_NE(refusal(folder.path()).find("found schema version 0, expected 2"), std::string::npos);
+}
+
+// Version 1 was written in two shapes: without seals, and with them but without a command's key.
+TEST(Refusal, AJournalOfTheFirstSchemaInEitherShapeIsOneClearLine) {
+  for (const char* shape : {"CREATE TABLE sessions (session INTEGER PRIMARY KEY, plan_text TEXT NOT NULL);"
+                            "CREATE TABLE commands (id TEXT PRIMARY KEY, answer_message BLOB NOT NULL);",
+                            "CREATE TABLE sessions (session INTEGER PRIMARY KEY, plan_text TEXT NOT NULL,"
+                            " seal TEXT NOT NULL);"
+                            "CREATE TABLE commands (id TEXT PRIMARY KEY, answer_message BLOB NOT NULL,"
+                            " seal TEXT NOT NULL);"}) {
+    const Folder folder;
+    alter(folder.file(), shape + std::string("PRAGMA application_id = 1346458673; PRAGMA user_version = 1;"));
+    const std::string before = read_file(folder.file());
+    for (const bool read_only : {true, false}) {
+      const std::string words = refusal(folder.path(), read_only);
+      EXPECT_NE(words.find("written by an older program: found schema version 1, expected 2"),
+                std::string::npos)
+          << words;
+      EXPECT_EQ(words.find("no such column"), std::string::npos) << words;
+      EXPECT_EQ(words.find('\n'), std::string::npos) << words;
+    }
+    EXPECT_TRUE(read_file(folder.file()) == before) << "the file was touched";
+  }
 }
 
 TEST(Refusal, AJournalCutShortAnywhere) {

@@ -220,16 +220,22 @@ TEST(Journal, PoliciesActsAndValuesComeBackAfterReopening) {
   EXPECT_EQ(journal->notes(0), (std::vector<std::string>{"tripped: tilt", "released"}));
 }
 
-TEST(Journal, ACommandIsRememberedOnceAndKeepsItsFirstAnswer) {
+TEST(Journal, ACommandIsRememberedOnceAKeyAndKeepsItsFirstAnswer) {
   const Folder folder;
   {
     const auto journal = opened(folder);
-    EXPECT_FALSE(journal->command_answer("id 1").has_value());
-    EXPECT_TRUE(journal->remember_command("id 1", "first answer").ok);
-    EXPECT_FALSE(journal->remember_command("id 1", "second answer").ok);
+    EXPECT_FALSE(journal->command("ida", "id 1").has_value());
+    EXPECT_TRUE(journal->remember_command({"ida", "id 1", "aa", "first answer"}).ok);
+    EXPECT_FALSE(journal->remember_command({"ida", "id 1", "aa", "second answer"}).ok);
+    EXPECT_FALSE(journal->command("ole", "id 1").has_value());
+    EXPECT_TRUE(journal->remember_command({"ole", "id 1", "bb", "another's answer"}).ok);
     EXPECT_EQ(journal->failure(), "");
   }
-  EXPECT_EQ(opened(folder)->command_answer("id 1"), "first answer");
+  const auto journal = opened(folder);
+  EXPECT_EQ(journal->command("ida", "id 1")->answer, "first answer");
+  EXPECT_EQ(journal->command("ida", "id 1")->command_sha256_hex, "aa");
+  EXPECT_EQ(journal->command("ole", "id 1")->answer, "another's answer");
+  EXPECT_FALSE(journal->command("", "id 1").has_value());
 }
 
 TEST(Journal, TelemetryIsFetchedBySequence) {

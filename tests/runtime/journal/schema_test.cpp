@@ -42,7 +42,7 @@ TEST(Schema, TheSqliteShellReadsAWalkByItsDocumentedColumnsDuringASession) {
   EXPECT_EQ(shell(folder.file(),
                   "PRAGMA application_id; PRAGMA user_version; PRAGMA foreign_key_check;"
                   " PRAGMA integrity_check"),
-            "1346458673\n1\nok\n");
+            "1346458673\n2\nok\n");
 }
 
 TEST(Schema, EveryColumnOfTheDocumentIsThereAndNoOther) {

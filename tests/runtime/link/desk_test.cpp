@@ -332,9 +332,9 @@ TEST_F(DeskTest, a_stop_is_answered_when_confirmed_and_at_300_ms_otherwise) {
 TEST_F(DeskTest, stops_are_served_before_everything_that_arrived_with_them) {
   const std::uint64_t anna = take_baton(kAnna);
   struct Order : ScriptedLine {
-    bool submit(Ticket ticket, const v1::Command& command, const std::string& who) override {
+    bool submit(Ticket ticket, const v1::Command& command, const Asker& asker) override {
       stops_before_first_submit = submitted == 0 ? stops.load() : stops_before_first_submit;
-      return ScriptedLine::submit(ticket, command, who);
+      return ScriptedLine::submit(ticket, command, asker);
     }
     int stops_before_first_submit{0};
   } line;

@@ -47,14 +47,15 @@ class ScriptedLine : public Line {
     const std::lock_guard<std::mutex> lock(mutex_);
     batons_.push_back(held);
   }
-  bool submit(Ticket ticket, const v1::Command& command, const std::string& who) override {
+  bool submit(Ticket ticket, const v1::Command& command, const Asker& asker) override {
     if (full) return false;
     submitted += 1;
     if (moves(command)) motions += 1;
     {
       const std::lock_guard<std::mutex> lock(mutex_);
       commands_.push_back(command);
-      whos_.push_back(who);
+      whos_.push_back(asker.who);
+      keys_.push_back(asker.key);
       tickets_.push_back(ticket);
     }
     Server* to = server;
@@ -114,6 +115,10 @@ class ScriptedLine : public Line {
     const std::lock_guard<std::mutex> lock(mutex_);
     return whos_;
   }
+  [[nodiscard]] std::vector<std::string> keys() const {
+    const std::lock_guard<std::mutex> lock(mutex_);
+    return keys_;
+  }
   [[nodiscard]] std::vector<Ticket> tickets() const {
     const std::lock_guard<std::mutex> lock(mutex_);
     return tickets_;
@@ -148,6 +153,7 @@ class ScriptedLine : public Line {
   std::vector<bool> batons_;
   std::vector<v1::Command> commands_;
   std::vector<std::string> whos_;
+  std::vector<std::string> keys_;
   std::vector<Ticket> tickets_;
   std::map<std::uint64_t, v1::Telemetry> kept_;
 };

@@ -8,6 +8,7 @@
 #include <fstream>
 
 #include "runtime/journal/journal.h"
+#include "runtime/link/keys.h"
 #include "tests/runtime/onboard/process.h"
 
 namespace pastern::test {
@@ -74,6 +75,10 @@ TEST(Onboard, RunsASessionToItsVerdictAndAdopts) {
   ASSERT_EQ(journal->adoptions().size(), 2U) << "the way back leads to the policy it was started with";
   EXPECT_EQ(journal->adoptions()[0].policy_sha256_hex, onboard.policy_sha());
   EXPECT_NE(journal->get(journal::begun_key(1)).value_or("").find(" pace, by "), std::string::npos);
+  EXPECT_EQ(journal->get(journal::drives_key(1)), status.drives() + "\n" + status.drives_settings());
+  const std::vector<std::string> words = onboard.arguments();
+  EXPECT_EQ(status.drives_settings(), *(std::find(words.begin(), words.end(), "--hal-options") + 1));
+  EXPECT_FALSE(status.drives().empty());
 
   ASSERT_TRUE(onboard.start());
   EXPECT_EQ(onboard.status().policy_sha256_hex(), files::hex(verdict->adapted_sha256()));
@@ -215,11 +220,90 @@ TEST(Onboard, ARepeatedIdIsOneCommandAlsoAfterARestart) {
   ASSERT_TRUE(onboard.start());
   ASSERT_TRUE(onboard.take_baton());
   EXPECT_TRUE(onboard.ask(walk).repeated());
+  v1::Command other;
+  other.set_id("the-one-walk");
+  other.mutable_walk()->set_duration_s(0.75);
+  EXPECT_EQ(onboard.end(SIGTERM), 0);
+  ASSERT_TRUE(onboard.start());
+  ASSERT_TRUE(onboard.take_baton());
+  const v1::Answer swallowed = onboard.ask(other);
+  EXPECT_FALSE(swallowed.accepted());
+  EXPECT_FALSE(swallowed.repeated());
+  EXPECT_NE(swallowed.words().find("a new command needs a new id"), std::string::npos) << swallowed.words();
   EXPECT_EQ(onboard.end(SIGTERM), 0);
   std::string error;
   const auto journal = journal::Journal::open(onboard.journal_folder(), error);
   ASSERT_TRUE(journal) << error;
   EXPECT_LE(journal->last_walk(0), 1U);
+}
+
+/// Anna and ben with a key each, both listed as operators.
+class WithKeys {
+ public:
+  WithKeys() {
+    std::string error;
+    EXPECT_TRUE(link::make_pair(robot(), "robot", error)) << error;
+    for (const char* name : {"anna", "ben"}) {
+      link::GroundKeys keys;
+      const std::string folder = folder_.path() + "/" + name;
+      EXPECT_TRUE(link::make_pair(folder, name, error)) << error;
+      std::filesystem::copy(robot() + "/robot.public", folder + "/robot.public");
+      EXPECT_TRUE(link::read_ground_keys(folder, keys, error)) << error;
+      EXPECT_TRUE(link::allow(robot(), name, true, keys.public_z85, error)) << error;
+    }
+  }
+  [[nodiscard]] std::string robot() const { return folder_.path() + "/robot"; }
+  /// The program started with the keys, and one client at it, who holds the baton.
+  [[nodiscard]] std::unique_ptr<link::Client> start(Onboard& onboard, const std::string& name) const {
+    EXPECT_TRUE(onboard.start({"--keys", robot()})) << onboard.output();
+    link::ClientConfig config;
+    const std::size_t ready = onboard.output().find("ready: ");
+    EXPECT_EQ(std::sscanf(onboard.output().c_str() + ready, "ready: commands %d, telemetry %d, fetch %d",
+                          &config.command_port, &config.telemetry_port, &config.fetch_port),
+              3);
+    config.key_folder = folder_.path() + "/" + name;
+    config.operator_name = name;
+    std::string why;
+    auto client = link::Client::connect(config, why);
+    EXPECT_TRUE(client && client->take_baton(why)) << why;
+    return client;
+  }
+
+ private:
+  TestFolder folder_;
+};
+
+TEST(Onboard, WithKeysAnIdBelongsToItsKeyAlsoAfterARestart) {
+  const WithKeys keys;
+  Onboard onboard;
+  v1::Command confirm;
+  confirm.set_id("same");
+  confirm.mutable_confirm_first_start()->set_robot_sha256_hex(files::hex(onboard.robot().sha256()));
+  confirm.mutable_confirm_first_start()->set_read_procedure(true);
+  v1::Command walk;
+  walk.set_id("same");
+  walk.mutable_walk()->set_duration_s(0.5);
+  const auto anna = [&] {
+    const auto client = keys.start(onboard, "anna");
+    const auto answer = client ? client->ask(confirm) : std::nullopt;
+    EXPECT_TRUE(answer && answer->accepted()) << (client ? client->trouble() : "");
+    EXPECT_EQ(onboard.end(SIGTERM), 0);
+    return answer.value_or(v1::Answer{});
+  };
+  EXPECT_FALSE(anna().repeated());
+  {
+    const auto ben = keys.start(onboard, "ben");
+    ASSERT_TRUE(ben);
+    const auto answer = ben->ask(walk);
+    ASSERT_TRUE(answer) << ben->trouble();
+    EXPECT_TRUE(answer->accepted()) << answer->words();
+    EXPECT_FALSE(answer->repeated());
+    EXPECT_NE(answer->words().find("one walk begins"), std::string::npos) << answer->words();
+    const auto again = ben->ask(walk);
+    EXPECT_TRUE(again && again->repeated());
+  }
+  EXPECT_EQ(onboard.end(SIGTERM), 0);
+  EXPECT_TRUE(anna().repeated());
 }
 
 TEST(Onboard, FetchesTheJournalAndTelemetryInPieces) {

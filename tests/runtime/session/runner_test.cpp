@@ -440,6 +440,7 @@ TEST(Runner, ATripIsKeptBeforeItsWalkIsTold) {
 
 TEST(Runner, AnOperatorsStopOutlivesTheProgramAtAutoPaceToo) {
   Desk desk;
+  desk.plan.set_search_walks(2);  // a plan that can be read again
   desk.plan.set_go_by(v1::Plan::AUTO);
   desk.mover->signals().stop.store(true);
   desk.person.act = [](const std::string&) { return false; };
@@ -476,8 +477,40 @@ TEST(Runner, ALatchedTripOutlivesTheProgram) {
   EXPECT_EQ(third_cycle->report().phase, safety::Phase::armed);
 }
 
+// Before a resume, by a program that has just been started.
+TEST(Runner, AnInterruptedSessionsStatusKnowsItsPlanAndItsReturns) {
+  Desk desk;
+  desk.person.act = [&](const std::string& what) {
+    if (desk.person.episodes.size() == 6) return false;
+    desk.runner->go();
+    return what == "go";
+  };
+  desk.plan.set_search_walks(8);
+  ASSERT_EQ(desk.run().how, Ended::How::interrupted);
+  v1::Status before;
+  desk.runner->fill(before);
+  const auto cycle =
+      std::make_unique<Cycle>(desk.robot.robot(), desk.policy.policy(), test::puppet(desk.robot));
+  const auto mover = make_stepped_mover(*cycle);
+  Runner again(desk.robot, *mover, *desk.journal, desk.person);
+  v1::Status status;
+  again.fill(status);
+  EXPECT_EQ(status.session_part(), v1::INTERRUPTED);
+  EXPECT_EQ(status.walks_done(), 6U);
+  EXPECT_GT(status.walks_planned(), 6U);
+  EXPECT_EQ(status.walks_planned(), before.walks_planned());
+  EXPECT_NEAR(status.start_return(), before.start_return(), 1e-12);
+  EXPECT_NEAR(status.best_return(), before.best_return(), 1e-12);
+  EXPECT_EQ(status.joints_size(), 0) << "no frame has been read yet";
+  EXPECT_EQ(before.joints_size(), desk.robot.joint_count());
+  EXPECT_EQ(before.joints(3).name(), desk.robot.robot().joints(3).name());
+  EXPECT_FALSE(before.joints(3).has_target_rad()) << "parked: nothing is asked of the joint";
+  EXPECT_GT(before.joints(3).winding_c(), 0);
+}
+
 TEST(Runner, WithoutTheBatonNothingBeginsAtSteppedPace) {
   Desk desk;
+  desk.plan.set_search_walks(2);  // a plan that can be read again
   desk.mover->signals().baton_lost.store(true);
   EXPECT_EQ(desk.run().how, Ended::How::interrupted);
   EXPECT_TRUE(desk.person.episodes.empty());

@@ -8,6 +8,7 @@
 #include <functional>
 #include <map>
 
+#include "proto/files/plan_file.h"
 #include "runtime/adapt/confirm.h"
 #include "runtime/journal/journal.h"
 #include "tests/runtime/session/setting.h"
@@ -337,6 +338,52 @@ TEST(Session, FallsWithinTheConfirmationEndItAsKeep) {
   });
   EXPECT_EQ(session.verdict()->kind(), v1::Verdict::KEEP);
   EXPECT_EQ(record.count(Part::confirmation_adapted), 2);
+}
+
+// Each pair tells the same small difference: the interval excludes 0 from the first to the last one.
+TEST(Session, AnEffectThatIsRealButTinyIsToldAsOfNoPracticalSizeAndTheRuleStays) {
+  for (const double gain : {0.03, -0.03, 0.06}) {
+    const SessionStart start = start_with(test::short_plan());
+    Session session(start);
+    Record record(start);
+    record.walk(session, [gain](const Order& order) {
+      return walked(order.part == Part::search                 ? slope(order.parameters)
+                    : order.part == Part::confirmation_adapted ? 2 + gain
+                                                               : 2);
+    });
+    const v1::Verdict verdict = *session.verdict();
+    EXPECT_EQ(verdict.kind(), gain > 0 ? v1::Verdict::ADOPT : v1::Verdict::KEEP) << verdict.words();
+    EXPECT_EQ(verdict.words().find("real, but of no practical size") != std::string::npos,
+              std::abs(gain) < kPracticalSize)
+        << verdict.words();
+  }
+  EXPECT_FALSE(of_no_practical_size(0.03, -0.01, 0.07)) << "not shown to be real";
+  EXPECT_FALSE(of_no_practical_size(std::nan(""), std::nan(""), std::nan("")));
+}
+
+// What `pastern check` expects of a plan is what the operators really ask for.
+TEST(Session, TheFirstBatchIsAsLongAsThePlanFileSays) {
+  for (const auto kind : {v1::Adaptation::SEQUENTIAL_HILL_CLIMBING, v1::Adaptation::AVERAGED_HILL_CLIMBING,
+                          v1::Adaptation::BATCH_HILL_CLIMBING, v1::Adaptation::ES_GRADIENT}) {
+    for (const bool said : {false, true}) {
+      v1::Plan plan = test::short_plan(kind);
+      plan.mutable_adaptation()->clear_batch();
+      plan.mutable_adaptation()->clear_repeats();
+      if (said && kind == v1::Adaptation::AVERAGED_HILL_CLIMBING) plan.mutable_adaptation()->set_repeats(4);
+      if (said && kind == v1::Adaptation::BATCH_HILL_CLIMBING) plan.mutable_adaptation()->set_batch(7);
+      if (said && kind == v1::Adaptation::ES_GRADIENT) plan.mutable_adaptation()->set_batch(7);
+      const std::uint32_t least = files::first_batch_walks(plan);
+      for (const std::uint32_t walks : {least, least - 1}) {
+        plan.set_search_walks(walks);
+        const SessionStart start = start_with(plan);
+        Session session(start);
+        Record record(start);
+        record.walk(session, on_the_slope());
+        EXPECT_EQ(record.count(Part::search), walks == least ? static_cast<int>(least) : 0)
+            << v1::Adaptation::Kind_Name(kind);
+      }
+    }
+  }
 }
 
 TEST(Session, AClearlyWorsePolicyIsCalledWorseAndAnUnclearOneIsNot) {
