@@ -132,7 +132,7 @@ TEST(JsonTest, MessagesKeepTheirFieldNamesAndBytesAreHex) {
   EXPECT_EQ(
       json(command),
       "{\"format\": 0, \"id\": \"x\", \"operator_name\": \"\", \"baton\": 0, \"adopt\": {\"policy_sha256\": "
-      "\"01ff\"}}");
+      "\"01ff\", \"back\": false}}");
 }
 
 TEST(SvgTest, StepsOfAxesAreOneTwoFive) {
