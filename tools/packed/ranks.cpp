@@ -81,38 +81,29 @@ Ranks::~Ranks() {
 int Ranks::rank() const { return impl_->rank; }
 int Ranks::count() const { return impl_->count; }
 
-std::vector<std::size_t> Ranks::share_of(std::size_t jobs) const {
-  std::vector<std::size_t> mine;
-  for (auto i = static_cast<std::size_t>(rank()); i < jobs; i += static_cast<std::size_t>(count())) {
-    mine.push_back(i);
-  }
-  return mine;
-}
-
-void Ranks::gather(std::size_t rows, std::size_t width, double* numbers) const {
+void Ranks::gather(const std::vector<int>& owner, std::size_t width, double* numbers) const {
   if (impl_->table == nullptr) return;
+  if (owner.size() * width > static_cast<std::size_t>(std::numeric_limits<int>::max()) / sizeof(double)) {
+    throw std::runtime_error("too many results for one gathering: " + std::to_string(owner.size()));
+  }
   const auto ranks = static_cast<std::size_t>(count());
-  if (rows * width > static_cast<std::size_t>(std::numeric_limits<int>::max()) / sizeof(double)) {
-    throw std::runtime_error("too many results for one gathering: " + std::to_string(rows));
-  }
+  const int row_bytes = static_cast<int>(width * sizeof(double));
   std::vector<double> mine;
-  for (const std::size_t row : share_of(rows)) {
-    mine.insert(mine.end(), numbers + row * width, numbers + (row + 1) * width);
+  std::vector<int> bytes(ranks, 0);
+  for (std::size_t row = 0; row < owner.size(); ++row) {
+    bytes[static_cast<std::size_t>(owner[row])] += row_bytes;
+    if (owner[row] == rank()) mine.insert(mine.end(), numbers + row * width, numbers + (row + 1) * width);
   }
-  std::vector<int> bytes(ranks);
-  std::vector<int> places(ranks);
-  for (std::size_t r = 0; r < ranks; ++r) {
-    const std::size_t share = rows / ranks + (r < rows % ranks ? 1 : 0);
-    bytes[r] = static_cast<int>(share * width * sizeof(double));
-    if (r > 0) places[r] = places[r - 1] + bytes[r - 1];
-  }
-  std::vector<double> all(rows * width);
+  std::vector<int> places(ranks, 0);
+  std::partial_sum(bytes.begin(), bytes.end() - 1, places.begin() + 1);
+  std::vector<double> all(owner.size() * width);
   if (impl_->table->gather(mine.data(), all.data(), bytes.data(), places.data()) != 0) {
     throw std::runtime_error("MPI could not gather the results");
   }
-  for (std::size_t row = 0; row < rows; ++row) {
-    const std::size_t place = static_cast<std::size_t>(places[row % ranks]) / sizeof(double);
-    std::copy_n(all.data() + place + row / ranks * width, width, numbers + row * width);
+  for (std::size_t row = 0; row < owner.size(); ++row) {
+    int& place = places[static_cast<std::size_t>(owner[row])];
+    std::copy_n(all.data() + static_cast<std::size_t>(place) / sizeof(double), width, numbers + row * width);
+    place += row_bytes;
   }
 }
 

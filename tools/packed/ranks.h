@@ -28,11 +28,9 @@ class Ranks {
   /// The one that speaks and writes files.
   [[nodiscard]] bool leads() const { return rank() == 0; }
 
-  /// Of `jobs` jobs, those of this rank: rank, rank + count, ...
-  [[nodiscard]] std::vector<std::size_t> share_of(std::size_t jobs) const;
-  /// Row i of `width` numbers has been filled by the rank that i is the share of; afterwards by all, bit for
-  /// bit. Throws std::runtime_error when MPI fails.
-  void gather(std::size_t rows, std::size_t width, double* numbers) const;
+  /// Row i of `width` numbers has been filled by rank owner[i]; afterwards by all, bit for bit. The owners
+  /// are the same on all ranks. Throws std::runtime_error when MPI fails.
+  void gather(const std::vector<int>& owner, std::size_t width, double* numbers) const;
   /// Whether all ranks hold the same text, such as digests of robot, policy and seed: different files on
   /// different machines would otherwise give results that belong to nothing.
   [[nodiscard]] bool agree(std::string_view text) const;

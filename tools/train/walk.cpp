@@ -17,10 +17,6 @@
 namespace pastern::tools {
 namespace {
 
-// What the estimator on the robot is off by, for as long as a walk lasts: a tilted IMU and a gyro that is
-// still settling.
-constexpr double kAttitudeError_rad = 0.006;
-
 // The gate's pure clamps of one joint (safety/clamps.h), which a walk within its limits meets.
 struct Clamps {
   double peak, step, angle_min, angle_max, soft_edge, soft_speed, speed_max;
@@ -207,11 +203,9 @@ void come_to_stand(const Parts& parts, Work& work, std::uint64_t draw) {
 
 template <class Parts, class Work>
 void begin(const Parts& parts, Work& work, const SiteChoice& choose, const Lot& lot) {
-  Draws draws(lot.seed, Purpose::walk, lot.number);
-  const std::uint64_t seed = draws.word64();
-  const std::uint64_t draw = draws.word64();
-  work.roll_error = kAttitudeError_rad * draws.normal();
-  work.pitch_error = kAttitudeError_rad * draws.normal();
+  const auto [seed, draw, roll_error, pitch_error] = chance_of(lot);
+  work.roll_error = roll_error;
+  work.pitch_error = pitch_error;
   work.robot.renew(choose(*parts.model, lot), seed);
   std::string error;
   auto& stood = work.stood;
@@ -261,6 +255,19 @@ Score WalkCourse::run(const Parameters& parameters, const Lot& lot) {
   score.terms = episode::terms(sums, parts.weights, score.fell);
   score.distance_m = work.body.position.x;
   return score;
+}
+
+WalkChance chance_of(const Lot& lot) noexcept {
+  // What the estimator on the robot is off by, for as long as a walk lasts: a tilted IMU and a gyro that is
+  // still settling.
+  constexpr double kAttitudeError_rad = 0.006;
+  Draws draws(lot.seed, Purpose::walk, lot.number);
+  WalkChance chance;
+  chance.seed = draws.word64();
+  chance.draw = draws.word64();
+  chance.roll_error_rad = kAttitudeError_rad * draws.normal();
+  chance.pitch_error_rad = kAttitudeError_rad * draws.normal();
+  return chance;
 }
 
 SiteChoice drawn_sites(const SiteRanges& ranges) {

@@ -55,6 +55,15 @@ class WalkCourse final : public Course {
   std::unique_ptr<Work> work_;
 };
 
+/// All chance of a lot's walk but its site.
+struct WalkChance {
+  std::uint64_t seed{0};  ///< of the simulated robot
+  std::uint64_t draw{0};
+  double roll_error_rad{0};  ///< of the estimated attitude
+  double pitch_error_rad{0};
+};
+[[nodiscard]] WalkChance chance_of(const Lot& lot) noexcept;
+
 /// Sites drawn anew for each lot.
 struct SiteRanges;
 [[nodiscard]] SiteChoice drawn_sites(const SiteRanges& ranges);
