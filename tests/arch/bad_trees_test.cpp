@@ -215,6 +215,15 @@ TEST(BadTree, TwoCallersOfTheTableOrNone) {
   expect_only(small.all(), "called by 0 files, expected exactly one");
 }
 
+TEST(BadTree, TheLoaderOfMpiMayLoadButNotKnowDrives) {
+  const SmallTree small;
+  small.write("tools/packed/ranks.cpp", "void* p = dlopen(\"libpastern_ranks.so\", 0);\n");
+  EXPECT_TRUE(check_one_caller_of_the_table(small.tree()).empty());
+  small.write("tools/packed/ranks.cpp",
+              "void* p = dlopen(0, 0);\nauto q = dlsym(p, \"pastern_hal_entry\");\n");
+  EXPECT_EQ(check_one_caller_of_the_table(small.tree()).size(), 3U);
+}
+
 TEST(BadTree, ADriveCommandMadeOutsideTheGate) {
   const SmallTree small;
   for (const char* code :

@@ -36,7 +36,7 @@ std::string library_path() {
 }  // namespace
 
 struct Ranks::Impl {
-  const pastern_ranks_table* table{nullptr};  // none: alone
+  const pastern_ranks_table* mpi{nullptr};  // none: alone
   int rank{0};
   int count{1};
   int exceptions{std::uncaught_exceptions()};
@@ -66,23 +66,23 @@ std::unique_ptr<Ranks> Ranks::join(std::string& error) {
     error = why.data();
     return nullptr;
   }
-  impl->table = entry();
+  impl->mpi = entry();
   return std::unique_ptr<Ranks>(new Ranks(std::move(impl)));
 }
 
 Ranks::Ranks(std::unique_ptr<Impl> impl) : impl_(std::move(impl)) {}
 
 Ranks::~Ranks() {
-  if (impl_->table == nullptr) return;
-  if (std::uncaught_exceptions() > impl_->exceptions) impl_->table->abandon(kInternal);
-  impl_->table->leave();
+  if (impl_->mpi == nullptr) return;
+  if (std::uncaught_exceptions() > impl_->exceptions) impl_->mpi->abandon(kInternal);
+  impl_->mpi->leave();
 }
 
 int Ranks::rank() const { return impl_->rank; }
 int Ranks::count() const { return impl_->count; }
 
 void Ranks::gather(const std::vector<int>& owner, std::size_t width, double* numbers) const {
-  if (impl_->table == nullptr) return;
+  if (impl_->mpi == nullptr) return;
   if (owner.size() * width > static_cast<std::size_t>(std::numeric_limits<int>::max()) / sizeof(double)) {
     throw std::runtime_error("too many results for one gathering: " + std::to_string(owner.size()));
   }
@@ -97,7 +97,7 @@ void Ranks::gather(const std::vector<int>& owner, std::size_t width, double* num
   std::vector<int> places(ranks, 0);
   std::partial_sum(bytes.begin(), bytes.end() - 1, places.begin() + 1);
   std::vector<double> all(owner.size() * width);
-  if (impl_->table->gather(mine.data(), all.data(), bytes.data(), places.data()) != 0) {
+  if (impl_->mpi->gather(mine.data(), all.data(), bytes.data(), places.data()) != 0) {
     throw std::runtime_error("MPI could not gather the results");
   }
   for (std::size_t row = 0; row < owner.size(); ++row) {
@@ -109,13 +109,13 @@ void Ranks::gather(const std::vector<int>& owner, std::size_t width, double* num
 
 std::vector<std::vector<unsigned char>> Ranks::all(const void* mine, std::size_t bytes) const {
   const auto* first = static_cast<const unsigned char*>(mine);
-  if (impl_->table == nullptr) return {std::vector<unsigned char>(first, first + bytes)};
+  if (impl_->mpi == nullptr) return {std::vector<unsigned char>(first, first + bytes)};
   const auto ranks = static_cast<std::size_t>(count());
   const std::vector<int> each(ranks, static_cast<int>(bytes));
   std::vector<int> places(ranks, 0);
   for (std::size_t r = 1; r < ranks; ++r) places[r] = places[r - 1] + static_cast<int>(bytes);
   std::vector<unsigned char> joined(ranks * bytes);
-  if (impl_->table->gather(mine, joined.data(), each.data(), places.data()) != 0) {
+  if (impl_->mpi->gather(mine, joined.data(), each.data(), places.data()) != 0) {
     throw std::runtime_error("MPI could not compare the ranks");
   }
   std::vector<std::vector<unsigned char>> parts;
