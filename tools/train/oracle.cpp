@@ -15,15 +15,15 @@ Gap find_gap(const WalkCourse& site, const Parameters& start, const OracleSettin
   training.step = training.last_step = settings.step;
   training.look_every = settings.look_every;
   training.look_walks = settings.look_walks;
-  Trainer trainer(training, start, courses_for(site.another(), threads));
+  Trainer trainer(training, start, site.by_lanes(threads));
   while (trainer.step()) {
   }
-  const auto courses = courses_for(site.another(), threads);
+  const auto trials = site.by_lanes(threads);
   const std::uint64_t judging = Draws(settings.seed, Purpose::oracle, 1).word64();
   Gap gap;
   gap.parameters = trainer.best();
-  gap.start = look_at(courses, start, judging, 0, settings.judging_walks);
-  gap.oracle = look_at(courses, gap.parameters, judging, 0, settings.judging_walks);
+  gap.start = look_at(*trials, start, judging, 0, settings.judging_walks);
+  gap.oracle = look_at(*trials, gap.parameters, judging, 0, settings.judging_walks);
   return gap;
 }
 

@@ -11,6 +11,7 @@
 #include "proto/files/text.h"
 #include "proto/files/words.h"
 #include "tools/train/draws.h"
+#include "tools/train/packed_trials.h"
 #include "tools/train/pool.h"
 #include "tools/train/sites.h"
 #include "tools/train/trot.h"
@@ -104,7 +105,7 @@ class Run {
       defects_.push_back({options_.robot, "", error, "a robot that can be simulated"});
       return false;
     }
-    trainer_.emplace(options_.settings, parameters_of(policy_), courses(drawn_sites(wide_ranges())));
+    trainer_.emplace(options_.settings, parameters_of(policy_), trials(drawn_sites(wide_ranges())));
     return go_on(state_, *robot_, policy_, *trainer_, defects_);
   }
 
@@ -127,9 +128,9 @@ class Run {
   void judge(TrainResult& result) {
     const std::uint64_t seed = Draws(options_.settings.seed, Purpose::look, 1).word64();
     result.wide =
-        look_at(courses(drawn_sites(wide_ranges())), trainer_->best(), seed, 0, options_.last_look_walks);
+        look_at(*trials(drawn_sites(wide_ranges())), trainer_->best(), seed, 0, options_.last_look_walks);
     const stub::Site site = stub::nominal_site(setting_->model());
-    result.nominal = look_at(courses(one_site(site)), trainer_->best(), seed, 0, kNominalWalks);
+    result.nominal = look_at(*trials(one_site(site)), trainer_->best(), seed, 0, kNominalWalks);
   }
 
   void write(TrainResult& result) {
@@ -152,8 +153,8 @@ class Run {
   [[nodiscard]] std::uint64_t walks() const { return trainer_->walks(); }
 
  private:
-  [[nodiscard]] std::vector<std::unique_ptr<Course>> courses(SiteChoice choose) const {
-    return courses_for(std::make_unique<WalkCourse>(setting_, std::move(choose)), threads_);
+  [[nodiscard]] std::unique_ptr<Trials> trials(SiteChoice choose) const {
+    return packed_trials(setting_, std::move(choose), threads_, options_.instructions);
   }
 
   const TrainOptions& options_;

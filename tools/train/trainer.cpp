@@ -38,19 +38,23 @@ std::string TrainerSettings::text() const {
          std::to_string(look_every) + " iterations, fall penalty " + shown_number(fall_penalty);
 }
 
-Look look_at(const std::vector<std::unique_ptr<Course>>& courses, const Parameters& parameters,
-             std::uint64_t seed, std::uint64_t first, std::size_t walks) {
-  std::vector<Score> scores(walks);
-  spread(static_cast<unsigned>(courses.size()), walks, [&](unsigned worker, std::size_t i) {
-    scores[i] = courses[worker]->run(parameters, {seed, first + i});
-  });
+namespace {
+
+std::vector<Trial> looks(const Parameters& parameters, std::uint64_t seed, std::uint64_t first,
+                         std::size_t walks) {
+  std::vector<Trial> wanted;
+  for (std::size_t i = 0; i < walks; ++i) wanted.push_back({&parameters, {seed, first + i}});
+  return wanted;
+}
+
+Look seen(const std::vector<Score>& scores, double duration_s) {
   Look look;
-  look.walks = walks;
-  const auto n = static_cast<double>(std::max<std::size_t>(1, walks));
+  look.walks = scores.size();
+  const auto n = static_cast<double>(std::max<std::size_t>(1, scores.size()));
   for (const Score& score : scores) {
     look.mean_return += total(score) / n;
     look.falls += (score.fell ? 1 : 0) / n;
-    look.speed_m_per_s += score.distance_m / courses.front()->duration_s() / n;
+    look.speed_m_per_s += score.distance_m / duration_s / n;
   }
   double square = 0;
   for (const Score& score : scores)
@@ -59,17 +63,25 @@ Look look_at(const std::vector<std::unique_ptr<Course>>& courses, const Paramete
   return look;
 }
 
-std::vector<std::unique_ptr<Course>> courses_for(std::unique_ptr<Course> course, unsigned threads) {
-  std::vector<std::unique_ptr<Course>> courses;
-  courses.push_back(std::move(course));
-  while (courses.size() < std::max(1U, threads)) courses.push_back(courses.front()->another());
-  return courses;
+}  // namespace
+
+Look look_at(Trials& trials, const Parameters& parameters, std::uint64_t seed, std::uint64_t first,
+             std::size_t walks) {
+  return seen(trials.run(looks(parameters, seed, first, walks)), trials.duration_s());
+}
+
+Look look_at(const std::vector<std::unique_ptr<Course>>& courses, const Parameters& parameters,
+             std::uint64_t seed, std::uint64_t first, std::size_t walks) {
+  return seen(run_on(courses, looks(parameters, seed, first, walks)), courses.front()->duration_s());
 }
 
 Trainer::Trainer(const TrainerSettings& settings, Parameters start,
                  std::vector<std::unique_ptr<Course>> courses)
+    : Trainer(settings, std::move(start), trials_on(std::move(courses))) {}
+
+Trainer::Trainer(const TrainerSettings& settings, Parameters start, std::unique_ptr<Trials> trials)
     : settings_(settings),
-      courses_(std::move(courses)),
+      trials_(std::move(trials)),
       centre_(std::move(start)),
       best_(centre_),
       best_score_(-std::numeric_limits<double>::infinity()) {}
@@ -85,20 +97,24 @@ bool Trainer::step() {
 void Trainer::climb() {
   const std::size_t pairs = settings_.directions;
   std::vector<Parameters> directions(pairs, Parameters(centre_.size()));
-  std::vector<double> returns(2 * pairs);
-  spread(static_cast<unsigned>(courses_.size()), pairs, [&](unsigned worker, std::size_t i) {
+  std::vector<Parameters> there(2 * pairs, centre_);
+  std::vector<Trial> trials;
+  for (std::size_t i = 0; i < pairs; ++i) {
     draw_direction(settings_.seed, iteration_, i, directions[i]);
     const Lot lot{settings_.seed, static_cast<std::uint64_t>(iteration_) * pairs + i};
-    Parameters there(centre_.size());
-    for (const double sign : {1.0, -1.0}) {
-      for (std::size_t j = 0; j < there.size(); ++j) {
-        there[j] = centre_[j] + sign * settings_.sigma * directions[i][j];
+    for (std::size_t k = 2 * i; k < 2 * i + 2; ++k) {
+      const double sign = k % 2 == 0 ? 1 : -1;
+      for (std::size_t j = 0; j < centre_.size(); ++j) {
+        there[k][j] = centre_[j] + sign * settings_.sigma * directions[i][j];
       }
-      returns[2 * i + (sign > 0 ? 0 : 1)] = total(courses_[worker]->run(there, lot));
+      trials.push_back({&there[k], lot});
     }
-  });
+  }
+  const std::vector<Score> scores = trials_->run(trials);
   std::vector<double> differences(pairs);
-  for (std::size_t i = 0; i < pairs; ++i) differences[i] = returns[2 * i] - returns[2 * i + 1];
+  for (std::size_t i = 0; i < pairs; ++i) {
+    differences[i] = total(scores[2 * i]) - total(scores[2 * i + 1]);
+  }
   const double share =
       settings_.iterations > 1 ? static_cast<double>(iteration_) / (settings_.iterations - 1) : 0;
   const double step = settings_.step + (settings_.last_step - settings_.step) * share;
@@ -107,7 +123,7 @@ void Trainer::climb() {
 }
 
 void Trainer::look() {
-  const Look seen = look_at(courses_, centre_, look_seed(settings_.seed), 0, settings_.look_walks);
+  const Look seen = look_at(*trials_, centre_, look_seed(settings_.seed), 0, settings_.look_walks);
   walks_ += settings_.look_walks;
   const double score = seen.mean_return - settings_.fall_penalty * seen.falls;
   if (score > best_score_) {

@@ -12,6 +12,7 @@
 #include "pastern/v1/training.pb.h"
 #include "tools/train/course.h"
 #include "tools/train/evolution.h"
+#include "tools/train/trials.h"
 
 namespace pastern::tools {
 
@@ -39,16 +40,17 @@ struct Look {
   double speed_m_per_s{0};
 };
 
-/// Walks of `parameters` over lots (seed, first .. first + walks - 1), one course a thread.
+/// Walks of `parameters` over lots (seed, first .. first + walks - 1).
+[[nodiscard]] Look look_at(Trials& trials, const Parameters& parameters, std::uint64_t seed,
+                           std::uint64_t first, std::size_t walks);
+/// The same with one course a thread.
 [[nodiscard]] Look look_at(const std::vector<std::unique_ptr<Course>>& courses, const Parameters& parameters,
                            std::uint64_t seed, std::uint64_t first, std::size_t walks);
 
-/// One course a thread, all alike.
-[[nodiscard]] std::vector<std::unique_ptr<Course>> courses_for(std::unique_ptr<Course> course,
-                                                               unsigned threads);
-
 class Trainer {
  public:
+  Trainer(const TrainerSettings& settings, Parameters start, std::unique_ptr<Trials> trials);
+  /// On one course a thread.
   Trainer(const TrainerSettings& settings, Parameters start, std::vector<std::unique_ptr<Course>> courses);
 
   /// One iteration, and the look that belongs after it. False when all are done.
@@ -73,7 +75,7 @@ class Trainer {
   void look();
 
   TrainerSettings settings_;
-  std::vector<std::unique_ptr<Course>> courses_;
+  std::unique_ptr<Trials> trials_;
   Parameters centre_;
   Parameters best_;
   double best_score_;

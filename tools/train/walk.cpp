@@ -40,6 +40,7 @@ double clamped(const Clamps& c, double wanted, double angle, double speed, doubl
 
 struct WalkSetting::Parts {
   std::shared_ptr<const stub::Model> model;
+  std::shared_ptr<const packed::WalkSettings> for_lanes;
   policy::Shape<double> shape;
   control::Gains<double> gains;
   episode::Weights weights;
@@ -57,13 +58,17 @@ struct WalkSetting::Parts {
 WalkSetting::WalkSetting() : parts_(std::make_unique<Parts>()) {}
 WalkSetting::~WalkSetting() = default;
 const stub::Model& WalkSetting::model() const { return *parts_->model; }
+const std::shared_ptr<const packed::WalkSettings>& WalkSetting::for_lanes() const {
+  return parts_->for_lanes;
+}
 
 std::shared_ptr<const WalkSetting> WalkSetting::make(const v1::Robot& robot, const v1::Policy& policy,
                                                      double walk_s, std::string& error) {
   const std::shared_ptr<WalkSetting> setting(new WalkSetting);
   Parts& parts = *setting->parts_;
-  parts.model = stub::Model::make(robot, error);
-  if (!parts.model) return nullptr;
+  parts.for_lanes = packed::walk_settings(robot, policy, walk_s, error);
+  if (!parts.for_lanes) return nullptr;
+  parts.model = parts.for_lanes->model;
   parts.shape = policy::shape_of<double>(policy, robot);
   parts.gains = control::gains_of(robot);
   parts.weights = episode::weights_of(robot);
@@ -203,10 +208,10 @@ void come_to_stand(const Parts& parts, Work& work, std::uint64_t draw) {
 
 template <class Parts, class Work>
 void begin(const Parts& parts, Work& work, const SiteChoice& choose, const Lot& lot) {
-  const auto [seed, draw, roll_error, pitch_error] = chance_of(lot);
-  work.roll_error = roll_error;
-  work.pitch_error = pitch_error;
-  work.robot.renew(choose(*parts.model, lot), seed);
+  const WalkChance chance = chance_of(lot);
+  work.roll_error = chance.roll_error_rad;
+  work.pitch_error = chance.pitch_error_rad;
+  work.robot.renew(choose(*parts.model, lot), chance.seed);
   std::string error;
   auto& stood = work.stood;
   const bool again = stood.known && stood.lot.seed == lot.seed && stood.lot.number == lot.number;
@@ -214,7 +219,7 @@ void begin(const Parts& parts, Work& work, const SiteChoice& choose, const Lot& 
     work.frame = stood.frame;
     work.torque = stood.torque;
   } else {
-    come_to_stand(parts, work, draw);
+    come_to_stand(parts, work, chance.draw);
     stood = {true, lot, work.robot.save(), work.frame, work.torque};
   }
   const stub::Truth truth = work.robot.truth();

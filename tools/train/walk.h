@@ -9,7 +9,8 @@
 #include "hal_stub/robot/simulated_robot.h"
 #include "pastern/v1/policy.pb.h"
 #include "pastern/v1/robot.pb.h"
-#include "tools/train/course.h"
+#include "tools/packed/walk.h"
+#include "tools/train/trials.h"
 
 namespace pastern::tools {
 
@@ -25,6 +26,8 @@ class WalkSetting {
                                                                std::string& error);
   ~WalkSetting();
   [[nodiscard]] const stub::Model& model() const;
+  /// The same for walks by lanes.
+  [[nodiscard]] const std::shared_ptr<const packed::WalkSettings>& for_lanes() const;
 
  private:
   friend class WalkCourse;
@@ -43,6 +46,8 @@ class WalkCourse final : public Course {
   [[nodiscard]] Score run(const Parameters& parameters, const Lot& lot) override;
   [[nodiscard]] std::unique_ptr<Course> another() const override;
   [[nodiscard]] double duration_s() const override;
+  /// The same walks by lanes (packed_trials.h).
+  [[nodiscard]] std::unique_ptr<Trials> by_lanes(unsigned threads) const;
   /// Called after each tick of the walk with its time, and once before the first; empty: nobody looks.
   using Watch = std::function<void(const stub::SimulatedRobot& robot, double time_s)>;
   void watch(Watch watch) { watch_ = std::move(watch); }

@@ -33,7 +33,7 @@ class Train final : public Verb {
         "",
         "Interrupted (Ctrl-C, a power cut) it goes on from OUT.training when called again in the same words.",
         "The same robot file and settings give the same policy file, byte for byte, on any number of "
-        "threads.",
+        "threads, with AVX2 or AVX-512; --instructions plain gives another.",
         "Exit status 5: interrupted. 3: a file is wrong or cannot be written.",
         "A policy that walks in simulation has walked on no robot: first start on a gantry, hand on the "
         "stop."};
@@ -52,6 +52,8 @@ class Train final : public Verb {
         .number("--step", settings.step, "Step of Adam at the beginning", 1e-6, 10)
         .number("--last-step", settings.last_step, "and at the end", 1e-6, 10)
         .whole("--threads", threads_, "Threads; 0: one for each core", 0, 1024)
+        .text("--instructions", instructions_,
+              "Instructions that walks run with: plain, avx2, avx512 or neon; the widest when not said")
         .flag("--quiet", quiet_, "The result only")
         .flag("--json", json_, "Print each look and the result as JSON, one line each");
   }
@@ -65,6 +67,7 @@ class Train final : public Verb {
   std::uint64_t iterations_{start_policy_settings().iterations};
   std::uint64_t directions_{start_policy_settings().directions};
   int threads_{0};
+  std::string instructions_;
   bool quiet_{false};
   bool json_{false};
   std::chrono::steady_clock::time_point began_;
@@ -116,6 +119,13 @@ Exit Train::run() {
   options_.settings.iterations = static_cast<std::uint32_t>(iterations_);
   options_.settings.directions = static_cast<std::size_t>(directions_);
   options_.threads = static_cast<unsigned>(threads_);
+  std::string error;
+  const auto set = packed::set_named(instructions_, error);
+  if (!set) {
+    complain("pastern train: --instructions: " + error);
+    return Exit::usage;
+  }
+  options_.instructions = *set;
   options_.software = "pastern " PASTERN_VERSION;
   began_ = std::chrono::steady_clock::now();
   interrupted = 0;
