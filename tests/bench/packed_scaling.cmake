@@ -1,0 +1,5 @@
+pastern_bench(packed_scaling SOURCES ${CMAKE_CURRENT_LIST_DIR}/packed_scaling.cpp LINKS pastern_fleet CLI11::CLI11)
+if(TARGET pastern_ranks)
+  target_compile_definitions(bench_packed_scaling PRIVATE PASTERN_MPIRUN="${MPIEXEC_EXECUTABLE}")
+  add_dependencies(bench_packed_scaling pastern_ranks)
+endif()
