@@ -62,7 +62,7 @@ std::unique_ptr<SimulatedRobot> robot_from_files(const std::string& robot_file,
       error = defects.front().line();
       return nullptr;
     }
-    site = site_of(*scenario, *model);
+    site = site_of(*scenario, *model, seed);
   }
   return std::make_unique<SimulatedRobot>(model, site, seed);
 }

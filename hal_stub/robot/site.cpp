@@ -4,6 +4,8 @@
 #include <algorithm>
 
 #include "hal_stub/robot/model.h"
+#include "hal_stub/robot/random.h"
+#include "proto/files/drawn.h"
 
 namespace pastern::stub {
 namespace {
@@ -69,6 +71,33 @@ void take_faults(const v1::Scenario& scenario, const Model& model, Site& site) {
   }
 }
 
+/// Names the random numbers of one range.
+struct Draw {
+  std::uint64_t seed;
+  int range;
+  /// `part` 0: whether, and which joint; 1 + j: the number (of joint j).
+  [[nodiscard]] Words words(std::uint32_t part) const {
+    return random_words(seed, static_cast<std::uint64_t>(range), 0, Chance::site, part);
+  }
+};
+
+void draw_number(const v1::Drawn& drawn, const Model& model, const Draw& draw, v1::Scenario& site) {
+  const auto number = [&](std::uint32_t joint) {
+    return drawn.low() + (drawn.high() - drawn.low()) * uniform_of(draw.words(1 + joint)[0]);
+  };
+  const Words first = draw.words(0);
+  if (drawn.has_share() && uniform_of(first[0]) >= drawn.share()) return;
+  if (!files::is_wear(drawn.field())) return files::set_number(site, drawn.field(), "", number(0));
+  const auto joints = static_cast<std::uint32_t>(model.joint_count());
+  const auto one = static_cast<std::uint32_t>(uniform_of(first[1]) * joints);
+  for (std::uint32_t j = 0; j < joints; ++j) {
+    const std::string& name = model.joint_names()[j];
+    const bool meant = drawn.joint() == files::kEachJoint || drawn.joint() == name ||
+                       (drawn.joint() == files::kOneJoint && j == one);
+    if (meant) files::set_number(site, drawn.field(), name, number(j));
+  }
+}
+
 }  // namespace
 
 Site nominal_site(const Model& model) {
@@ -81,7 +110,15 @@ Site nominal_site(const Model& model) {
   return site;
 }
 
-Site site_of(const v1::Scenario& scenario, const Model& model) {
+v1::Scenario drawn_scenario(const v1::Scenario& scenario, const Model& model, std::uint64_t seed) {
+  v1::Scenario site = scenario;
+  site.clear_drawn();
+  for (int i = 0; i < scenario.drawn_size(); ++i) draw_number(scenario.drawn(i), model, Draw{seed, i}, site);
+  return site;
+}
+
+Site site_of(const v1::Scenario& ranges, const Model& model, std::uint64_t seed) {
+  const v1::Scenario scenario = drawn_scenario(ranges, model, seed);
   Site site = nominal_site(model);
   take(scenario.has_load_kg(), scenario.load_kg(), site.load_kg);
   take_xyz(scenario.has_load_at_m(), scenario.load_at_m(), site.load_at_m);

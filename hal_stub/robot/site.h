@@ -87,7 +87,12 @@ struct Site {
 /// pushes, no scatter.
 [[nodiscard]] Site nominal_site(const Model& model);
 
-/// The site of a checked scenario file; what the file does not name is nominal.
-[[nodiscard]] Site site_of(const v1::Scenario& scenario, const Model& model);
+/// A checked scenario with its ranges drawn: each number a pure function of the seed and of its place among
+/// the ranges (and of the joint's place in the robot). Without ranges it is the scenario itself.
+[[nodiscard]] v1::Scenario drawn_scenario(const v1::Scenario& scenario, const Model& model,
+                                          std::uint64_t seed);
+
+/// The site of a checked scenario file, its ranges drawn by `seed`; what the file does not name is nominal.
+[[nodiscard]] Site site_of(const v1::Scenario& scenario, const Model& model, std::uint64_t seed);
 
 }  // namespace pastern::stub

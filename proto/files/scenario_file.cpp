@@ -4,6 +4,8 @@
 #include <cmath>
 #include <set>
 
+#include "proto/files/check.h"
+#include "proto/files/drawn.h"
 #include "proto/files/text.h"
 #include "proto/files/words.h"
 
@@ -120,6 +122,70 @@ class Judge {
     }
   }
 
+ public:
+  /// Ranges: of numbers that there are, in order, said once, and sound wherever in them a site is drawn.
+  void drawn() {
+    std::set<std::string> seen;
+    const std::size_t before = defects_.size();
+    for (int i = 0; i < scenario_.drawn_size(); ++i) {
+      const v1::Drawn& drawn = scenario_.drawn(i);
+      const std::string at = "drawn[" + std::to_string(i) + "]";
+      if (!is_number(drawn.field())) {
+        require(false, at + ".field", drawn.field(), "a number of the scenario or of a joint's wear");
+        continue;
+      }
+      require(drawn.low() <= drawn.high(), at + ".high", shown_number(drawn.high()),
+              "at least low, " + shown_number(drawn.low()));
+      drawn_joint(drawn, at);
+      require(seen.insert(drawn.field() + " " + drawn.joint()).second, at + ".field",
+              drawn.field() + ", drawn before", "each number once");
+    }
+    if (defects_.size() == before) corners();
+  }
+
+ private:
+  void drawn_joint(const v1::Drawn& drawn, const std::string& at) {
+    if (!is_wear(drawn.field())) {
+      require(drawn.joint().empty(), at + ".joint", drawn.joint(),
+              "nothing: " + drawn.field() + " is no joint's");
+      require(!is_fixed(scenario_, drawn.field(), ""), at + ".field",
+              drawn.field() + ", which has a value as well", "one of the two");
+      return;
+    }
+    const bool any = drawn.joint() == kEachJoint || drawn.joint() == kOneJoint;
+    require(any || robot_.joint_index(drawn.joint()) >= 0, at + ".joint",
+            drawn.joint().empty() ? "nothing" : drawn.joint(),
+            "each, one, or a joint of " + robot_.robot().name());
+    require(any || !is_fixed(scenario_, drawn.field(), drawn.joint()), at + ".field",
+            drawn.field() + " of " + drawn.joint() + ", which has a value as well", "one of the two");
+  }
+
+  /// Judges the sites at the ends of the ranges: every end of every number, and of those numbers that are
+  /// judged against one another every combination.
+  void corners() {
+    static const std::set<std::string> kTogether = {"command_delay_s", "command_jitter_s",
+                                                    "ground_wave_height_m", "ground_wave_length_m"};
+    constexpr unsigned kCombinations = 16;
+    Defects found;
+    for (unsigned n = 0; n < kCombinations && found.empty(); ++n) {
+      v1::Scenario site = scenario_;
+      site.clear_drawn();
+      unsigned together = 0;
+      for (const v1::Drawn& drawn : scenario_.drawn()) {
+        const bool high = kTogether.count(drawn.field()) > 0 ? (n >> together++ & 1U) != 0 : n % 2 != 0;
+        const bool any = drawn.joint() == kEachJoint || drawn.joint() == kOneJoint;
+        set_number(site, drawn.field(), any ? robot_.robot().joints(0).name() : drawn.joint(),
+                   high ? drawn.high() : drawn.low());
+      }
+      check_rules(site, file_, "", found);
+      Judge(site, robot_, file_, found).run();
+    }
+    for (Defect& defect : found) {
+      defect.field = "drawn: " + defect.field;
+      defects_.push_back(std::move(defect));
+    }
+  }
+
   const v1::Scenario& scenario_;
   const RobotFile& robot_;
   const std::string& file_;
@@ -134,6 +200,7 @@ std::optional<v1::Scenario> parse_scenario(const std::string& text, const std::s
   if (!parse_text(text, file, scenario, defects)) return std::nullopt;
   const std::size_t before = defects.size();
   Judge(scenario, robot, file, defects).run();
+  if (defects.size() == before) Judge(scenario, robot, file, defects).drawn();
   if (defects.size() != before) return std::nullopt;
   return scenario;
 }

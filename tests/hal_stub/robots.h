@@ -33,7 +33,7 @@ inline Site site_from(const std::string& text, const files::RobotFile& file, con
   files::Defects defects;
   const auto scenario = files::parse_scenario("name: \"test\"\n" + text, "test", file, defects);
   EXPECT_TRUE(scenario) << files::lines(defects);
-  return scenario ? site_of(*scenario, model) : nominal_site(model);
+  return scenario ? site_of(*scenario, model, 1) : nominal_site(model);
 }
 
 /// PD with the robot file's gains, as the cycle would.

@@ -339,6 +339,82 @@ TEST_F(Field, WearOfAJointWeakensItMakesPlayAndShiftsItsZero) {
   EXPECT_NEAR(frame_of(shifted).angle[8] - shifted.state().body.angle[2][2], 0.1, 0.002);
 }
 
+// --- Ranges.
+
+class Ranges : public Field {
+ protected:
+  v1::Scenario scenario(const std::string& text) {
+    files::Defects defects;
+    const auto read = files::parse_scenario("name: \"test\"\n" + text, "test", file_, defects);
+    EXPECT_TRUE(read) << files::lines(defects);
+    return read.value_or(v1::Scenario());
+  }
+  v1::Scenario drawn(const std::string& text, std::uint64_t seed) {
+    return drawn_scenario(scenario(text), *model_, seed);
+  }
+};
+
+TEST_F(Ranges, TheSameSeedDrawsTheSameSiteAnotherSeedAnother) {
+  const std::string text =
+      "drawn { field: \"friction\" low: 0.3 high: 1 } drawn { field: \"slope_rad\" low: -0.07 high: 0.07 }";
+  EXPECT_EQ(drawn(text, 7).SerializeAsString(), drawn(text, 7).SerializeAsString());
+  EXPECT_NE(drawn(text, 7).friction(), drawn(text, 8).friction());
+  EXPECT_EQ(drawn(text, 7).drawn_size(), 0);
+  // A range more at the end leaves what was drawn before as it was.
+  EXPECT_EQ(drawn(text + " drawn { field: \"load_kg\" low: 0 high: 4 }", 7).friction(),
+            drawn(text, 7).friction());
+  const Site site = site_of(scenario(text), *model_, 7);
+  EXPECT_EQ(site.friction, drawn(text, 7).friction());
+  EXPECT_EQ(site.slope_rad, drawn(text, 7).slope_rad());
+}
+
+TEST_F(Ranges, NumbersAreUniformBetweenTheEndsAndIndependentOfOneAnother) {
+  const std::string text =
+      "drawn { field: \"friction\" low: 0.2 high: 1 } drawn { field: \"load_kg\" low: 0 high: 4 }"
+      "drawn { field: \"load_at_m.y\" low: -0.1 high: 0.1 }";
+  constexpr int kSeeds = 2000;
+  double sum = 0;
+  double squares = 0;
+  double product = 0;
+  for (int seed = 0; seed < kSeeds; ++seed) {
+    const v1::Scenario site = drawn(text, static_cast<std::uint64_t>(seed));
+    ASSERT_GE(site.friction(), 0.2);
+    ASSERT_LE(site.friction(), 1);
+    ASSERT_EQ(site.load_at_m().x(), 0);
+    const double u = (site.friction() - 0.2) / 0.8;
+    sum += u;
+    squares += u * u;
+    product += (u - 0.5) * (site.load_kg() / 4 - 0.5);
+  }
+  // Uniform: mean 1/2, mean square 1/3; standard errors .0065 and .0067; of the product of two .0019.
+  EXPECT_NEAR(sum / kSeeds, 0.5, 0.03);
+  EXPECT_NEAR(squares / kSeeds, 1.0 / 3, 0.03);
+  EXPECT_NEAR(product / kSeeds, 0, 0.009);
+}
+
+TEST_F(Ranges, WearIsDrawnForEachJointForOneOfThemOrForTheJointNamed) {
+  const v1::Scenario each = drawn("drawn { field: \"strength\" joint: \"each\" low: 0.8 high: 1 }", 3);
+  ASSERT_EQ(each.wear_size(), 12);
+  std::set<double> numbers;
+  for (const auto& wear : each.wear()) numbers.insert(wear.strength());
+  EXPECT_EQ(numbers.size(), 12U);
+  std::set<std::string> weak;
+  int worn = 0;
+  for (std::uint64_t seed = 0; seed < 400; ++seed) {
+    const v1::Scenario one =
+        drawn("drawn { field: \"strength\" joint: \"one\" low: 0.4 high: 0.9 share: 0.6 }", seed);
+    ASSERT_LE(one.wear_size(), 1);
+    worn += one.wear_size();
+    if (one.wear_size() == 1) weak.insert(one.wear(0).joint());
+  }
+  EXPECT_EQ(weak.size(), 12U);
+  EXPECT_NEAR(worn, 240, 40);  // standard deviation 9.8
+  const v1::Scenario named =
+      drawn("drawn { field: \"backlash_rad\" joint: \"rear_left_knee\" low: 0.01 high: 0.02 }", 3);
+  ASSERT_EQ(named.wear_size(), 1);
+  EXPECT_EQ(named.wear(0).joint(), "rear_left_knee");
+}
+
 // --- Faults: each kind is asked for by its name, so a new kind without a test is seen by the last test here.
 // ---
 

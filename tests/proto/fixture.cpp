@@ -218,6 +218,12 @@ v1::Scenario scenario() {
   wear.set_strength(0.6);
   wear.set_backlash_rad(0.01);
   wear.set_zero_offset_rad(0.02);
+  v1::Drawn& drawn = *scenario.add_drawn();
+  drawn.set_field("strength");
+  drawn.set_joint("front_left_hip");
+  drawn.set_low(0.8);
+  drawn.set_high(1);
+  drawn.set_share(0.5);
   v1::Fault& fault = *scenario.add_faults();
   fault.set_kind(v1::Fault::ANGLE_JUMP);
   fault.set_joint("front_left_hip");

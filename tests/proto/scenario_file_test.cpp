@@ -56,6 +56,63 @@ TEST(ScenarioFile, RefusesWhatContradictsItself) {
             "s: command_jitter_s: found 0.02, expected at most command_delay_s, 0.01\n");
 }
 
+TEST(ScenarioFile, RangesAreOfNumbersThatThereAreInOrderAndSaidOnce) {
+  const auto judged = [](const char* field, const char* joint, double low, double high) {
+    return why([&](v1::Scenario& s) {
+      s.clear_drawn();
+      s.clear_friction();
+      v1::Drawn& drawn = *s.add_drawn();
+      drawn.set_field(field);
+      if (*joint != 0) drawn.set_joint(joint);
+      drawn.set_low(low);
+      drawn.set_high(high);
+    });
+  };
+  EXPECT_EQ(judged("friction", "", 0.2, 1.0), "accepted");
+  EXPECT_EQ(judged("friction", "", 0.4, 0.4), "accepted");
+  EXPECT_EQ(judged("strength", "each", 0.85, 1.05), "accepted");
+  EXPECT_EQ(judged("strength", "one", 0.4, 0.9), "accepted");
+  EXPECT_EQ(judged("grip", "", 0, 1),
+            "s: drawn[0].field: found grip, expected a number of the scenario or of a joint's wear\n");
+  EXPECT_EQ(judged("name", "", 0, 1),
+            "s: drawn[0].field: found name, expected a number of the scenario or of a joint's wear\n");
+  EXPECT_EQ(judged("load_at_m.w", "", 0, 1),
+            "s: drawn[0].field: found load_at_m.w, expected a number of the scenario or of a joint's wear\n");
+  EXPECT_EQ(judged("friction", "", 0.5, 0.4), "s: drawn[0].high: found 0.4, expected at least low, 0.5\n");
+  EXPECT_EQ(judged("friction", "each", 0.4, 0.5),
+            "s: drawn[0].joint: found each, expected nothing: friction is no joint's\n");
+  EXPECT_EQ(judged("strength", "", 0.4, 0.5),
+            "s: drawn[0].joint: found nothing, expected each, one, or a joint of fixture10\n");
+  EXPECT_EQ(judged("strength", "wing", 0.4, 0.5),
+            "s: drawn[0].joint: found wing, expected each, one, or a joint of fixture10\n");
+  EXPECT_EQ(judged("slope_rad", "", 0, 0.1),
+            "s: drawn[0].field: found slope_rad, which has a value as well, expected one of the two\n");
+  EXPECT_EQ(
+      judged("strength", "rear_left_knee", 0.4, 0.5),
+      "s: drawn[0].field: found strength of rear_left_knee, which has a value as well, expected one of the "
+      "two\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { *s.add_drawn() = s.drawn(0); }),
+            "s: drawn[1].field: found strength, drawn before, expected each number once\n");
+}
+
+TEST(ScenarioFile, EveryEndOfARangeIsJudgedAsAValueWouldBe) {
+  const auto judged = [](const char* field, double low, double high) {
+    return why([&](v1::Scenario& s) {
+      s.clear_drawn();
+      s.clear_friction();
+      s.clear_command_jitter_s();
+      v1::Drawn& drawn = *s.add_drawn();
+      drawn.set_field(field);
+      drawn.set_low(low);
+      drawn.set_high(high);
+    });
+  };
+  EXPECT_EQ(judged("friction", 0.4, 2), "s: drawn: friction: found 2, expected a finite number at least 0.02 and at most 1.5\n");
+  EXPECT_NE(judged("friction", -1, 1).find("s: drawn: friction: found -1"), std::string::npos);
+  EXPECT_EQ(judged("command_jitter_s", 0, 0.02),
+            "s: drawn: command_jitter_s: found 0.02, expected at most command_delay_s, 0.01\n");
+}
+
 TEST(ScenarioFile, RefusesAGroundThatCannotBe) {
   EXPECT_EQ(why([](v1::Scenario& s) { s.clear_ground_wave_length_m(); }),
             "s: ground_wave_height_m: found one without the other, expected ground_wave_height_m and "

@@ -85,7 +85,7 @@ std::optional<Scene> Draw::simulated(const files::RobotFile& robot) const {
     return std::nullopt;
   }
   const stub::Site site =
-      scenario ? stub::site_of(*scenario, setting->model()) : stub::nominal_site(setting->model());
+      scenario ? stub::site_of(*scenario, setting->model(), seed_) : stub::nominal_site(setting->model());
   WalkCourse course(setting, one_site(site));
   Scene scene;
   scene.period_s = kStillPeriod_s;

@@ -60,7 +60,7 @@ stub::Site site_of(const std::string& scenario, const files::RobotFile& robot, c
   files::Defects defects;
   const auto read = files::read_scenario(kStub + "scenarios/" + scenario + ".scenario.txtpb", robot, defects);
   if (!read) throw std::runtime_error(files::lines(defects));
-  return stub::site_of(*read, model);
+  return stub::site_of(*read, model, 1);
 }
 
 Means in_process(const files::RobotFile& robot, const v1::Policy& policy, const std::string& scenario) {
