@@ -83,6 +83,8 @@ int carry_back(void* handle, uint64_t draw) {
   return static_cast<Port*>(handle)->carry_back(draw) ? PASTERN_HAL_OK : PASTERN_HAL_FAILED;
 }
 
+const char* about(void* handle) { return static_cast<Port*>(handle)->about(); }
+
 constexpr pastern_hal kTable = {PASTERN_HAL_VERSION,
                                 sizeof(pastern_hal),
                                 "simulated robot",
@@ -94,7 +96,8 @@ constexpr pastern_hal kTable = {PASTERN_HAL_VERSION,
                                 error_text,
                                 save,
                                 restore,
-                                carry_back};
+                                carry_back,
+                                about};
 
 }  // namespace
 }  // namespace pastern::stub

@@ -21,6 +21,8 @@ class Port {
   virtual bool save(std::string& state) = 0;
   virtual bool restore(const std::string& state) = 0;
   virtual bool carry_back(std::uint64_t draw) = 0;
+  /// One line for the record; empty when the options say it all.
+  [[nodiscard]] virtual const char* about() const { return ""; }
   /// One line about the last failure.
   [[nodiscard]] virtual const char* error_text() const = 0;
 };

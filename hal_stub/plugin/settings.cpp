@@ -1,6 +1,8 @@
 // Files and options of the simulated robot.
 #include "hal_stub/plugin/settings.h"
 
+#include <google/protobuf/text_format.h>
+
 #include "proto/files/robot_file.h"
 #include "proto/files/scenario_file.h"
 
@@ -41,9 +43,25 @@ bool parse_options(const std::string& text, const std::string& known,
   return true;
 }
 
+namespace {
+
+/// In the words of the file, so that it can be copied into one.
+std::string drawn_words(const v1::Scenario& scenario, const Model& model, std::uint64_t seed) {
+  if (scenario.drawn_size() == 0) return {};
+  v1::Scenario site = drawn_scenario(scenario, model, seed);
+  site.clear_about();
+  google::protobuf::TextFormat::Printer printer;
+  printer.SetSingleLineMode(true);
+  std::string words;
+  printer.PrintToString(site, &words);
+  return "site drawn by seed " + std::to_string(seed) + ": " + words;
+}
+
+}  // namespace
+
 std::unique_ptr<SimulatedRobot> robot_from_files(const std::string& robot_file,
                                                  const std::string& scenario_file, std::uint64_t seed,
-                                                 std::string& error) {
+                                                 std::string& error, std::string* drawn) {
   files::Defects defects;
   const auto robot = files::read_robot(robot_file, defects);
   if (!robot) {
@@ -63,6 +81,7 @@ std::unique_ptr<SimulatedRobot> robot_from_files(const std::string& robot_file,
       return nullptr;
     }
     site = site_of(*scenario, *model, seed);
+    if (drawn != nullptr) *drawn = drawn_words(*scenario, *model, seed);
   }
   return std::make_unique<SimulatedRobot>(model, site, seed);
 }

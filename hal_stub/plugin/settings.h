@@ -16,9 +16,11 @@ namespace pastern::stub {
                                  std::map<std::string, std::string>& options, std::string& error);
 
 /// A robot lying on its mark, from its files. Null with one line in `error` (the first defect of a file, or
-/// what the simulated robot cannot be). `scenario_file` may be empty: a nominal site.
+/// what the simulated robot cannot be). `scenario_file` may be empty: a nominal site. `drawn`, when given,
+/// becomes one line that tells the site as it was drawn; empty when the scenario has no ranges.
 [[nodiscard]] std::unique_ptr<SimulatedRobot> robot_from_files(const std::string& robot_file,
                                                                const std::string& scenario_file,
-                                                               std::uint64_t seed, std::string& error);
+                                                               std::uint64_t seed, std::string& error,
+                                                               std::string* drawn = nullptr);
 
 }  // namespace pastern::stub

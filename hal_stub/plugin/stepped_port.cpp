@@ -8,7 +8,8 @@ namespace {
 
 class SteppedPort final : public Port {
  public:
-  explicit SteppedPort(std::unique_ptr<SimulatedRobot> robot) : robot_(std::move(robot)) {}
+  SteppedPort(std::unique_ptr<SimulatedRobot> robot, std::string about)
+      : robot_(std::move(robot)), about_(std::move(about)) {}
 
   int read(pastern_hal_frame& frame) override {
     if (!robot_->bus_sound()) return broken();
@@ -36,6 +37,8 @@ class SteppedPort final : public Port {
     return true;
   }
 
+  const char* about() const override { return about_.c_str(); }
+
   const char* error_text() const override {
     return broken_ ? "bus broken (a fault of the scenario)" : error_.c_str();
   }
@@ -47,6 +50,7 @@ class SteppedPort final : public Port {
   }
 
   std::unique_ptr<SimulatedRobot> robot_;
+  std::string about_;
   safety::SensorFrame frame_;
   bool broken_{false};
   std::string error_;
@@ -80,9 +84,10 @@ bool agrees(const pastern_hal_config& config, const Model& model, std::string& e
 
 std::unique_ptr<Port> stepped_port(const pastern_hal_config& config, const std::string& scenario,
                                    std::string& error) {
-  auto robot = robot_from_files(config.robot_file, scenario, config.seed, error);
+  std::string drawn;
+  auto robot = robot_from_files(config.robot_file, scenario, config.seed, error, &drawn);
   if (!robot || !agrees(config, robot->model(), error)) return nullptr;
-  return std::make_unique<SteppedPort>(std::move(robot));
+  return std::make_unique<SteppedPort>(std::move(robot), std::move(drawn));
 }
 
 }  // namespace pastern::stub

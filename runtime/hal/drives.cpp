@@ -22,6 +22,7 @@ struct Drives::Impl {
   const pastern_hal* table{nullptr};
   void* handle{nullptr};
   std::string name;
+  std::string about;
   std::int32_t joint_count{0};
   pastern_hal_frame frame{};
   pastern_hal_command command{};
@@ -50,6 +51,8 @@ bool is_control(char letter) noexcept {
 }
 
 /// A plug-in's words end up in logs and journals: one line of printable characters, whatever it wrote.
+constexpr std::size_t kLongestAbout = 2000;
+
 std::string one_line(const char* text, std::size_t capacity) {
   std::string line;
   for (std::size_t i = 0; i < capacity && text[i] != '\0'; ++i) {
@@ -211,6 +214,8 @@ std::unique_ptr<Drives> Drives::open(const DrivesConfig& config, std::string& er
     return nullptr;
   }
   impl.name = one_line(table->name, 80);
+  const char* about = table->about != nullptr ? table->about(impl.handle) : nullptr;
+  if (about != nullptr) impl.about = one_line(about, kLongestAbout);
   impl.joint_count = static_cast<std::int32_t>(names.size());
   return drives;
 }
@@ -268,6 +273,8 @@ const char* Drives::error_text() noexcept {
 bool Drives::simulated() const noexcept { return impl_->table->simulated != 0; }
 
 const std::string& Drives::name() const noexcept { return impl_->name; }
+
+const std::string& Drives::about() const noexcept { return impl_->about; }
 
 bool Drives::save(std::string& state) {
   if (impl_->table->save == nullptr) {

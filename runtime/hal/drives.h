@@ -38,6 +38,8 @@ class Drives {
   /// One line about the last failure.
   [[nodiscard]] const char* error_text() noexcept;
   [[nodiscard]] bool simulated() const noexcept;
+  /// What the plug-in says for the record; one line, at most 2 000 bytes, often empty.
+  [[nodiscard]] const std::string& about() const noexcept;
   [[nodiscard]] const std::string& name() const noexcept;
 
   /// Simulated robots only; false when the plug-in has none or it fails. Between orders.

@@ -39,7 +39,7 @@ extern "C" {
 #endif
 
 /* The names of a C interface are those of C. NOLINTBEGIN(readability-identifier-naming) */
-#define PASTERN_HAL_VERSION 1u
+#define PASTERN_HAL_VERSION 2u
 #define PASTERN_HAL_MAX_JOINTS 32
 
 enum { PASTERN_HAL_OK = 0, PASTERN_HAL_NO_FRAME = 1, PASTERN_HAL_FAILED = 2 };
@@ -108,6 +108,11 @@ typedef struct pastern_hal {
   int (*save)(void* handle, void* buffer, size_t capacity, size_t* length);
   int (*restore)(void* handle, const void* buffer, size_t length);
   int (*carry_back)(void* handle, uint64_t draw);
+
+  /* Optional (null when absent): one line for the record about what is behind the handle, that its name and
+   * the options do not say: serial numbers of drives, firmware; of the simulated robot, its site as it was
+   * drawn. Asked once, after open; lives as long as the handle. */
+  const char* (*about)(void* handle);
 } pastern_hal;
 
 /* The one symbol that a plug-in exports. Returns null when it cannot serve `version`. */

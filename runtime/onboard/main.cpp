@@ -94,12 +94,14 @@ int serve(const Options& options, const files::RobotFile& robot, journal::Journa
       session::drives_config(robot, options.hal, options.hal_options, options.seed, options.pace), error);
   if (!drives) return complain(kFile, error);
   const std::string drives_name = drives->name();
+  std::string drives_settings = options.hal_options;
+  if (!drives->about().empty()) drives_settings += ";" + drives->about();
   session::Cycle cycle(robot.robot(), policy->policy(), std::move(drives), options.pace);
   const std::unique_ptr<session::Mover> mover = make_mover(options, cycle, journal);
   mover->signals().baton_lost.store(true, std::memory_order_release);  // until somebody holds it
   Exchange exchange(mover->signals());
-  Program program({robot, *policy, options.journal, *mover, journal, exchange, leaving, drives_name,
-                   options.hal_options});
+  Program program(
+      {robot, *policy, options.journal, *mover, journal, exchange, leaving, drives_name, drives_settings});
   if (!program.trouble().empty()) return complain(kFile, program.trouble());
   const link::ServerConfig config{options.host,       options.command_port, options.telemetry_port,
                                   options.fetch_port, options.keys,         options.baton_lapse_ms};

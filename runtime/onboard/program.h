@@ -34,7 +34,7 @@ class Program final : public session::Hooks {
     Exchange& exchange;
     const Leaving& leaving;
     std::string drives{};           ///< what the plug-in calls itself
-    std::string drives_settings{};  ///< as they were given
+    std::string drives_settings{};  ///< as they were given, and what the plug-in said about itself
   };
   explicit Program(Parts parts);
 

@@ -3,6 +3,7 @@
 #include <gtest/gtest.h>
 
 #include <cmath>
+#include <fstream>
 #include <string>
 #include <vector>
 
@@ -210,6 +211,26 @@ TEST_F(Plugin, RefusesEveryWrongOpeningWithOneLine) {
   c = config("socket=/no/such/socket");
   c.stepped = 0;
   refused(c, "pastern-stub-robot");
+}
+
+TEST_F(Plugin, TellsForTheRecordWhichSiteWasDrawnAndNothingElse) {
+  const std::string ranges = testing::TempDir() + "/pastern_ranges.scenario.txtpb";
+  std::ofstream(ranges) << "name: \"ranges\" drawn { field: \"friction\" low: 0.3 high: 0.9 }\n";
+  void* drawn = open(config("scenario=" + ranges));
+  ASSERT_NE(drawn, nullptr) << error_;
+  const std::string told = table_->about(drawn);
+  EXPECT_EQ(told.find("site drawn by seed 7: name: \"ranges\" friction: 0."), 0U) << told;
+  EXPECT_EQ(told.find("drawn {"), std::string::npos);
+  EXPECT_EQ(told.find('\n'), std::string::npos);
+  void* again = open(config("scenario=" + ranges));
+  ASSERT_NE(again, nullptr) << error_;
+  EXPECT_EQ(table_->about(again), told);
+  auto other = config("scenario=" + ranges);
+  other.seed = 8;
+  EXPECT_NE(table_->about(open(other)), told);
+  void* nominal = open(config(""));
+  ASSERT_NE(nominal, nullptr) << error_;
+  EXPECT_STREQ(table_->about(nominal), "");
 }
 
 }  // namespace

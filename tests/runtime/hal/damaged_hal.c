@@ -67,6 +67,7 @@ static const pastern_hal kTable = {DAMAGE == WRONG_VERSION ? PASTERN_HAL_VERSION
                                    DAMAGE == NO_WORDS ? NULL : words,
                                    DAMAGE == BAD_STATE ? saved : NULL,
                                    NULL,
+                                   NULL,
                                    NULL};
 
 #if DAMAGE == NO_ENTRY

@@ -82,6 +82,7 @@ TEST(Drives, PlaysBackARecordingFieldByField) {
   const auto drives = Drives::open(playback_config(folder, kRecording), error);
   ASSERT_NE(drives, nullptr) << error;
   EXPECT_EQ(drives->name(), "playback");
+  EXPECT_EQ(drives->about(), "frames of a recorded walk");  // two lines of the plug-in's own made one
   EXPECT_FALSE(drives->simulated());
 
   safety::SensorFrame frame;
@@ -160,8 +161,8 @@ TEST(Drives, OpenRefusedByThePluginGivesItsReason) {
 TEST(Drives, EachDamagedPluginIsRefusedWithItsOwnLine) {
   const std::array<std::string, 12> expected{
       "has no symbol pastern_hal_entry, expected a plug-in of this interface",
-      "does not serve interface version 1",
-      "found interface version 2, expected 1",
+      "does not serve interface version 2",
+      "found interface version 3, expected 2",
       "found a function table of 8 bytes, expected",
       "has no name, expected one in the function table",
       "has no open function, expected one",

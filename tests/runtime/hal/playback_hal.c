@@ -116,9 +116,14 @@ static int playback_write(void* handle, const pastern_hal_command* command) {
 
 static const char* playback_words(void* handle) { return ((playback*)handle)->words; }
 
+static const char* playback_about(void* handle) {
+  (void)handle;
+  return "frames of a\nrecorded walk";
+}
+
 static const pastern_hal kTable = {
-    PASTERN_HAL_VERSION, sizeof(pastern_hal), "playback",     0,    playback_open, playback_close,
-    playback_read,       playback_write,      playback_words, NULL, NULL,          NULL};
+    PASTERN_HAL_VERSION, sizeof(pastern_hal), "playback", 0,    playback_open, playback_close, playback_read,
+    playback_write,      playback_words,      NULL,       NULL, NULL,          playback_about};
 
 const pastern_hal* pastern_hal_entry(uint32_t version) {
   return version == PASTERN_HAL_VERSION ? &kTable : NULL;

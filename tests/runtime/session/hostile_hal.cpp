@@ -142,8 +142,8 @@ int carry_back(void* handle, uint64_t draw) {
 }
 
 const pastern_hal kTable{
-    PASTERN_HAL_VERSION, sizeof(pastern_hal), "hostile",  1,       open_hostile, close_hostile,
-    read_hostile,        write_hostile,       error_text, nullptr, nullptr,      carry_back};
+    PASTERN_HAL_VERSION, sizeof(pastern_hal), "hostile", 1,       open_hostile, close_hostile, read_hostile,
+    write_hostile,       error_text,          nullptr,   nullptr, carry_back,   nullptr};
 
 }  // namespace
 

@@ -201,9 +201,10 @@ int carry_back_puppet(void* handle, uint64_t draw) {
   return PASTERN_HAL_OK;
 }
 
-const pastern_hal kTable{PASTERN_HAL_VERSION, sizeof(pastern_hal), "puppet",       PUPPET_SIMULATED,
-                         open_puppet,         close_puppet,        read_puppet,    write_puppet,
-                         error_text,          save_puppet,         restore_puppet, carry_back_puppet};
+const pastern_hal kTable{
+    PASTERN_HAL_VERSION, sizeof(pastern_hal), "puppet",     PUPPET_SIMULATED, open_puppet,
+    close_puppet,        read_puppet,         write_puppet, error_text,       save_puppet,
+    restore_puppet,      carry_back_puppet,   nullptr};
 
 }  // namespace
 
