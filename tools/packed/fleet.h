@@ -10,16 +10,13 @@
 
 #include "tools/packed/ranks.h"
 #include "tools/packed/walk.h"
-#include "tools/train/course.h"
+#include "tools/train/trials.h"
 #include "tools/train/walk.h"
 
 namespace pastern::packed {
 
-/// A walk to do. The parameters must stay until run() is back.
-struct Trial {
-  const Parameters* parameters{nullptr};
-  tools::Lot lot;
-};
+/// The parameters must stay until run() is back.
+using tools::Trial;
 
 struct FleetOptions {
   unsigned threads{0};  ///< 0: all of the machine

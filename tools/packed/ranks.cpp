@@ -137,6 +137,11 @@ bool Ranks::agree(std::string_view text) const {
   return std::all_of(texts.begin(), texts.end(), [&](const auto& one) { return one == texts.front(); });
 }
 
+bool Ranks::any(bool here) const {
+  const auto each = all(&here, sizeof(here));
+  return std::any_of(each.begin(), each.end(), [](const auto& one) { return one[0] != 0; });
+}
+
 InstructionSet Ranks::common_set(InstructionSet own) const {
   InstructionSet least = own;
   for (const auto& one : all(&own, sizeof(own))) least = std::min(least, static_cast<InstructionSet>(one[0]));

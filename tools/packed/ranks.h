@@ -34,6 +34,8 @@ class Ranks {
   /// Whether all ranks hold the same text, such as digests of robot, policy and seed: different files on
   /// different machines would otherwise give results that belong to nothing.
   [[nodiscard]] bool agree(std::string_view text) const;
+  /// Whether it is so on any rank: what one decides, all do.
+  [[nodiscard]] bool any(bool here) const;
   /// The narrowest of what the ranks have: the same bits everywhere need the same instructions everywhere.
   [[nodiscard]] InstructionSet common_set(InstructionSet own) const;
 

@@ -11,20 +11,20 @@ namespace {
 class PackedTrials final : public Trials {
  public:
   PackedTrials(std::shared_ptr<const WalkSetting> setting, SiteChoice choose, unsigned threads,
-               packed::InstructionSet set)
+               packed::InstructionSet set, const packed::Ranks* ranks)
       : setting_(std::move(setting)),
         choose_(std::move(choose)),
         threads_(threads),
-        fleet_(setting_->for_lanes(), choose_, {threads, set, packed::Numbers::single}) {}
+        fleet_(setting_->for_lanes(), choose_, {threads, set, packed::Numbers::single}, ranks) {}
 
   std::vector<Score> run(const std::vector<Trial>& trials) override {
-    std::vector<packed::Trial> sound;
+    std::vector<Trial> sound;
     std::vector<Trial> faulty;
     std::vector<bool> is_faulty;
     for (const Trial& trial : trials) {
       is_faulty.push_back(has_faults(trial.lot));
       if (is_faulty.back()) faulty.push_back(trial);
-      if (!is_faulty.back()) sound.push_back({trial.parameters, trial.lot});
+      if (!is_faulty.back()) sound.push_back(trial);
     }
     std::vector<Score> scores(sound.size());
     fleet_.run(sound, scores);
@@ -55,8 +55,9 @@ class PackedTrials final : public Trials {
 }  // namespace
 
 std::unique_ptr<Trials> packed_trials(std::shared_ptr<const WalkSetting> setting, SiteChoice choose,
-                                      unsigned threads, packed::InstructionSet set) {
-  return std::make_unique<PackedTrials>(std::move(setting), std::move(choose), threads, set);
+                                      unsigned threads, packed::InstructionSet set,
+                                      const packed::Ranks* ranks) {
+  return std::make_unique<PackedTrials>(std::move(setting), std::move(choose), threads, set, ranks);
 }
 
 std::unique_ptr<Trials> WalkCourse::by_lanes(unsigned threads) const {

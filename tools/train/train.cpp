@@ -95,18 +95,13 @@ class Run {
         state_(options.training.empty() ? options.out + ".training" : options.training) {}
 
   bool prepare() {
-    robot_ = files::read_robot(options_.robot, defects_);
-    if (!robot_) return false;
-    policy_ = open_loop_trot(robot_->robot());
-    if (!options_.name.empty()) policy_.set_name(options_.name);
-    std::string error;
-    setting_ = WalkSetting::make(robot_->robot(), policy_, options_.walk_s, error);
-    if (!setting_) {
-      defects_.push_back({options_.robot, "", error, "a robot that can be simulated"});
-      return false;
-    }
+    if (!all_are(read_files())) return false;
     trainer_.emplace(options_.settings, parameters_of(policy_), trials(drawn_sites(wide_ranges())));
-    return go_on(state_, *robot_, policy_, *trainer_, defects_);
+    if (!all_are(go_on(state_, *robot_, policy_, *trainer_, defects_))) return false;
+    if (options_.ranks == nullptr || options_.ranks->agree(beginning())) return true;
+    refuse_ranks("a robot file, settings or a saved training that differ between ranks",
+                 "the same on all, as in a shared folder");
+    return false;
   }
 
   bool climb(const std::function<bool(const TrainProgress&)>& progress) {
@@ -116,10 +111,12 @@ class Run {
       trainer_->step();
       const bool looked = trainer_->looks().size() > looks;
       looks = trainer_->looks().size();
-      more = progress({trainer_->iteration(), options_.settings.iterations, trainer_->walks(),
-                       looked ? &trainer_->looks().back() : nullptr, resumed});
+      more = !on_any(!progress({trainer_->iteration(), options_.settings.iterations, trainer_->walks(),
+                                looked ? &trainer_->looks().back() : nullptr, resumed}));
       resumed = false;
-      if ((looked || !more) && !keep(state_, *robot_, policy_, *trainer_, defects_)) return false;
+      if ((looked || !more) && on_any(leads() && !keep(state_, *robot_, policy_, *trainer_, defects_))) {
+        return false;
+      }
     }
     return trainer_->done();
   }
@@ -144,8 +141,10 @@ class Run {
     const std::string bytes = files::pack_policy(policy_);
     // Judged as any reader will judge it, before anything is written.
     if (!files::parse_policy(bytes, options_.out, *robot_, defects_)) return;
-    if (!files::write_durably(options_.out, bytes, 0644, defects_)) return;
-    ::unlink(state_.c_str());
+    if (leads()) {
+      if (!files::write_durably(options_.out, bytes, 0644, defects_)) return;
+      ::unlink(state_.c_str());
+    }
     result.sha256_hex = files::hex(files::sha256(bytes));
     result.finished = true;
   }
@@ -153,8 +152,40 @@ class Run {
   [[nodiscard]] std::uint64_t walks() const { return trainer_->walks(); }
 
  private:
+  bool read_files() {
+    robot_ = files::read_robot(options_.robot, defects_);
+    if (!robot_) return false;
+    policy_ = open_loop_trot(robot_->robot());
+    if (!options_.name.empty()) policy_.set_name(options_.name);
+    std::string error;
+    setting_ = WalkSetting::make(robot_->robot(), policy_, options_.walk_s, error);
+    if (setting_) return true;
+    defects_.push_back({options_.robot, "", error, "a robot that can be simulated"});
+    return false;
+  }
+
   [[nodiscard]] std::unique_ptr<Trials> trials(SiteChoice choose) const {
-    return packed_trials(setting_, std::move(choose), threads_, options_.instructions);
+    return packed_trials(setting_, std::move(choose), threads_, options_.instructions, options_.ranks);
+  }
+  [[nodiscard]] bool leads() const { return options_.ranks == nullptr || options_.ranks->leads(); }
+  [[nodiscard]] bool on_any(bool here) const {
+    return options_.ranks == nullptr ? here : options_.ranks->any(here);
+  }
+  // What ends one rank ends all: they wait for one another's walks.
+  bool all_are(bool ready) {
+    if (!on_any(!ready)) return true;
+    if (ready) refuse_ranks("files that another rank could not take", "the same files on all ranks");
+    return false;
+  }
+  void refuse_ranks(const char* found, const char* expected) {
+    defects_.push_back({options_.robot, "", found, expected});
+  }
+  // All that the training will depend on from here.
+  [[nodiscard]] std::string beginning() const {
+    v1::Training training;
+    trainer_->save(training);
+    return files::raw(robot_->sha256()) + options_.settings.text() + policy_.SerializeAsString() +
+           training.SerializeAsString();
   }
 
   const TrainOptions& options_;

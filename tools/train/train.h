@@ -8,7 +8,7 @@
 
 #include "proto/files/defect.h"
 #include "proto/files/policy_file.h"
-#include "tools/packed/instruction_set.h"
+#include "tools/packed/ranks.h"
 #include "tools/train/trainer.h"
 
 namespace pastern::tools {
@@ -28,6 +28,8 @@ struct TrainOptions {
   double walk_s{5};
   std::size_t last_look_walks{1000};  ///< of the judgement at the end, over the wide range
   std::string software;               ///< written into the provenance
+  /// All ranks train alike and share the walks; the one that leads writes. Null: alone.
+  const packed::Ranks* ranks{nullptr};
 };
 
 /// What is told while it runs.
@@ -49,7 +51,7 @@ struct TrainResult {
 
 /// `progress` is called after every iteration on the calling thread; false from it stops the training, which
 /// is then saved. Wrong files, a training file of other settings, a full disk: `defects`, and nothing
-/// half-written.
+/// half-written. On several ranks what ends one ends all.
 [[nodiscard]] TrainResult run_train(const TrainOptions& options,
                                     const std::function<bool(const TrainProgress&)>& progress,
                                     files::Defects& defects);

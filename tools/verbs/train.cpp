@@ -29,11 +29,14 @@ class Train final : public Verb {
     return {
         "pastern train --robot hal_stub/robots/dunlin12.robot.txtpb --out mine.policy",
         "pastern train --robot my.robot.txtpb --out my.policy --seed 7 --threads 2",
+        "mpirun -n 4 --hostfile machines pastern train --robot my.robot.txtpb --out my.policy",
         "pastern train --robot my.robot.txtpb --out small.policy --iterations 20 --directions 32",
         "",
         "Interrupted (Ctrl-C, a power cut) it goes on from OUT.training when called again in the same words.",
         "The same robot file and settings give the same policy file, byte for byte, on any number of "
         "threads, with AVX2 or AVX-512; --instructions plain gives another.",
+        "Under mpirun (Open MPI) the ranks share the walks, each on --threads threads: the same file again.",
+        "Robot file and --training must be the same for all ranks; the first one writes.",
         "Exit status 5: interrupted. 3: a file is wrong or cannot be written.",
         "A policy that walks in simulation has walked on no robot: first start on a gantry, hand on the "
         "stop."};
@@ -70,6 +73,7 @@ class Train final : public Verb {
   std::string instructions_;
   bool quiet_{false};
   bool json_{false};
+  bool speaks_{true};  // of the ranks of an mpirun one does
   std::chrono::steady_clock::time_point began_;
   std::uint32_t first_iteration_{0};
 };
@@ -126,6 +130,13 @@ Exit Train::run() {
     return Exit::usage;
   }
   options_.instructions = *set;
+  const auto ranks = packed::Ranks::join(error);
+  if (!ranks) {
+    complain("pastern train: " + error);
+    return Exit::internal;
+  }
+  options_.ranks = ranks->count() > 1 ? ranks.get() : nullptr;
+  speaks_ = ranks->leads();
   options_.software = "pastern " PASTERN_VERSION;
   began_ = std::chrono::steady_clock::now();
   interrupted = 0;
@@ -134,17 +145,18 @@ Exit Train::run() {
   const TrainResult result = run_train(
       options_,
       [this](const TrainProgress& progress) {
-        if (progress.resumed && !quiet_ && !json_) {
+        if (progress.resumed && speaks_ && !quiet_ && !json_) {
           say(fmt::format("going on after iteration {}", progress.iteration - 1));
         }
-        tell(progress);
+        if (speaks_) tell(progress);
         return interrupted == 0;
       },
       defects);
   std::signal(SIGINT, before);
   for (const files::Defect& defect : defects) complain("pastern train: " + defect.line());
   if (!defects.empty()) return Exit::file_wrong;
-  if (result.finished) return finish(result);
+  if (result.finished) return speaks_ ? finish(result) : Exit::done;
+  if (!speaks_) return Exit::refused;
   complain(fmt::format("pastern train: interrupted after {} walks; the same command goes on from there",
                        result.walks));
   return Exit::refused;

@@ -70,6 +70,12 @@ TEST(Ranks, DifferentTextsAreNoticedByEveryRank) {
   EXPECT_EQ(the_ranks->agree(longer), the_ranks->count() == 1);
 }
 
+TEST(Ranks, WhatIsSoOnOneRankIsToldToAll) {
+  EXPECT_FALSE(the_ranks->any(false));
+  EXPECT_TRUE(the_ranks->any(true));
+  EXPECT_TRUE(the_ranks->any(the_ranks->rank() == the_ranks->count() - 1));
+}
+
 TEST(Ranks, TheNarrowestSetIsCommon) {
   const auto own = the_ranks->rank() == 0 ? InstructionSet::avx512 : InstructionSet::avx2;
   const auto common = the_ranks->count() == 1 ? InstructionSet::avx512 : InstructionSet::avx2;
