@@ -164,8 +164,8 @@ static const char* looped_words(void* handle) {
 }
 
 static const pastern_hal kTable = {
-    PASTERN_HAL_VERSION, sizeof(pastern_hal), "looped",     0,    looped_open, looped_close,
-    looped_read,         looped_write,        looped_words, NULL, NULL,        NULL};
+    PASTERN_HAL_VERSION, sizeof(pastern_hal), "looped", 0,    looped_open, looped_close, looped_read,
+    looped_write,        looped_words,        NULL,     NULL, NULL,        NULL};
 
 const pastern_hal* pastern_hal_entry(uint32_t version) {
   return version == PASTERN_HAL_VERSION ? &kTable : NULL;
