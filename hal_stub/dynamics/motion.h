@@ -12,14 +12,26 @@
 namespace pastern::stub {
 
 template <class S>
-using PerChain = std::array<S, kMaxChain>;
+using PerChain = std::array<S, kMaxLimb>;
 
 /// Contact normal force of the last step, N: friction lags by one step so that a step stays linear.
 template <class S>
 struct Grip {
   std::array<std::array<S, kPointsPerLeg>, kMaxTreeLegs> leg{};
   std::array<S, kTrunkCorners> corner{};
+  std::array<std::array<S, kMaxPoints - kPointsPerLeg>, kMaxTreeLegs>
+      more{};  ///< of limbs of the general kind
 };
+
+/// Point `p` of limb `l`.
+template <class S>
+inline S& grip_of(Grip<S>& grip, std::size_t l, std::size_t p) noexcept {
+  return p < kPointsPerLeg ? grip.leg[l][p] : grip.more[l][p - kPointsPerLeg];
+}
+template <class S>
+inline const S& grip_of(const Grip<S>& grip, std::size_t l, std::size_t p) noexcept {
+  return p < kPointsPerLeg ? grip.leg[l][p] : grip.more[l][p - kPointsPerLeg];
+}
 
 template <class S>
 struct BodyState {
@@ -35,16 +47,19 @@ struct BodyState {
 /// Of one leg in this step, trunk axes.
 template <class S>
 struct LegWork {
-  std::array<Vec3<S>, kMaxChain> axis;
-  std::array<Vec3<S>, kMaxChain> place;    ///< of the joints
-  Vec3<S> foot;                            ///< centre of the foot's ball
-  S inertia[kMaxChain][kMaxChain];         ///< lower triangle
-  std::array<Vec3<S>, kMaxChain> turning;  ///< coupling to the trunk, angular
-  std::array<Vec3<S>, kMaxChain> moving;   ///< linear
-  PerChain<S> force;                       ///< right-hand side: what accelerates the joint, N m
-  S forward[kMaxChain][6];                 ///< of the elimination
-  PerChain<S> inverse;                     ///< of its diagonal
+  std::array<Vec3<S>, kMaxLimb> axis;
+  std::array<Vec3<S>, kMaxLimb> place;    ///< of the joints
+  Vec3<S> foot;                           ///< centre of the foot's ball
+  S inertia[kMaxLimb][kMaxLimb];          ///< lower triangle
+  std::array<Vec3<S>, kMaxLimb> turning;  ///< coupling to the trunk, angular
+  std::array<Vec3<S>, kMaxLimb> moving;   ///< linear
+  PerChain<S> force;                      ///< right-hand side: what accelerates the joint, N m
+  S forward[kMaxLimb][6];                 ///< of the elimination
+  PerChain<S> inverse;                    ///< of its diagonal
   PerChain<S> acceleration;
+  // Of limbs of the general kind; their axis is zero where a joint slides:
+  std::array<Vec3<S>, kMaxLimb> slide;    ///< velocity of the trunk's origin as part of the link
+  std::array<Vec3<S>, kMaxPoints> point;  ///< centres
 };
 
 /// Scratch of one step, allocated once by whoever steps.
@@ -67,7 +82,7 @@ struct JointLoad {
   S inertia;
 };
 template <class S>
-using Loads = std::array<std::array<JointLoad<S>, kMaxChain>, kMaxTreeLegs>;
+using Loads = std::array<std::array<JointLoad<S>, kMaxLimb>, kMaxTreeLegs>;
 
 /// Mass, first and second moment about the trunk's origin, and inertial force: of one link or of many.
 template <class S>
@@ -236,6 +251,11 @@ inline void pass_leg(const LegFigures<Constant<S>>& leg, const PerChain<S>& angl
   come_back<K>(work, heap, total);
 }
 
+/// A limb of the general kind (limb.h).
+template <class S>
+inline void pass_limb(const LegFigures<Constant<S>>& limb, const PerChain<S>& angle, const PerChain<S>& speed,
+                      const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total) noexcept;
+
 /// Runs `f.template operator()<K>()` for the number of joints of a leg: loops of known length.
 template <class F>
 inline void for_chain(int joint_count, F&& f) noexcept {
@@ -252,6 +272,16 @@ inline void for_chain(int joint_count, F&& f) noexcept {
     default:
       f.template operator()<4>();
       break;
+  }
+}
+
+/// The same with K = 0 for limbs of the general kind.
+template <class C, class F>
+inline void for_limb(const LegFigures<C>& limb, F&& f) noexcept {
+  if (limb.general) {
+    f.template operator()<0>();
+  } else {
+    for_chain(limb.joint_count, f);
   }
 }
 
@@ -319,8 +349,12 @@ inline void begin_step(const Tree<Constant<S>>& tree, const TrunkFigures<S>& tru
                           accelerated(frame, trunk.centre));
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
-    for_chain(tree.leg[n].joint_count, [&]<int K>() {
-      pass_leg<K>(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total);
+    for_limb(tree.leg[n], [&]<int K>() {
+      if constexpr (K == 0) {
+        pass_limb(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total);
+      } else {
+        pass_leg<K>(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total);
+      }
     });
   }
   spread_total(total, work);

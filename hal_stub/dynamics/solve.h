@@ -3,14 +3,16 @@
 // positive definite.
 #pragma once
 
-#include "hal_stub/dynamics/motion.h"
+#include "hal_stub/dynamics/limb.h"
 
 namespace pastern::stub {
 
 /// H = L D L' in place (unit L below the diagonal); `forward` becomes L^-1 [coupling], `force` L^-1 force.
+/// For K = 0 the block has `count` rows.
 template <int K, class S>
-inline void eliminate_leg(LegWork<S>& leg, Work<S>& work) noexcept {
-  for (int i = 0; i < K; ++i) {
+inline void eliminate_leg(LegWork<S>& leg, Work<S>& work, int count = K) noexcept {
+  const int rows = K > 0 ? K : count;
+  for (int i = 0; i < rows; ++i) {
     const auto n = static_cast<std::size_t>(i);
     leg.forward[i][0] = leg.turning[n].x;
     leg.forward[i][1] = leg.turning[n].y;
@@ -70,13 +72,15 @@ inline void solve_trunk(Work<S>& work) noexcept {
 }
 
 template <int K, class S>
-inline void follow_leg(LegWork<S>& leg, const S* trunk) noexcept {
-  for (int i = K - 1; i >= 0; --i) {
+inline void follow_leg(LegWork<S>& leg, const S* trunk, int count = K) noexcept {
+  const int rows = K > 0 ? K : count;
+  for (int i = rows - 1; i >= 0; --i) {
     const auto n = static_cast<std::size_t>(i);
     S x = leg.force[n];
     for (int c = 0; c < 6; ++c) x = x - leg.forward[i][c] * trunk[c];
     x = x * leg.inverse[n];
-    for (int k = i + 1; k < K; ++k) x = x - leg.inertia[k][i] * leg.acceleration[static_cast<std::size_t>(k)];
+    for (int k = i + 1; k < rows; ++k)
+      x = x - leg.inertia[k][i] * leg.acceleration[static_cast<std::size_t>(k)];
     leg.acceleration[n] = x;
   }
 }
@@ -86,12 +90,14 @@ template <class S>
 inline void solve(const Tree<Constant<S>>& tree, Work<S>& work) noexcept {
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
-    for_chain(tree.leg[n].joint_count, [&]<int K>() { eliminate_leg<K>(work.leg[n], work); });
+    const auto& leg = tree.leg[n];
+    for_limb(leg, [&]<int K>() { eliminate_leg<K>(work.leg[n], work, leg.joint_count); });
   }
   solve_trunk(work);
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
-    for_chain(tree.leg[n].joint_count, [&]<int K>() { follow_leg<K>(work.leg[n], work.acceleration); });
+    const auto& leg = tree.leg[n];
+    for_limb(leg, [&]<int K>() { follow_leg<K>(work.leg[n], work.acceleration, leg.joint_count); });
   }
 }
 

@@ -16,24 +16,34 @@ struct Surroundings {
   Vec3<S> push{S(0), S(0), S(0)};  ///< force on the trunk's centre of mass, world axes, N
 };
 
+/// Torques and end stops of a chain of hinges.
+template <class S>
+inline void load_leg(const Tree<Constant<S>>& tree, std::size_t n, const BodyState<S>& state,
+                     const Loads<S>& loads, Constant<S> dt, LegWork<S>& leg) noexcept {
+  const S zero(0);
+  const Constant<S> along = tree.stop_stiffness * dt + tree.stop_damping;
+  const int count = tree.leg[n].joint_count;
+  for (int i = 0; i < count; ++i) {
+    const auto k = static_cast<std::size_t>(i);
+    const auto& joint = tree.leg[n].joint[k];
+    const S& angle = state.angle[n][k];
+    const S over = max(angle - joint.angle_max, zero) + min(angle - joint.angle_min, zero);
+    const S along_here = select(abs(over) > zero, S(along), zero);
+    leg.force[k] =
+        leg.force[k] + loads[n][k].torque - over * tree.stop_stiffness - along_here * state.speed[n][k];
+    leg.inertia[i][i] = leg.inertia[i][i] + loads[n][k].inertia + along_here * dt;
+  }
+}
+
 template <class S>
 inline void add_loads(const Tree<Constant<S>>& tree, const BodyState<S>& state, const Loads<S>& loads,
                       Constant<S> dt, Work<S>& work) noexcept {
-  const S zero(0);
-  const Constant<S> along = tree.stop_stiffness * dt + tree.stop_damping;
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
-    const int count = tree.leg[n].joint_count;
-    for (int i = 0; i < count; ++i) {
-      const auto k = static_cast<std::size_t>(i);
-      const auto& joint = tree.leg[n].joint[k];
-      const S& angle = state.angle[n][k];
-      const S over = max(angle - joint.angle_max, zero) + min(angle - joint.angle_min, zero);
-      const S along_here = select(abs(over) > zero, S(along), zero);
-      LegWork<S>& leg = work.leg[n];
-      leg.force[k] =
-          leg.force[k] + loads[n][k].torque - over * tree.stop_stiffness - along_here * state.speed[n][k];
-      leg.inertia[i][i] = leg.inertia[i][i] + loads[n][k].inertia + along_here * dt;
+    if (tree.leg[n].general) {
+      load_limb(tree, n, state, loads, dt, work.leg[n]);
+    } else {
+      load_leg(tree, n, state, loads, dt, work.leg[n]);
     }
   }
 }
@@ -96,22 +106,34 @@ inline void grip_point(const On& on, const Spot<S>& spot, const Work<S>& work, B
   grip = grip_after(on, lie.depth, dot(after, lie.normal));
 }
 
-/// Foot and knee of every leg: press (before solving) or grip (after).
+/// Foot and knee of leg `n` of K joints: press (before solving) or grip (after).
+template <bool kPress, int K, class On, class S>
+inline void touch_leg(const LegFigures<Constant<S>>& leg, std::size_t n, const On& on, BodyState<S>& state,
+                      Work<S>& work) noexcept {
+  const Spot<S> foot{work.leg[n].foot, leg.foot_radius, n, 0};
+  const Spot<S> knee{work.leg[n].place[K - 1], leg.knee_radius, n, 1};
+  if constexpr (kPress) {
+    press_point<K>(on, foot, state, work);
+    if (leg.knee) press_point<K>(on, knee, state, work);
+  } else {
+    grip_point<K>(on, foot, work, state);
+    if (leg.knee) grip_point<K>(on, knee, work, state);
+  }
+}
+
 template <bool kPress, class On, class S>
 inline void touch_legs(const Tree<Constant<S>>& tree, const On& on, BodyState<S>& state,
                        Work<S>& work) noexcept {
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
     const auto& leg = tree.leg[n];
-    for_chain(leg.joint_count, [&]<int K>() {
-      const Spot<S> foot{work.leg[n].foot, leg.foot_radius, n, 0};
-      const Spot<S> knee{work.leg[n].place[K - 1], leg.knee_radius, n, 1};
-      if constexpr (kPress) {
-        press_point<K>(on, foot, state, work);
-        if (leg.knee) press_point<K>(on, knee, state, work);
+    for_limb(leg, [&]<int K>() {
+      if constexpr (K > 0) {
+        touch_leg<kPress, K>(leg, n, on, state, work);
+      } else if constexpr (kPress) {
+        press_limb(leg, n, on, state, work);
       } else {
-        grip_point<K>(on, foot, work, state);
-        if (leg.knee) grip_point<K>(on, knee, work, state);
+        grip_limb(leg, n, on, state, work);
       }
     });
   }

@@ -27,8 +27,8 @@ struct FourWork {
 inline bool is_four_alike(const Tree<double>& tree) noexcept {
   if (tree.leg_count != 4) return false;
   const auto& first = tree.leg[0];
-  for (const auto& leg : {tree.leg[1], tree.leg[2], tree.leg[3]}) {
-    if (leg.joint_count != first.joint_count || leg.knee != first.knee) return false;
+  for (const auto& leg : {tree.leg[0], tree.leg[1], tree.leg[2], tree.leg[3]}) {
+    if (leg.general || leg.joint_count != first.joint_count || leg.knee != first.knee) return false;
     for (std::size_t i = 0; i < static_cast<std::size_t>(first.joint_count); ++i) {
       if (leg.joint[i].kind != first.joint[i].kind) return false;
       if (leg.joint[i].link.skewed != first.joint[i].link.skewed) return false;
@@ -232,22 +232,24 @@ inline void integrate_four(double dt, FourWork& side) noexcept {
 }
 
 /// Contacts of legs and trunk: press (before solving) or grip (after).
-template <bool kPress>
+template <bool kPress, int K>
 inline void touch_four(FourLegged& robot, const PlainFooting<double>& on, RobotState<double>& state,
                        Work<double>& work) noexcept {
   const Below<Quad> below{spread<Quad>(on.below.normal), on.below.height};
   const PlainFooting<Quad> legs_on{robot.four.site.around.ground, below, on.dt};
-  touch_legs<kPress>(robot.four.figures.tree, legs_on, robot.side.state.body, robot.side.work.body);
+  touch_leg<kPress, K>(robot.four.figures.tree.leg[0], 0, legs_on, robot.side.state.body,
+                       robot.side.work.body);
   touch_trunk<kPress>(robot.figures.tree, on, state.body, work);
 }
-template <bool kPress>
+template <bool kPress, int K>
 inline void touch_four(FourLegged& robot, const ShapedFooting<double>& on, RobotState<double>& state,
                        Work<double>& work) noexcept {
   const Below<Quad> below{spread<Quad>(on.below.normal), on.below.height};
   const auto& at = on.stand;
   const Stand<Quad> stand{spread<Quad>(at.along), spread<Quad>(at.left), at.way, at.side};
   const ShapedFooting<Quad> legs_on{robot.four.site.around.ground, below, stand, on.dt};
-  touch_legs<kPress>(robot.four.figures.tree, legs_on, robot.side.state.body, robot.side.work.body);
+  touch_leg<kPress, K>(robot.four.figures.tree.leg[0], 0, legs_on, robot.side.state.body,
+                       robot.side.work.body);
   touch_trunk<kPress>(robot.figures.tree, on, state.body, work);
 }
 
@@ -262,7 +264,7 @@ inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const 
   drive_joints(four.figures, four.site, side.told, Quad(dt), side.state, side.work);
   const auto speed_before = side.state.body.speed;
   begin_four<K>(robot, site, state, work.body);
-  add_loads(four.figures.tree, side.state.body, side.work.loads, Quad(dt), legs);
+  load_leg(four.figures.tree, 0, side.state.body, side.work.loads, Quad(dt), legs.leg[0]);
   add_push(site.around, work.body);
   const auto& ground = site.around.ground;
   const Below<double> below = below_of(ground, work.body.body, state.body.position);
@@ -273,13 +275,13 @@ inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const 
       return ShapedFooting<double>{ground, below, stand_of(ground, work.body.body, state.body.position), dt};
     }
   }();
-  touch_four<true>(robot, on, state, work.body);
+  touch_four<true, K>(robot, on, state, work.body);
   eliminate_leg<K>(legs.leg[0], legs);
   sum_up(legs, work.body);
   solve_trunk(work.body);
   for (int i = 0; i < 6; ++i) legs.acceleration[i] = work.body.acceleration[i];
   follow_leg<K>(legs.leg[0], legs.acceleration);
-  touch_four<false>(robot, on, state, work.body);
+  touch_four<false, K>(robot, on, state, work.body);
   integrate_four<K>(dt, side);
   integrate_trunk(dt, work.body, state.body);
   move_rotors(four.figures, four.site, Quad(dt), speed_before, side.state, side.work);
