@@ -69,7 +69,7 @@ inline void pack_figures(const Figures<double>& from, FourLegs& to) noexcept {
   to.figures.tree.gravity = from.tree.gravity;
   to.figures.tree.stop_stiffness = from.tree.stop_stiffness;
   to.figures.tree.stop_damping = from.tree.stop_damping;
-  to.figures.teeth = {from.teeth.stiffness, from.teeth.damping};
+  to.figures.teeth[0] = {from.teeth[0].stiffness, from.teeth[0].damping};
   to.figures.pack.nominal = from.pack.nominal;
   leg.joint_count = legs[0].joint_count;
   leg.knee = legs[0].knee;

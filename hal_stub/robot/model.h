@@ -12,9 +12,8 @@ namespace pastern::stub {
 
 class Model {
  public:
-  /// Null with one line in `error` when this simulated robot cannot be it: a joint that slides, a limb that
-  /// branches, more than 8 limbs or 4 joints in one, a leg whose chain does not begin at the trunk. `robot`
-  /// must have been checked (proto/files/robot_file.h).
+  /// Null with one line in `error` when this simulated robot cannot be it: more than 8 limbs on the trunk, or
+  /// more than 8 joints in one. `robot` must have been checked (proto/files/robot_file.h).
   [[nodiscard]] static std::shared_ptr<const Model> make(const v1::Robot& robot, std::string& error);
 
   [[nodiscard]] const Figures<double>& figures() const { return figures_; }
@@ -45,7 +44,6 @@ class Model {
 
  private:
   Model() = default;
-  bool take_legs(const v1::Robot& robot, std::string& error);
   void take_drives(const v1::Robot& robot);
 
   Figures<double> figures_;
@@ -69,7 +67,7 @@ class Model {
   std::string digest_;
 };
 
-/// Place of a leg's foot (centre of its ball) in trunk axes for given joint angles in joint order.
+/// Place of a limb's first foot (centre of its ball) in trunk axes for given joint angles in joint order.
 [[nodiscard]] Vec3<double> foot_place(const Tree<double>& tree, int leg, const double* angle);
 /// How far the lowest contact point lies under the trunk's origin along `down` (unit, trunk axes).
 [[nodiscard]] double reach_below(const Tree<double>& tree, const double* angle, const Vec3<double>& down);

@@ -67,6 +67,25 @@ inline S saturated(const S& value, const S& range) noexcept {
   return select(value < -range, -range, select(range < value, range, value));
 }
 
+/// Mask: a part other than a foot touches the ground.
+template <class S>
+inline auto lies(const Tree<Constant<S>>& tree, const Grip<S>& grip) noexcept {
+  auto down = grip.corner[0] > S(0);
+  for (const S& corner : grip.corner) down = down | (corner > S(0));
+  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
+    const auto& limb = tree.leg[l];
+    if (!limb.general) {
+      down = down | (grip.leg[l][1] > S(0));
+      if (!limb.stands) down = down | (grip.leg[l][0] > S(0));
+      continue;
+    }
+    for (std::size_t p = 0; p < static_cast<std::size_t>(limb.point_count); ++p) {
+      if (!limb.point[p].foot) down = down | (grip_of(grip, l, p) > S(0));
+    }
+  }
+  return down;
+}
+
 /// Mask: the body axis more than kFallTilt from vertical, the trunk under half its stance's height over the
 /// ground, a part other than a foot on the ground, or any of it not a number.
 template <class S>
@@ -75,12 +94,8 @@ inline auto fallen(const Tree<Constant<S>>& tree, const Ground<S>& ground, Const
   using C = Constant<S>;
   const S upright = C(1) - C(2) * (body.attitude.x * body.attitude.x + body.attitude.y * body.attitude.y);
   const S height = height_over(ground, body.position);
-  auto down = !((upright > S(C(std::cos(kFallTilt)))) & (height > S(stance_height / C(2))));
-  for (const S& grip : body.grip.corner) down = down | (grip > S(0));
-  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
-    down = down | (body.grip.leg[l][1] > S(0));
-  }
-  return down;
+  return !((upright > S(C(std::cos(kFallTilt)))) & (height > S(stance_height / C(2)))) |
+         lies(tree, body.grip);
 }
 
 }  // namespace pastern::stub

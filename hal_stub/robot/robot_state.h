@@ -21,7 +21,8 @@ template <class C>
 struct Figures {
   Tree<C> tree;
   std::array<DriveFigures<C>, kMaxJoints> drive{};
-  Teeth<C> teeth;
+  /// Of gears of hinges, and of those of joints that slide (N/m, N s/m).
+  std::array<Teeth<C>, 2> teeth{Teeth<C>{}, Teeth<C>{C(400000), C(500)}};
   PackFigures<C> pack;
 };
 
@@ -79,7 +80,8 @@ inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<
       const GearedJoint<S> geared{
           real,       viscosity, site.drives.half_gap[k], state.body.angle[n][i], speed, d.rotor_angle[k],
           rotor_speed};
-      work.loads[n][i] = load_of(drive, figures.teeth, geared, dt, work.coupling[k]);
+      const auto& teeth = figures.teeth[static_cast<std::size_t>(leg.joint[i].slides)];
+      work.loads[n][i] = load_of(drive, teeth, geared, dt, work.coupling[k]);
       work.power = work.power + real * rotor_speed + loss;
       work.mechanical = work.mechanical + abs(torque * speed);
       heat(drive, loss, site.drives.ambient, dt, d.winding[k], d.housing[k]);

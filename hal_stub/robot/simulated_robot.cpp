@@ -253,8 +253,7 @@ Truth SimulatedRobot::truth() const {
   t.yaw_rad = std::atan2(r.x.y, r.x.x);
   t.tilt_rad = std::acos(std::clamp(r.z.z, -1.0, 1.0));
   t.height_m = height_over(figures_.around.ground, body.position);
-  for (const double grip : body.grip.corner) t.other_contact = t.other_contact || grip > 0;
-  for (const auto& leg : body.grip.leg) t.other_contact = t.other_contact || leg[1] > 0;
+  t.other_contact = lies(model_->figures().tree, body.grip);
   t.fallen = fallen();
   t.power_w = work_.mechanical;
   return t;

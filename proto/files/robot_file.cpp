@@ -89,6 +89,8 @@ class Judge {
     const double length = std::sqrt(axis.x() * axis.x() + axis.y() * axis.y() + axis.z() * axis.z());
     require(std::abs(length - 1) <= kUnit, at + ".axis", "length " + shown_number(length), "a unit vector");
     inertia(joint.link(), at + ".link.inertia");
+    require(!joint.has_tip_radius_m() || joint.has_tip_m(), at + ".tip_radius_m", "a radius without a tip",
+            "tip_m beside it");
     range(joint, at);
     drive(joint, at);
   }
@@ -140,6 +142,8 @@ class Judge {
     if (abduction >= 0) carried_by(robot_.joints(hip), leg.abduction(), at + ".hip");
     along_y(robot_.joints(hip), at + ".hip");
     along_y(robot_.joints(knee), at + ".knee");
+    require(!robot_.joints(knee).has_tip_m(), at + ".knee", leg.knee() + " with a tip_m",
+            "none: the leg's foot touches the ground");
     chain_length(knee, at + ".knee");
     bend(leg, robot_.joints(knee), at + ".knee");
   }

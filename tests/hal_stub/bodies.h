@@ -84,6 +84,12 @@ struct Moving {
   V3 rate;
   V3 spin;
 };
+struct Carried {
+  Rotation<double> axes;
+  V3 place;
+  V3 velocity;
+  V3 rate;
+};
 inline Moving moving(const LinkFigures<double>& link, const Rotation<double>& axes, const V3& place,
                      const V3& velocity, const V3& rate) {
   const V3 arm = axes * link.centre;
@@ -94,24 +100,33 @@ inline Moving moving(const LinkFigures<double>& link, const Rotation<double>& ax
 
 /// Sums over all links in world axes.
 inline Totals totals(const TreeD& tree, const StateD& state) {
-  std::array<detail::Moving, 40> link{};
+  std::array<detail::Moving, 80> link{};
   std::size_t count = 0;
   const Rotation<double> body = rotation_of(state.attitude);
   const V3 base_rate = body * state.rate;
   link[count++] = detail::moving(tree.trunk, body, state.position, state.velocity, base_rate);
   for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
-    Rotation<double> axes = body;
-    V3 place = state.position;
-    V3 velocity = state.velocity;
-    V3 rate = base_rate;
+    std::array<detail::Carried, kMaxLimb> link_at{};
     for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[l].joint_count); ++i) {
       const auto& joint = tree.leg[l].joint[i];
-      const V3 step = axes * joint.origin;
-      velocity = velocity + cross(rate, step);
-      place = place + step;
-      rate = rate + axes * joint.axis * state.speed[l][i];
-      axes = detail::times(axes, detail::about(joint.axis, state.angle[l][i]));
-      link[count++] = detail::moving(joint.link, axes, place, velocity, rate);
+      // A chain's joints say nothing of their parents: the one before.
+      const int parent = tree.leg[l].general ? joint.parent : static_cast<int>(i) - 1;
+      const detail::Carried at = parent < 0 ? detail::Carried{body, state.position, state.velocity, base_rate}
+                                            : link_at[static_cast<std::size_t>(parent)];
+      detail::Carried to = at;
+      V3 step = at.axes * joint.origin;
+      const V3 axis = at.axes * joint.axis;
+      if (joint.slides) step = step + axis * state.angle[l][i];
+      to.velocity = at.velocity + cross(at.rate, step);
+      to.place = at.place + step;
+      if (joint.slides) {
+        to.velocity = to.velocity + axis * state.speed[l][i];
+      } else {
+        to.rate = at.rate + axis * state.speed[l][i];
+        to.axes = detail::times(at.axes, detail::about(joint.axis, state.angle[l][i]));
+      }
+      link_at[i] = to;
+      link[count++] = detail::moving(joint.link, to.axes, to.place, to.velocity, to.rate);
     }
   }
   Totals t;

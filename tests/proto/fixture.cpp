@@ -88,6 +88,8 @@ void add_leg(v1::Robot& robot, const std::string& name, double x, double y, bool
     v1::Joint& joint = add_joint(robot, leg.abduction(), "", {-0.6, 0.6, 0, 0.1});
     set(*joint.mutable_axis(), 1, 0, 0);
     set(*joint.mutable_origin_m(), x, y, 0);
+    set(*joint.mutable_tip_m(), 0, 0, -0.06);
+    joint.set_tip_radius_m(0.01);
   }
   leg.set_hip(name + "_hip");
   leg.set_knee(name + "_knee");

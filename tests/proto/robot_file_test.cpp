@@ -119,6 +119,10 @@ const Case kLeg[] = {
        r.mutable_joints(kKnee)->mutable_axis()->set_x(1);
      },
      "r: legs[0].knee: found axis of front_left_knee not along y"},
+    {"TipOnTheShank", [](v1::Robot& r) { *r.mutable_joints(kKnee)->mutable_tip_m() = r.legs(0).foot_m(); },
+     "r: legs[0].knee: found front_left_knee with a tip_m, expected none: the leg's foot touches the ground"},
+    {"RadiusWithoutTip", [](v1::Robot& r) { r.mutable_joints(kKnee)->set_tip_radius_m(0.01); },
+     "tip_radius_m: found a radius without a tip, expected tip_m beside it"},
     {"NoShank", [](v1::Robot& r) { r.mutable_legs(0)->mutable_foot_m()->set_z(0); },
      "r: legs[0].knee: found segments of 0.22 and 0 m"},
     {"StraightKnee",

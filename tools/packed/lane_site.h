@@ -56,6 +56,9 @@ inline void each_number(const Tree& tree, stub::RobotState<C>& state, F&& f) {
       f(body.speed[l][i]);
     }
     for (C& grip : body.grip.leg[l]) f(grip);
+    for (int p = stub::kPointsPerLeg; p < tree.leg[l].point_count; ++p) {
+      f(body.grip.more[l][static_cast<std::size_t>(p - stub::kPointsPerLeg)]);
+    }
   }
   for (C& grip : body.grip.corner) f(grip);
   auto& drives = state.drives;

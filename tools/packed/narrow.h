@@ -32,7 +32,15 @@ stub::JointFigures<C> narrowed(const stub::JointFigures<double>& a) {
   made.link = narrowed<C>(a.link);
   made.kind = a.kind;
   made.order = a.order;
+  made.slides = a.slides;
+  made.parent = a.parent;
+  made.line = a.line;
   return made;
+}
+
+template <class C>
+stub::PointFigures<C> narrowed(const stub::PointFigures<double>& a) {
+  return {narrowed<C>(a.at), C(a.radius), a.joint, a.foot};
 }
 
 template <class C>
@@ -54,6 +62,10 @@ stub::Tree<C> narrowed(const stub::Tree<double>& a) {
     leg.knee_radius = C(a.leg[l].knee_radius);
     leg.joint_count = a.leg[l].joint_count;
     leg.knee = a.leg[l].knee;
+    leg.stands = a.leg[l].stands;
+    leg.general = a.leg[l].general;
+    leg.point_count = a.leg[l].point_count;
+    for (std::size_t p = 0; p < leg.point.size(); ++p) leg.point[p] = narrowed<C>(a.leg[l].point[p]);
   }
   made.trunk = narrowed<C>(a.trunk);
   for (std::size_t c = 0; c < a.corner.size(); ++c) made.corner[c] = narrowed<C>(a.corner[c]);
@@ -61,6 +73,8 @@ stub::Tree<C> narrowed(const stub::Tree<double>& a) {
   made.gravity = C(a.gravity);
   made.stop_stiffness = C(a.stop_stiffness);
   made.stop_damping = C(a.stop_damping);
+  made.slide_stiffness = C(a.slide_stiffness);
+  made.slide_damping = C(a.slide_damping);
   return made;
 }
 
@@ -69,7 +83,9 @@ stub::Figures<C> narrowed(const stub::Figures<double>& a) {
   stub::Figures<C> made;
   made.tree = narrowed<C>(a.tree);
   for (std::size_t j = 0; j < a.drive.size(); ++j) made.drive[j] = narrowed<C>(a.drive[j]);
-  made.teeth = {C(a.teeth.stiffness), C(a.teeth.damping)};
+  for (std::size_t i = 0; i < a.teeth.size(); ++i) {
+    made.teeth[i] = {C(a.teeth[i].stiffness), C(a.teeth[i].damping)};
+  }
   made.pack = {C(a.pack.nominal), C(a.pack.capacity_as), C(a.pack.resistance), C(a.pack.idle)};
   return made;
 }
