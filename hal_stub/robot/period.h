@@ -94,8 +94,8 @@ inline auto fallen(const Tree<Constant<S>>& tree, const Ground<S>& ground, Const
   using C = Constant<S>;
   const S upright = C(1) - C(2) * (body.attitude.x * body.attitude.x + body.attitude.y * body.attitude.y);
   const S height = height_over(ground, body.position);
-  return !((upright > S(C(std::cos(kFallTilt)))) & (height > S(stance_height / C(2)))) |
-         lies(tree, body.grip);
+  const auto up = (upright > S(C(std::cos(kFallTilt)))) & (height > S(stance_height / C(2)));
+  return (!up) | lies(tree, body.grip);
 }
 
 }  // namespace pastern::stub
