@@ -129,6 +129,7 @@ struct Cycle::Impl {
   std::int64_t elapsed{0};
   JointAngles<> from;
   bool from_taken{true};
+  bool fades_gait{false};  // settling out of a walk: the policy goes on, its share falls to nothing
   bool done{true};
   bool completed{true};
   bool tripped{false};
@@ -182,7 +183,13 @@ void Cycle::Impl::steer() noexcept {
       target.angle = frame.angle;
       break;
     case Motion::rise:
+      target.angle = between(from, stance, share, joint_count);
+      break;
     case Motion::settle:
+      // Feet that stand still at once would throw the trunk over them: the gait goes on and fades.
+      if (fades_gait && elapsed % policy_every == 0) {
+        from = policy->step(estimator.body(), frame.angle, frame.speed, policy_period_s).angle;
+      }
       target.angle = between(from, stance, share, joint_count);
       break;
     case Motion::lower:
@@ -275,6 +282,7 @@ void Cycle::Impl::finish(bool whole) noexcept {
 }
 
 void Cycle::Impl::enter(Motion next, double duration_s) noexcept {
+  fades_gait = next == Motion::settle && motion == Motion::walk;
   motion = next;
   elapsed = 0;
   from_taken = next != Motion::rise;
@@ -320,7 +328,8 @@ void Cycle::begin(Motion motion, double duration_s) noexcept {
     s.finish(false);
     return;
   }
-  s.enter(motion, duration_s);
+  const bool goes_on = motion == Motion::settle && s.fades_gait;  // it began when the walk ended
+  if (!goes_on) s.enter(motion, duration_s);
   if (motion == Motion::rise) s.cold = true;
   if (motion == Motion::walk) {
     s.walk_begins = true;

@@ -42,6 +42,8 @@ struct Signals {
 ///   stand   holds the stance                    walk    the policy, from the stance
 ///   settle  last target -> stance, settle_s     lower   last target -> lying pose over rise_s, then torque
 ///   off
+/// Out of a walk the settling is a running out: the policy goes on for settle_s while its share of the target
+/// falls to nothing. Feet that stopped at once would throw the trunk over them.
 enum class Motion : std::uint8_t { parked, rise, stand, walk, settle, lower };
 
 /// Outcome of a motion: how it ended, and for a walk its score, summary and trace.
@@ -98,9 +100,10 @@ class Cycle {
   [[nodiscard]] safety::Gate& gate() noexcept;
   [[nodiscard]] double period_s() const noexcept;
 
-  /// Between walks, from any one thread: parameters of the next walk; finite and of the policy's size.
+  /// Between walks (once settled), from any one thread: parameters of the next walk; finite and of the
+  /// policy's size.
   void load(const Parameters& parameters) noexcept;
-  /// Between walks: another policy altogether. Allocates.
+  /// Between walks (once settled): another policy altogether. Allocates.
   void change_policy(const v1::Policy& policy);
 
   /// begin(), ticks until done(), result(): the parts of run(). begin() and tick() belong to the cycle's

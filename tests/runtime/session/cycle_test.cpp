@@ -3,6 +3,7 @@
 
 #include <gtest/gtest.h>
 
+#include <algorithm>
 #include <cmath>
 #include <vector>
 
@@ -79,6 +80,67 @@ TEST_P(CycleOnBothRobots, ScoresAWalkOfTheWholeTime) {
   EXPECT_LT(walk.terms.energy, 0);
   EXPECT_EQ(walk.terms.fall, 0);
   EXPECT_GE(walk.trace.time_s_size(), 50);
+}
+
+double distance(const JointAngles<>& a, const JointAngles<>& b, int joint_count) {
+  double most = 0;
+  for (int j = 0; j < joint_count; ++j) most = std::max(most, std::fabs(a[j] - b[j]));
+  return most;
+}
+
+TEST_P(CycleOnBothRobots, RunsOutOfAWalkWithTheGaitGoingOnAndFading) {
+  Rig rig("", GetParam());
+  rig.stand();
+  const int joints = rig.robot.joint_count();
+  const JointAngles<> stance = rig.cycle.report().target;
+  ASSERT_TRUE(rig.cycle.run(Motion::walk, 1.0).completed);
+  const JointAngles<> at_end = rig.cycle.report().target;
+  rig.cycle.begin(Motion::settle, 0);
+  double beside_the_line = 0;  // on the straight way from the last target to the stance, it would be nothing
+  int ticks = 0;
+  for (; !rig.cycle.done(); ++ticks) {
+    rig.cycle.tick({});
+    const JointAngles<> target = rig.cycle.report().target;
+    const double t = (ticks + 1) / (rig.robot.robot().settle_s() * 1000);
+    const JointAngles<> line = between(at_end, stance, smooth_share(t), joints);
+    beside_the_line = std::max(beside_the_line, distance(target, line, joints));
+  }
+  EXPECT_GT(beside_the_line, 0.05);
+  EXPECT_EQ(ticks, std::lround(rig.robot.robot().settle_s() * 1000));
+  EXPECT_LT(distance(rig.cycle.report().target, stance, joints), 1e-12);
+}
+
+TEST_P(CycleOnBothRobots, GoesOnRunningOutWhenTheSettlingIsAskedForLate) {
+  const auto targets = [](int late_ticks) {
+    Rig rig("", GetParam());
+    rig.stand();
+    (void)rig.cycle.run(Motion::walk, 0.9);
+    std::vector<double> of_joints;
+    const int ticks = static_cast<int>(rig.robot.robot().settle_s() * 1000);
+    for (int tick = 0; tick < ticks; ++tick) {
+      if (tick == late_ticks) rig.cycle.begin(Motion::settle, 0);
+      rig.cycle.tick({});
+      for (int j = 0; j < rig.robot.joint_count(); ++j) of_joints.push_back(rig.cycle.report().target[j]);
+    }
+    EXPECT_TRUE(rig.cycle.done());
+    return of_joints;
+  };
+  const std::vector<double> at_once = targets(0);
+  EXPECT_EQ(targets(7), at_once);
+  EXPECT_EQ(targets(150), at_once);
+}
+
+TEST_P(CycleOnBothRobots, SettlesFromStandingWithoutThePolicy) {
+  Rig rig("", GetParam());
+  rig.stand();
+  (void)rig.cycle.run(Motion::walk, 0.5);
+  (void)rig.cycle.run(Motion::settle, 0);
+  const JointAngles<> stance = rig.cycle.report().target;
+  rig.cycle.begin(Motion::settle, 0);
+  while (!rig.cycle.done()) {
+    rig.cycle.tick({});
+    EXPECT_LT(distance(rig.cycle.report().target, stance, rig.robot.joint_count()), 1e-12);
+  }
 }
 
 INSTANTIATE_TEST_SUITE_P(Robots, CycleOnBothRobots, testing::Values("dunlin12", "dunlin8"));
