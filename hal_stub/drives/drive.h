@@ -11,8 +11,13 @@ namespace pastern::stub {
 
 using safety::kMaxJoints;
 
+/// Entries of an array by drive. Wide scalars get a few more: arrays of 2 KB would meet in the same few sets
+/// of the first cache.
 template <class S>
-using PerDrive = std::array<S, kMaxJoints>;
+inline constexpr std::size_t kDriveRoom = sizeof(S) > 16 ? kMaxJoints + 5 : kMaxJoints;
+
+template <class S>
+using PerDrive = std::array<S, kDriveRoom<S>>;
 
 /// Copper, relative to 25 deg C, where the drive's figures hold: 1 + 0.00393 (T - 20) scaled (handbook).
 template <class S>

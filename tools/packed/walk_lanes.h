@@ -106,6 +106,7 @@ class LaneWalker final : public Walker {
   JointAngles<S> rise_from_{};
   S rise_clock_{};  ///< ticks since the rise began
   bool stands_up_{false};
+  bool plane_legs_{false};
   // The lanes.
   std::uint32_t now_{0};  ///< tick
   W placed_{0};           ///< tick of each lane's placing

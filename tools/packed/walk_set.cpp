@@ -18,6 +18,7 @@ LaneWalker<S>::LaneWalker(std::shared_ptr<const WalkSettings> settings)
       shape_(policy::shape_as<S>(settings_->shape)),
       scratch_(policy::scratch_of(shape_)),
       parameters_(settings_->shape.parameter_count, S(T(0))) {
+  plane_legs_ = has_plane_legs(figures().robot.tree);
   put_on_feet(*settings_, stub::nominal_site(*settings_->model), parked_);
 }
 

@@ -7,6 +7,7 @@
 #include "runtime/control/pd.h"
 #include "runtime/episode/recorder.h"
 #include "safety/clamps.h"
+#include "tools/packed/plane_legs.h"
 #include "tools/packed/walk_lanes.h"
 
 namespace pastern::packed::PASTERN_LANES_SET {
@@ -37,7 +38,11 @@ template <class S>
   push();
   for (int n = 0; n < settings_->substeps; ++n) {
     correct();
-    stub::step_robot(figs.robot, site_, told_, figs.step, robot_, work_);
+    if (plane_legs_) {
+      step_plane_robot(figs.robot, site_, told_, figs.step, robot_, work_);
+    } else {
+      stub::step_robot(figs.robot, site_, told_, figs.step, robot_, work_);
+    }
   }
   ticks_ = ticks_ + S(T(1));
   ++now_;
