@@ -15,11 +15,11 @@ inline bool has_plane_legs(const stub::Tree<C>& tree) noexcept {
   for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
     const auto& leg = tree.leg[l];
     const auto first = static_cast<std::size_t>(leg.joint_count - 2);
-    if (leg.joint_count < 2 || leg.joint_count > 3) return false;
+    if (leg.general || leg.joint_count < 2 || leg.joint_count > 3) return false;
     for (std::size_t i = 0; i < static_cast<std::size_t>(leg.joint_count); ++i) {
       const auto& joint = leg.joint[i];
       if (joint.kind != (i < first ? stub::AxisKind::x : stub::AxisKind::y)) return false;
-      if (joint.sign != C(1) || joint.link.skewed) return false;
+      if (joint.sign != C(1) || joint.slides || joint.link.skewed) return false;
     }
   }
   return tree.leg_count > 0;

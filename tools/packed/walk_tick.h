@@ -25,7 +25,7 @@ inline stub::Hold<C> hold_of(const JointFigures<C>& joint) noexcept {
 }
 
 template <class S>
-[[gnu::flatten]] unsigned LaneWalker<S>::tick() {
+unsigned LaneWalker<S>::tick() {
   look();
   if (stands_up_) {
     rise();

@@ -12,8 +12,8 @@
 
 namespace pastern::tools {
 
-/// `set`: instructions that this machine has. Scores are the same to the bit for any number of threads, and
-/// for AVX2 and AVX-512; plain instructions have no fused multiply-add and give others. Lots whose site has
+/// `set`: instructions that this machine has. Scores are the same to the bit
+/// for any number of threads; another set of instructions rounds otherwise. Lots whose site has
 /// faults, which lanes do not know, are walked one by one by a WalkCourse. With `ranks`, which must outlive
 /// them, each rank walks its share (tools/packed/fleet.h); of lots with faults each rank walks all.
 [[nodiscard]] std::unique_ptr<Trials> packed_trials(std::shared_ptr<const WalkSetting> setting,

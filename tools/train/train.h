@@ -23,7 +23,7 @@ struct TrainOptions {
   std::string name;      ///< of the policy; empty: the robot's name + "_start"
   TrainerSettings settings{start_policy_settings()};
   unsigned threads{0};  ///< 0: all
-  /// Walks run with these; a policy file comes out the same on AVX2 and AVX-512, another on plain ones.
+  /// Walks run with these; the policy file belongs to them: others round otherwise.
   packed::InstructionSet instructions{packed::widest_set()};
   double walk_s{5};
   std::size_t last_look_walks{1000};  ///< of the judgement at the end, over the wide range

@@ -34,7 +34,7 @@ class Train final : public Verb {
         "",
         "Interrupted (Ctrl-C, a power cut) it goes on from OUT.training when called again in the same words.",
         "The same robot file and settings give the same policy file, byte for byte, on any number of "
-        "threads, with AVX2 or AVX-512; --instructions plain gives another.",
+        "threads; with other --instructions it is another one, as good.",
         "Under mpirun (Open MPI) the ranks share the walks, each on --threads threads: the same file again.",
         "Robot file and --training must be the same for all ranks; the first one writes.",
         "Exit status 5: interrupted. 3: a file is wrong or cannot be written.",
