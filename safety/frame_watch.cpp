@@ -26,7 +26,7 @@ void note_if_not_finite(const Vector3<Unit, Frame>& v, Findings& found) noexcept
   if (!finite(v)) found.note(Cause::frame_not_finite);
 }
 
-void look_for_finite(const SensorFrame& frame, int joint_count, Findings& found) noexcept {
+void look_for_finite_joints(const SensorFrame& frame, int joint_count, Findings& found) noexcept {
   for (int j = 0; j < joint_count; ++j) {
     note_if_not_finite(frame.angle[j], j, found);
     note_if_not_finite(frame.speed[j], j, found);
@@ -34,6 +34,9 @@ void look_for_finite(const SensorFrame& frame, int joint_count, Findings& found)
     note_if_not_finite(frame.winding[j], j, found);
     note_if_not_finite(frame.housing[j], j, found);
   }
+}
+
+void look_for_finite_rest(const SensorFrame& frame, Findings& found) noexcept {
   note_if_not_finite(frame.rate, found);
   note_if_not_finite(frame.acceleration, found);
   note_if_not_finite(frame.pack_voltage_v, kNoJoint, found);
@@ -71,11 +74,8 @@ Range possible_speed(const JointLimits& joint) noexcept {
   return around(kImpossibleFactor * joint.speed_max_rad_per_s);
 }
 
-void look_for_possible(const Limits& limits, const SensorFrame& frame, int joint_count,
-                       Findings& found) noexcept {
-  if (frame.joint_count != joint_count) {
-    found.note(Cause::frame_out_of_range, kNoJoint, frame.joint_count, joint_count);
-  }
+void look_for_possible_joints(const Limits& limits, const SensorFrame& frame, int joint_count,
+                              Findings& found) noexcept {
   for (int j = 0; j < joint_count; ++j) {
     const JointLimits& joint = limits.joint[static_cast<std::size_t>(j)];
     note_if_outside(frame.angle[j],
@@ -86,6 +86,9 @@ void look_for_possible(const Limits& limits, const SensorFrame& frame, int joint
     note_if_outside(frame.winding[j], {kColdestC, kHottestC}, j, found);
     note_if_outside(frame.housing[j], {kColdestC, kHottestC}, j, found);
   }
+}
+
+void look_for_possible_rest(const Limits& limits, const SensorFrame& frame, Findings& found) noexcept {
   note_if_outside(frame.rate, limits.rate_range_rad_per_s, found);
   note_if_outside(frame.acceleration, limits.acceleration_range_m_per_s2, found);
   note_if_outside(frame.pack_voltage_v, {0.0, kMostPackV}, kNoJoint, found);
@@ -96,6 +99,17 @@ void look_for_possible(const Limits& limits, const SensorFrame& frame, int joint
     const Attitude<>& q = frame.attitude;
     note_if_outside(q.w * q.w + q.x * q.x + q.y * q.y + q.z * q.z, {0.9, 1.1}, kNoJoint, found);
   }
+}
+
+/// By whatever stands in the limits; what is not finite makes nothing possible.
+JointRanges ranges_of(const JointLimits& joint) noexcept {
+  return {joint.angle_min_rad - kImpossibleAngle, joint.angle_max_rad + kImpossibleAngle,
+          possible_speed(joint).high, kImpossibleFactor * joint.trip_torque_nm};
+}
+
+bool all_finite(const JointRanges& ranges) noexcept {
+  return std::isfinite(ranges.angle_low) && std::isfinite(ranges.angle_high) && std::isfinite(ranges.speed) &&
+         std::isfinite(ranges.torque);
 }
 
 bool all_speeds_possible(const Limits& limits, const SensorFrame& frame, int joint_count) noexcept {
@@ -128,13 +142,21 @@ bool same_values(const SensorFrame& a, const SensorFrame& b, int joint_count) no
 
 FrameWatch::FrameWatch(const Limits& limits) noexcept
     : stale_ticks_(ticks_within(limits.frame_stale_s, sound_tick_s(limits.tick_s))),
-      tick_s_(sound_tick_s(limits.tick_s)) {}
+      tick_s_(sound_tick_s(limits.tick_s)),
+      stuck_rad_(kStuckShare * limits.frame_jump_rad) {
+  for (int j = 0; j < joints_of(limits); ++j) {
+    const auto i = static_cast<std::size_t>(j);
+    ranges_[i] = ranges_of(limits.joint[i]);
+    ranges_finite_ = ranges_finite_ && all_finite(ranges_[i]);
+  }
+}
 
 void FrameWatch::reset() noexcept {
   seen_ = false;
   age_ = 0;
   gap_ = 1;
   frozen_ = 0;
+  still_.fill(0);
 }
 
 void FrameWatch::look(const Limits& limits, const SensorFrame& frame, bool frame_new, bool live,
@@ -144,18 +166,41 @@ void FrameWatch::look(const Limits& limits, const SensorFrame& frame, bool frame
     fresh_ = speeds_usable_ = false;
     return;
   }
-  look_for_finite(frame, joint_count, found);
-  look_for_possible(limits, frame, joint_count, found);
+  // What lies inside finite ranges is finite as well: the long way only tells what is wrong.
+  const bool joints_sound = ranges_finite_ && all_possible(frame, joint_count);
+  if (!joints_sound) look_for_finite_joints(frame, joint_count, found);
+  look_for_finite_rest(frame, found);
+  if (frame.joint_count != joint_count) {
+    found.note(Cause::frame_out_of_range, kNoJoint, frame.joint_count, joint_count);
+  }
+  if (!joints_sound) look_for_possible_joints(limits, frame, joint_count, found);
+  look_for_possible_rest(limits, frame, found);
   look_for_age(limits, frame, frame_new, elapsed, found);
-  // Also in a frame whose counter has not risen: its angles reach the fades and the policy all the same.
-  if (live && frame_new) look_for_jumps(limits, frame, found);
+  if (!live) {
+    still_.fill(0);
+  } else if (frame_new) {
+    // Also in a frame whose counter has not risen: its angles reach the fades and the policy all the same.
+    look_at_steps(limits, frame, found);
+  }
   if (fresh_) {
     look_for_life(limits, frame, found);
     remember(frame, joint_count);
   }
   const CauseSet unfit = bit(Cause::frame_stale) | bit(Cause::frame_frozen);
   speeds_usable_ = (found.all() & unfit) == 0 && frame.joint_count == joint_count &&
-                   all_speeds_possible(limits, frame, joint_count);
+                   (joints_sound || all_speeds_possible(limits, frame, joint_count));
+}
+
+bool FrameWatch::all_possible(const SensorFrame& frame, int joint_count) const noexcept {
+  for (int j = 0; j < joint_count; ++j) {
+    const JointRanges& range = ranges_[static_cast<std::size_t>(j)];
+    if (!within(frame.angle[j], range.angle_low, range.angle_high) ||
+        !(std::fabs(frame.speed[j]) <= range.speed) || !(std::fabs(frame.torque[j]) <= range.torque) ||
+        !within(frame.winding[j], kColdestC, kHottestC) || !within(frame.housing[j], kColdestC, kHottestC)) {
+      return false;
+    }
+  }
+  return true;
 }
 
 void FrameWatch::look_for_age(const Limits& limits, const SensorFrame& frame, bool frame_new,
@@ -178,12 +223,37 @@ void FrameWatch::look_for_life(const Limits& limits, const SensorFrame& frame, F
   }
 }
 
-void FrameWatch::look_for_jumps(const Limits& limits, const SensorFrame& frame,
-                                Findings& found) const noexcept {
+void FrameWatch::look_at_steps(const Limits& limits, const SensorFrame& frame, Findings& found) noexcept {
   if (!seen_) return;
   for (int j = 0; j < joints_of(limits); ++j) {
-    const double jump = std::fabs(frame.angle[j] - last_.angle[j]);
-    if (!(jump <= limits.frame_jump_rad)) found.note(Cause::frame_jump, j, jump, limits.frame_jump_rad);
+    const double step = std::fabs(frame.angle[j] - last_.angle[j]);
+    if (!(step <= limits.frame_jump_rad)) found.note(Cause::frame_jump, j, step, limits.frame_jump_rad);
+    if (!(step > 0.0)) {
+      if (fresh_) look_at_still_joint(limits, frame.speed[j], j, found);
+    } else {
+      still_[static_cast<std::size_t>(j)] = 0;
+    }
+  }
+}
+
+/// The first frames are let pass: where a speed is filtered it goes on for a while when a joint has come to
+/// rest. Then the way that the joint makes by its speed is added up, in spans, so that a small error of the
+/// speed does not pose as motion.
+void FrameWatch::look_at_still_joint(const Limits& limits, double speed, int joint,
+                                     Findings& found) noexcept {
+  const auto j = static_cast<std::size_t>(joint);
+  const int still = ++still_[j];
+  const int first = limits.frame_frozen_ticks;
+  if (still <= first) {
+    crept_[j] = 0.0;
+    return;
+  }
+  crept_[j] += speed * static_cast<double>(gap_) * tick_s_;
+  if (!(std::fabs(crept_[j]) <= stuck_rad_)) {
+    found.note(Cause::frame_frozen, joint, still, first, still * tick_s_);
+  } else if (still / kStuckSpan >= first) {
+    still_[j] = first;
+    crept_[j] = 0.0;
   }
 }
 

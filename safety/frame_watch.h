@@ -2,6 +2,7 @@
 // Limits of "possible" are wide: what no working sensor says. The robot's own limits are watched elsewhere.
 #pragma once
 
+#include <array>
 #include <cstdint>
 
 #include "safety/findings.h"
@@ -19,11 +20,27 @@ inline constexpr double kHottestC = 500.0;
 inline constexpr double kMostPackV = 1e4;
 inline constexpr double kMostPositionM = 1e6;
 
+/// A joint is stuck when its angle has stood still, to the bit, for frame_frozen_ticks frames and by its own
+/// measured speed it has then moved by more than this share of frame_jump_rad ...
+inline constexpr double kStuckShare = 0.2;
+/// ... within so many times frame_frozen_ticks: slower than that it is believed to stand, whatever its speed
+/// sensor's offset.
+inline constexpr int kStuckSpan = 25;
+
+/// What a working sensor of a joint may say; of speed and torque, either way.
+struct JointRanges {
+  double angle_low{0};
+  double angle_high{0};
+  double speed{0};
+  double torque{0};
+};
+
 class FrameWatch {
  public:
   explicit FrameWatch(const Limits& limits) noexcept;
 
-  /// `live`: torque is on or about to be, so jumps count (limbs of a parked robot may be moved by hand).
+  /// `live`: torque is on or about to be, so jumps and stuck joints count (limbs of a parked robot may be
+  /// moved by hand).
   /// Until the first fresh frame a robot that is not live has nothing to judge.
   void look(const Limits& limits, const SensorFrame& frame, bool frame_new, bool live, std::int64_t elapsed,
             Findings& found) noexcept;
@@ -43,11 +60,19 @@ class FrameWatch {
   void look_for_age(const Limits& limits, const SensorFrame& frame, bool frame_new, std::int64_t elapsed,
                     Findings& found) noexcept;
   void look_for_life(const Limits& limits, const SensorFrame& frame, Findings& found) noexcept;
-  void look_for_jumps(const Limits& limits, const SensorFrame& frame, Findings& found) const noexcept;
+  /// From frame to frame, every joint on its own: too far, or not at all though it moves.
+  void look_at_steps(const Limits& limits, const SensorFrame& frame, Findings& found) noexcept;
+  void look_at_still_joint(const Limits& limits, double speed, int joint, Findings& found) noexcept;
+  [[nodiscard]] bool all_possible(const SensorFrame& frame, int joint_count) const noexcept;
   void remember(const SensorFrame& frame, int joint_count) noexcept;
 
   std::int64_t stale_ticks_;
   double tick_s_;
+  double stuck_rad_;
+  std::array<JointRanges, kMaxJoints> ranges_{};
+  bool ranges_finite_{true};
+  std::array<int, kMaxJoints> still_{};     ///< frames since the angle last changed; while torque is on
+  std::array<double, kMaxJoints> crept_{};  ///< way by measured speed since then, after the first frames; rad
   SensorFrame last_;
   bool seen_{false};
   bool fresh_{false};

@@ -6,11 +6,10 @@
 // zero. Taking the torque off is always allowed at once.
 //
 // What is judged when
-//   always:              emergency stop, halt, stop, internal stop, bus error, frame (finite, possible,
-//   stale,
-//                        frozen), winding temperature, thermal model, pack;
-//   while torque is wanted and not latched off: tilt, body rate, joint angle, speed, torque and jumps, baton,
-//                        overrun: a parked robot may be carried, laid on its side, and nobody need hold it;
+//   always: emergency stop, halt, stop, internal stop, bus error, frame (finite, possible, stale, frozen),
+//     winding temperature, thermal model, pack;
+//   while torque is wanted and not latched off: tilt, body rate, joint angle, speed, torque, jumps, stuck
+//     encoders, baton, overrun: a parked robot may be carried, laid on its side, and nobody need hold it;
 //   while armed as well: torque and target finite, base low (in a ramp-down the trunk is meant to sink).
 #pragma once
 

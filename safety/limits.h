@@ -29,7 +29,7 @@ enum class Cause : std::uint8_t {
   frame_not_finite,
   frame_out_of_range,
   frame_stale,   ///< s since the last new frame
-  frame_frozen,  ///< ticks without any change in any analogue value
+  frame_frozen,  ///< ticks without any change in any analogue value, or in the angle of a joint that moves
   frame_jump,    ///< rad between two frames
   tick_overrun,  ///< s
   baton_lost,    ///< s since the last sign of life

@@ -225,6 +225,10 @@ class Judge {
     require(
         guard.drive_timeout_s() > 1.5 * tick, "guard.drive_timeout_s", guard.drive_timeout_s(),
         "more than 1.5 ticks, " + shown_number(1.5 * tick) + ", else every late tick cuts the drives (s)");
+    const double step = robot_.sensors().encoder_step_rad();
+    require(guard.frame_jump_rad() >= 20 * step, "guard.frame_jump_rad", guard.frame_jump_rad(),
+            "at least 20 of sensors.encoder_step_rad, " + shown_number(20 * step) +
+                " (rad): by a fifth of it a still encoder is judged stuck");
     stops();
   }
 

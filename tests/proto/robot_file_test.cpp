@@ -167,6 +167,8 @@ const Case kGuard[] = {
        r.mutable_guard()->set_drive_timeout_s(0.003);
      },
      "r: guard.drive_timeout_s: found 0.003"},
+    {"JumpOfFewEncoderSteps", [](v1::Robot& r) { r.mutable_sensors()->set_encoder_step_rad(0.0125); },
+     "r: guard.frame_jump_rad: found 0.2, expected at least 20 of sensors.encoder_step_rad, 0.25 (rad)"},
     {"UnknownCause", [](v1::Robot& r) { r.mutable_guard()->mutable_stops(0)->set_cause("boredom"); },
      "r: guard.stops[0].cause: found boredom, expected the name of a cause"},
     {"CauseNone", [](v1::Robot& r) { r.mutable_guard()->mutable_stops(0)->set_cause("none"); },

@@ -136,6 +136,7 @@ TEST(EnvelopeUnderNoise, HoldsInEveryPhaseOfARobotThatIsMostlyWell) {
       const double x = noise.number();
       loop.wanted[j] = std::isfinite(x) || noise.chance(500) ? x : 40.0;
       loop.frame.speed[j] = noise.chance(3) ? 15.0 : -1.0;
+      loop.frame.angle[j] += i % 2 == 0 ? 0.001 : -0.001;
     }
     const SensorFrame sound = loop.frame;
     if (noise.chance(700)) loop.frame.rate.x = noise.number();

@@ -43,6 +43,7 @@ TEST(Latch, RampDownDampsLowersAndEndsWithinItsTime) {
   int lowering = 0;
   double before = 0.0;
   for (int i = 0; i < 400; ++i) {
+    loop.frame.angle[0] += i % 2 == 0 ? 0.001 : -0.001;  // a joint that moves has an angle that changes
     const DriveCommand command = loop.tick();
     if (loop.gate.phase() == Phase::damping) {
       ++damping;
