@@ -155,7 +155,7 @@ class WallMover final : public Mover {
     drain();
     return last_.cycle;
   }
-  // The policy is the cycle's only while it walks; between walks nothing in a tick looks at it.
+  // The policy is the cycle's only while it walks and settles; parked, nothing in a tick looks at it.
   void load(const Parameters& parameters) override { cycle_.load(parameters); }
   void change_policy(const v1::Policy& policy) override { cycle_.change_policy(policy); }
   // Real drives, and a simulated robot in a process of its own, keep their state themselves; the thermal

@@ -1,5 +1,5 @@
-// One line a promise: name, value, bar, holds or short. Only promises.sh shows the judgement; nothing here is
-// asserted.
+// One line a promise: name, value, bar, holds or short or not measured. Only promises.sh shows the judgement;
+// nothing here is asserted.
 #pragma once
 
 #include <cstdio>
@@ -14,6 +14,13 @@ inline bool promise(const std::string& name, const std::string& value, const std
               holds ? "holds" : "short");
   std::fflush(stdout);
   return holds;
+}
+
+/// The bench's own means failed (a tracer that was refused, a host that stalled): nothing is known about the
+/// promise, for better or worse. `why` in words.
+inline void not_measured(const std::string& name, const std::string& why, const std::string& bar) {
+  std::printf("promise\t%s\t%s\t%s\tnot measured\n", name.c_str(), why.c_str(), bar.c_str());
+  std::fflush(stdout);
 }
 
 /// A line beside a promise: measured, without a bar.

@@ -30,6 +30,7 @@ namespace {
 
 constexpr double kWalk_s = 5.0;
 constexpr double kBar_us = 10.0;
+constexpr int kTripped = 2;  // exit status of the traced child
 
 struct Options {
   int walks{2};
@@ -152,7 +153,7 @@ bool counters_work() {
 /// The real cycle thread at wall pace: walks and what lies between, sleep and queues included.
 void measure_counts(const std::string& name, const Options& options) {
   const files::RobotFile robot = shipped_robot(name);
-  const auto cycle = cycle_in_loop(robot, session::Pace::wall);
+  const auto cycle = cycle_in_loop(robot, session::Pace::wall, true);
   counting = Counting::not_yet;
   set_plugin_hook(count_in_cycle_thread);
   const auto mover = session::make_wall_mover(*cycle, {});
@@ -166,11 +167,17 @@ void measure_counts(const std::string& name, const Options& options) {
   counting = Counting::end;
   (void)mover->move(session::Motion::lower, 0, {});
   const std::uint64_t ticks = mover->report().ticks - before;
-  const bool sound = completed && counters_work() && counting == Counting::ended && ticks > 1000;
-  promise(fmt::format("allocations in {} ticks of the cycle thread, {}", ticks, name),
-          fmt::format("{}", counted.allocations), "0", sound && counted.allocations == 0);
-  promise(fmt::format("locks in {} ticks of the cycle thread, {}", ticks, name),
-          fmt::format("{}", counted.locks), "0", sound && counted.locks == 0);
+  std::string why;
+  if (!completed) why = std::string("the robot tripped: ") + safety::name(cycle->result().trip.cause);
+  if (!counters_work()) why = "the counters do not count";
+  if (counting != Counting::ended || ticks <= 1000) why = "the cycle thread was not seen to count its walks";
+  const auto say = [&](const std::string& what, std::uint64_t count) {
+    const std::string line = fmt::format("{} in {} ticks of the cycle thread, {}", what, ticks, name);
+    if (!why.empty()) return not_measured(line, why, "0");
+    promise(line, fmt::format("{}", count), "0", count == 0);
+  };
+  say("allocations", counted.allocations);
+  say("locks", counted.locks);
 }
 
 int other_thread() {
@@ -185,25 +192,22 @@ int other_thread() {
 /// In the child: the real cycle thread at wall pace, one walk between two marks.
 void walk_at_wall_pace(const std::string& name) {
   const files::RobotFile robot = shipped_robot(name);
-  const auto cycle = cycle_in_loop(robot, session::Pace::wall);
+  const auto cycle = cycle_in_loop(robot, session::Pace::wall, true);
   const auto mover = session::make_wall_mover(*cycle, {});
   const int thread = other_thread();
-  if (!mover->move(session::Motion::rise, 0, {}).completed) _exit(2);
-  mark_begin(thread);
-  const bool completed = mover->move(session::Motion::walk, kWalk_s, {}).completed;
-  mark_end();
-  _exit(completed ? 0 : 2);
+  session::MotionResult result = mover->move(session::Motion::rise, 0, {});
+  if (result.completed) {
+    mark_begin(thread);
+    result = mover->move(session::Motion::walk, kWalk_s, {});
+    mark_end();
+  }
+  if (!result.completed) fmt::print(stderr, "traced: tripped by {}\n", safety::name(result.trip.cause));
+  _exit(result.completed ? 0 : kTripped);
 }
 
 void measure_calls(const std::string& name) {
   std::string error;
-  Watched watched;
-  // A host that stalls the traced child for longer than the overrun limit trips the gate: not what is
-  // measured.
-  for (int attempt = 0; attempt < 3 && (attempt == 0 || !error.empty()); ++attempt) {
-    error.clear();
-    watched = watch_calls([&name] { walk_at_wall_pace(name); }, error);
-  }
+  const Watched watched = watch_calls([&name] { walk_at_wall_pace(name); }, error);
   long sleeps = 0;
   long others = 0;
   std::string list;
@@ -212,10 +216,11 @@ void measure_calls(const std::string& name) {
     (sleep_or_clock ? sleeps : others) += count;
     list += fmt::format("{}{} {}", list.empty() ? "" : ", ", call_name(number), count);
   }
-  if (!error.empty()) list = error;
-  promise(fmt::format("system calls of the cycle in a walk of {:.0f} s, {}", kWalk_s, name),
-          list.empty() ? "none seen" : list, "only sleep and clock",
-          error.empty() && others == 0 && sleeps > 1000);
+  const std::string line = fmt::format("system calls of the cycle in a walk of {:.0f} s, {}", kWalk_s, name);
+  const std::string bar = "only sleep and clock";
+  if (error.empty() && sleeps <= 1000) error = fmt::format("only {} sleeps were seen", sleeps);
+  if (!error.empty()) return not_measured(line, error, bar);
+  promise(line, list, bar, others == 0);
 }
 
 // Instructions
@@ -279,10 +284,13 @@ void measure_instructions(const std::vector<std::string>& names, const Options& 
   for (const std::string& name : names) {
     const double now = count_instructions(name, self);
     const double last = last_instructions(name);
-    promise(fmt::format("instructions a tick by callgrind, {}", name),
-            now > 0 ? fmt::format("{:.0f}", now) : "callgrind did not run",
-            last > 0 ? fmt::format("<= {:.0f}, the last time", last) : "no last time",
-            now > 0 && last > 0 && std::round(now) <= last);
+    const std::string line = fmt::format("instructions a tick by callgrind, {}", name);
+    const std::string bar = last > 0 ? fmt::format("<= {:.0f}, the last time", last) : "no last time";
+    if (now > 0) {
+      promise(line, fmt::format("{:.0f}", now), bar, last > 0 && std::round(now) <= last);
+    } else {
+      not_measured(line, "callgrind did not run", bar);
+    }
     accepted += fmt::format("{} {:.0f}\n", name, now);
   }
   if (options.accept) std::ofstream(instructions_file()) << accepted;

@@ -82,7 +82,7 @@ int measure(int pairs, double seconds) {
   }
   const std::string name = "wake-up at wall pace against cyclictest, p50";
   if (!error.empty()) {
-    promise(name, error, fmt::format("ratio <= {}", kBar), false);
+    not_measured(name, error, fmt::format("ratio <= {}", kBar));
     return 1;
   }
   const double ratio = percentile(ours, 0.5) / percentile(machines, 0.5);

@@ -37,6 +37,8 @@ class Tracer {
       if (WIFEXITED(status) || WIFSIGNALED(status)) {
         if (thread == child_) {
           watched_.ended_well = WIFEXITED(status) && WEXITSTATUS(status) == 0;
+          watched_.end = WIFEXITED(status) ? "exit status " + std::to_string(WEXITSTATUS(status))
+                                           : "signal " + std::to_string(WTERMSIG(status));
           return watched_;
         }
         continue;
@@ -102,8 +104,7 @@ Watched watch_calls(const std::function<void()>& work, std::string& error) {
   (void)ptrace(PTRACE_SYSCALL, child, nullptr, nullptr);
   Watched watched = Tracer(child).follow();
   if (watched.marks != 2) error = "the traced child was not seen to begin and end its walk";
-  if (!watched.ended_well)
-    error = "the traced child did not end well: its robot tripped, or it could not start";
+  if (!watched.ended_well) error = "the traced child did not end well: " + watched.end;
   return watched;
 }
 

@@ -11,6 +11,7 @@ struct Watched {
   std::map<long, long> calls;  ///< system call number -> how often, in the cycle's thread between the marks
   long marks{0};
   bool ended_well{false};
+  std::string end{"it was lost"};  ///< exit status or signal, in words
 };
 
 /// In the child: thread `mark_here` is called from any thread and is itself seen from outside.

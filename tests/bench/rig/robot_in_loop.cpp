@@ -94,10 +94,15 @@ std::string looped_options(const v1::Robot& robot) {
 
 std::string looped_plugin() { return PASTERN_LOOPED_HAL; }
 
-std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& file, session::Pace pace) {
+std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& file, session::Pace pace,
+                                              bool stalls_pass) {
   v1::Robot robot = file.robot();
   robot.mutable_lane()->set_half_width_m(50);  // where looped frames seem to lead is of no matter
   robot.mutable_lane()->set_length_m(500);
+  if (stalls_pass) {
+    robot.mutable_guard()->set_overrun_s(1e6);
+    robot.mutable_guard()->set_frame_stale_s(1e6);
+  }
   hal::DrivesConfig config;
   config.plugin = looped_plugin();
   for (const v1::Joint& joint : robot.joints()) config.joint_names.push_back(joint.name());

@@ -24,8 +24,10 @@ namespace pastern::bench {
 /// Path of the looped plug-in.
 [[nodiscard]] std::string looped_plugin();
 
-[[nodiscard]] std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& robot,
-                                                            session::Pace pace);
+/// `stalls_pass`: a host that stalls the thread does not trip the gate (no tick counts as late); for what
+/// does not depend on time.
+[[nodiscard]] std::unique_ptr<session::Cycle> cycle_in_loop(const files::RobotFile& robot, session::Pace pace,
+                                                            bool stalls_pass = false);
 
 /// The plug-in's times of the last tick.
 [[nodiscard]] const looped_times& plugin_times();
