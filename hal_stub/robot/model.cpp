@@ -45,7 +45,7 @@ void Model::take_drives(const v1::Robot& robot) {
   figures_.pack = {p.nominal_voltage_v(), p.capacity_ah() * 3600, p.resistance_ohm(), p.idle_power_w()};
 }
 
-std::shared_ptr<const Model> Model::make(const v1::Robot& robot, std::string& error) {
+std::shared_ptr<const Model> Model::make(const v1::Robot& robot, std::string& error, double longest_step_s) {
   const std::shared_ptr<Model> model(new Model);
   model->joint_count_ = robot.joints_size();
   model->name_ = robot.name();
@@ -66,7 +66,7 @@ std::shared_ptr<const Model> Model::make(const v1::Robot& robot, std::string& er
   for (const auto& joint : robot.joints()) model->mass_kg_ += joint.link().mass_kg();
   model->sensors_ = robot.sensors();
   model->period_s_ = 1 / robot.cycle_hz();
-  model->substeps_ = std::max(1, static_cast<int>(std::ceil(model->period_s_ / 0.001 - 1e-9)));
+  model->substeps_ = std::max(1, static_cast<int>(std::ceil(model->period_s_ / longest_step_s - 1e-9)));
   model->drive_timeout_s_ = robot.guard().drive_timeout_s();
   model->rise_s_ = robot.rise_s() + robot.settle_s();
   model->stance_height_m_ = reach_below(tree, model->stance_.data(), {0, 0, -1});

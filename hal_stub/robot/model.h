@@ -13,8 +13,10 @@ namespace pastern::stub {
 class Model {
  public:
   /// Null with one line in `error` when this simulated robot cannot be it: more than 8 limbs on the trunk, or
-  /// more than 8 joints in one. `robot` must have been checked (proto/files/robot_file.h).
-  [[nodiscard]] static std::shared_ptr<const Model> make(const v1::Robot& robot, std::string& error);
+  /// more than 8 joints in one. `robot` must have been checked (proto/files/robot_file.h). No step is longer
+  /// than `longest_step_s`, above 0.
+  [[nodiscard]] static std::shared_ptr<const Model> make(const v1::Robot& robot, std::string& error,
+                                                         double longest_step_s = 0.001);
 
   [[nodiscard]] const Figures<double>& figures() const { return figures_; }
   [[nodiscard]] int joint_count() const { return joint_count_; }
@@ -32,7 +34,7 @@ class Model {
   [[nodiscard]] const std::vector<double>& damping() const { return damping_; }  ///< of the drives, N m s/rad
   [[nodiscard]] const std::vector<double>& coulomb() const { return coulomb_; }  ///< N m
   [[nodiscard]] double period_s() const { return period_s_; }                    ///< of the cycle
-  [[nodiscard]] int substeps() const { return substeps_; }  ///< steps of at most 1 ms in a period
+  [[nodiscard]] int substeps() const { return substeps_; }  ///< steps of at most the longest in a period
   [[nodiscard]] double drive_timeout_s() const { return drive_timeout_s_; }
   [[nodiscard]] double rise_s() const { return rise_s_; }  ///< from lying until a walk may begin
   [[nodiscard]] double mass_kg() const { return mass_kg_; }

@@ -38,6 +38,14 @@ TrunkFigures<double> loaded_trunk(const LinkFigures<double>& trunk, double load,
 }
 
 constexpr double kShortestRiser = 0.004;  // m: a foot at 2 m/s is on it for two steps
+// m: no riser is more curved than this ball, so that a foot touches it in one place. At its ends 3 u^2 - 2
+// u^3 of a rise h over a length l has the curvature 6 h / l^2.
+constexpr double kRoundestBall = 0.03;
+
+double riser_length(double height) {
+  const double h = std::fabs(height);
+  return std::max({h, std::sqrt(6 * h * kRoundestBall), kShortestRiser});
+}
 
 /// Waves and steps; the highest they can reach is the sum of all that rises.
 Relief<double> relief_of(const GroundShape& shape) {
@@ -49,7 +57,7 @@ Relief<double> relief_of(const GroundShape& shape) {
   relief.riser_count = std::min(shape.step_count, kMaxRisers);
   for (std::size_t i = 0; i < static_cast<std::size_t>(relief.riser_count); ++i) {
     const GroundStep& step = shape.step[i];
-    relief.riser[i] = {step.at_m, step.height_m, 1 / std::max(std::fabs(step.height_m), kShortestRiser)};
+    relief.riser[i] = {step.at_m, step.height_m, 1 / riser_length(step.height_m)};
     relief.top += std::max(step.height_m, 0.0);
   }
   return relief;

@@ -63,7 +63,8 @@ const std::shared_ptr<const packed::WalkSettings>& WalkSetting::for_lanes() cons
 }
 
 std::shared_ptr<const WalkSetting> WalkSetting::make(const v1::Robot& robot, const v1::Policy& policy,
-                                                     double walk_s, std::string& error) {
+                                                     double walk_s, std::string& error,
+                                                     double longest_step_s) {
   const std::shared_ptr<WalkSetting> setting(new WalkSetting);
   Parts& parts = *setting->parts_;
   parts.for_lanes = packed::walk_settings(robot, policy, walk_s, error);

@@ -23,7 +23,8 @@ class WalkSetting {
   /// Both checked (proto/files). Null with a line in `error` when the simulated robot cannot be this robot.
   [[nodiscard]] static std::shared_ptr<const WalkSetting> make(const v1::Robot& robot,
                                                                const v1::Policy& policy, double walk_s,
-                                                               std::string& error);
+                                                               std::string& error,
+                                                               double longest_step_s = 0.001);
   ~WalkSetting();
   [[nodiscard]] const stub::Model& model() const;
   /// The same for walks by lanes.
