@@ -74,9 +74,9 @@ void take_push(const WalkSettings& settings, const stub::Site& site, OnMark& rob
 }  // namespace
 
 std::shared_ptr<const WalkSettings> walk_settings(const v1::Robot& robot, const v1::Policy& policy,
-                                                  double walk_s, std::string& error) {
+                                                  double walk_s, std::string& error, double longest_step_s) {
   auto made = std::make_shared<WalkSettings>();
-  made->model = stub::Model::make(robot, error);
+  made->model = stub::Model::make(robot, error, longest_step_s);
   if (!made->model) return nullptr;
   const stub::Model& model = *made->model;
   made->shape = policy::plain_shape(policy, robot);

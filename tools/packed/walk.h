@@ -61,7 +61,8 @@ struct WalkSettings {
 /// this robot.
 [[nodiscard]] std::shared_ptr<const WalkSettings> walk_settings(const v1::Robot& robot,
                                                                 const v1::Policy& policy, double walk_s,
-                                                                std::string& error);
+                                                                std::string& error,
+                                                                double longest_step_s = 0.001);
 
 /// A robot on its mark at a site. Faults of the site have no effect here: walks by lanes have none.
 struct OnMark {

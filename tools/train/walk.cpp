@@ -67,7 +67,7 @@ std::shared_ptr<const WalkSetting> WalkSetting::make(const v1::Robot& robot, con
                                                      double longest_step_s) {
   const std::shared_ptr<WalkSetting> setting(new WalkSetting);
   Parts& parts = *setting->parts_;
-  parts.for_lanes = packed::walk_settings(robot, policy, walk_s, error);
+  parts.for_lanes = packed::walk_settings(robot, policy, walk_s, error, longest_step_s);
   if (!parts.for_lanes) return nullptr;
   parts.model = parts.for_lanes->model;
   parts.shape = policy::shape_of<double>(policy, robot);
