@@ -53,9 +53,10 @@ Look seen(const std::vector<Score>& scores, double duration_s) {
   const auto n = static_cast<double>(std::max<std::size_t>(1, scores.size()));
   for (const Score& score : scores) {
     look.mean_return += total(score) / n;
-    look.falls += (score.fell ? 1 : 0) / n;
+    look.falls += score.fell ? 1 : 0;
     look.speed_m_per_s += score.distance_m / duration_s / n;
   }
+  look.falls /= n;  // once, so that 10 of 1 000 are 1 % and no more
   double square = 0;
   for (const Score& score : scores)
     square += (total(score) - look.mean_return) * (total(score) - look.mean_return);
