@@ -9,7 +9,7 @@ namespace {
 
 bool has(InstructionSet set) {
   switch (set) {
-#if defined(__x86_64__)
+#if defined(__x86_64__) && !defined(PASTERN_LANES_PLAIN_ONLY)
     case InstructionSet::plain:
       return true;
     case InstructionSet::avx2:

@@ -9,7 +9,7 @@
 #include <vector>
 
 /// f(name) for each set that is compiled in; the names are also namespaces.
-#if defined(__x86_64__)
+#if defined(__x86_64__) && !defined(PASTERN_LANES_PLAIN_ONLY)
 #define PASTERN_LANES_EACH_SET(f) f(plain) f(avx2) f(avx512)
 #elif defined(__aarch64__)
 #define PASTERN_LANES_EACH_SET(f) f(neon)

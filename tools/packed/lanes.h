@@ -7,7 +7,7 @@
 
 #include "tools/packed/registers.h"
 
-#define PASTERN_LANES_FRIEND [[gnu::always_inline]] friend
+#define PASTERN_LANES_FRIEND PASTERN_LANES_ALWAYS friend
 
 namespace pastern::packed::PASTERN_LANES_SET {
 
@@ -23,7 +23,7 @@ struct Mask {
   Bits v;
 
   /// Lane i has bit i.
-  [[gnu::always_inline]] static Mask of(unsigned bits) noexcept {
+  PASTERN_LANES_ALWAYS static Mask of(unsigned bits) noexcept {
 #if PASTERN_LANES_BITS
     return {static_cast<Bits>(bits)};
 #else
@@ -39,7 +39,7 @@ struct Mask {
     return sign_bits<T, N>(a.v);
 #endif
   }
-  [[gnu::always_inline]] bool operator[](int lane) const noexcept {
+  PASTERN_LANES_ALWAYS bool operator[](int lane) const noexcept {
 #if PASTERN_LANES_BITS
     return ((unsigned{v} >> unsigned(lane)) & 1U) != 0;
 #else
@@ -75,32 +75,31 @@ class Lanes {
 
   Lanes() = default;
   /// The same in all lanes; a Constant mixes with lanes as it is, any other number when asked.
-  [[gnu::always_inline]] Lanes(T a) noexcept : v(a - Vector{}) {}  // NOLINT(google-explicit-constructor)
+  PASTERN_LANES_ALWAYS Lanes(T a) noexcept : v(a - Vector{}) {}  // NOLINT(google-explicit-constructor)
   template <class A>
-  requires(std::is_arithmetic_v<A> && !std::is_same_v<A, T>)
-      [[gnu::always_inline]] explicit Lanes(A a) noexcept
+  requires(std::is_arithmetic_v<A> && !std::is_same_v<A, T>) PASTERN_LANES_ALWAYS explicit Lanes(A a) noexcept
       : Lanes(static_cast<T>(a)) {}
-  [[gnu::always_inline]] explicit Lanes(const Vector& a) noexcept : v(a) {}
+  PASTERN_LANES_ALWAYS explicit Lanes(const Vector& a) noexcept : v(a) {}
 
   /// Lane by lane from memory and to it.
-  [[gnu::always_inline]] static Lanes of(const std::array<T, N>& a) noexcept {
+  PASTERN_LANES_ALWAYS static Lanes of(const std::array<T, N>& a) noexcept {
     return Lanes(std::bit_cast<Vector>(a));
   }
   PASTERN_LANES_FRIEND std::array<T, N> each_of(const Lanes& a) noexcept {
     return std::bit_cast<std::array<T, N>>(a.v);
   }
-  [[gnu::always_inline]] T operator[](int lane) const noexcept { return v[lane]; }
-  [[gnu::always_inline]] void put(int lane, T a) noexcept { v[lane] = a; }
+  PASTERN_LANES_ALWAYS T operator[](int lane) const noexcept { return v[lane]; }
+  PASTERN_LANES_ALWAYS void put(int lane, T a) noexcept { v[lane] = a; }
 
   PASTERN_LANES_FRIEND Lanes operator+(const Lanes& a, const Lanes& b) noexcept { return Lanes(a.v + b.v); }
   PASTERN_LANES_FRIEND Lanes operator-(const Lanes& a, const Lanes& b) noexcept { return Lanes(a.v - b.v); }
   PASTERN_LANES_FRIEND Lanes operator*(const Lanes& a, const Lanes& b) noexcept { return Lanes(a.v * b.v); }
   PASTERN_LANES_FRIEND Lanes operator/(const Lanes& a, const Lanes& b) noexcept { return Lanes(a.v / b.v); }
   PASTERN_LANES_FRIEND Lanes operator-(const Lanes& a) noexcept { return Lanes(-a.v); }
-  [[gnu::always_inline]] Lanes& operator+=(const Lanes& a) noexcept { return *this = *this + a; }
-  [[gnu::always_inline]] Lanes& operator-=(const Lanes& a) noexcept { return *this = *this - a; }
-  [[gnu::always_inline]] Lanes& operator*=(const Lanes& a) noexcept { return *this = *this * a; }
-  [[gnu::always_inline]] Lanes& operator/=(const Lanes& a) noexcept { return *this = *this / a; }
+  PASTERN_LANES_ALWAYS Lanes& operator+=(const Lanes& a) noexcept { return *this = *this + a; }
+  PASTERN_LANES_ALWAYS Lanes& operator-=(const Lanes& a) noexcept { return *this = *this - a; }
+  PASTERN_LANES_ALWAYS Lanes& operator*=(const Lanes& a) noexcept { return *this = *this * a; }
+  PASTERN_LANES_ALWAYS Lanes& operator/=(const Lanes& a) noexcept { return *this = *this / a; }
 
 #if PASTERN_LANES_BITS
   PASTERN_LANES_FRIEND Yes operator<(const Lanes& a, const Lanes& b) noexcept {

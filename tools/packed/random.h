@@ -14,15 +14,15 @@ struct Words {
   Vector v;
 
   Words() = default;
-  [[gnu::always_inline]] Words(std::uint32_t a) noexcept
+  PASTERN_LANES_ALWAYS Words(std::uint32_t a) noexcept
       : v(a + Vector{}) {}  // NOLINT(google-explicit-constructor)
-  [[gnu::always_inline]] explicit Words(const Vector& a) noexcept : v(a) {}
+  PASTERN_LANES_ALWAYS explicit Words(const Vector& a) noexcept : v(a) {}
   /// Lane by lane from memory.
-  [[gnu::always_inline]] static Words of(const std::array<std::uint32_t, N>& a) noexcept {
+  PASTERN_LANES_ALWAYS static Words of(const std::array<std::uint32_t, N>& a) noexcept {
     return Words(std::bit_cast<Vector>(a));
   }
-  [[gnu::always_inline]] std::uint32_t operator[](int lane) const noexcept { return v[lane]; }
-  [[gnu::always_inline]] void put(int lane, std::uint32_t a) noexcept { v[lane] = a; }
+  PASTERN_LANES_ALWAYS std::uint32_t operator[](int lane) const noexcept { return v[lane]; }
+  PASTERN_LANES_ALWAYS void put(int lane, std::uint32_t a) noexcept { v[lane] = a; }
 
   PASTERN_LANES_FRIEND Words operator+(const Words& a, const Words& b) noexcept { return Words(a.v + b.v); }
   PASTERN_LANES_FRIEND Words operator^(const Words& a, const Words& b) noexcept { return Words(a.v ^ b.v); }

@@ -20,7 +20,13 @@
 #include <arm_neon.h>
 #endif
 
-#define PASTERN_LANES_INLINE [[gnu::always_inline, nodiscard]] inline
+// Inlined always, so that lanes stay in registers. A sanitizer would instrument such functions for minutes.
+#if defined(__SANITIZE_ADDRESS__) || defined(__SANITIZE_THREAD__)
+#define PASTERN_LANES_ALWAYS
+#else
+#define PASTERN_LANES_ALWAYS [[gnu::always_inline]]
+#endif
+#define PASTERN_LANES_INLINE PASTERN_LANES_ALWAYS [[nodiscard]] inline
 
 namespace pastern::packed::PASTERN_LANES_SET {
 
