@@ -3,6 +3,7 @@
 #pragma once
 
 #include <array>
+#include <cmath>
 
 #include "hal_stub/dynamics/motion.h"
 #include "safety/units.h"
@@ -38,6 +39,10 @@ struct DriveFigures {
   C to_housing{0};  ///< W/K
   C to_air{0};
   C timeout_damping{0};  ///< N m s/rad, what the drive does by itself when commands stop
+  // Limits beyond the line; looked at only where the site's drives are not plain:
+  C most_torque{0};   ///< N m, of the peak and what the current limit lets through the lower one
+  C hot{1e6};         ///< deg C: no torque any more
+  C per_derating{1};  ///< 1/K, one over the span from warm to hot
 };
 
 /// Gear teeth that meet: stiff enough not to be seen, damped enough not to ring.
@@ -57,6 +62,10 @@ struct DriveSite {
   PerDrive<S> coulomb;   ///< N m
   PerDrive<S> half_gap;  ///< rad
   S ambient;             ///< deg C
+  PerDrive<S> loss{};    ///< part of the drive's torque that the gear loses against the motion
+  PerDrive<S> stick{};   ///< N m, to break away beyond Coulomb; 0: no grip at rest
+  /// Nothing but what stands above `loss`, no limits of drives' current and heat, none of the pack's current.
+  bool plain{true};
 };
 
 template <class S>
@@ -66,26 +75,89 @@ struct DriveState {
   PerDrive<S> rotor_speed{};
   PerDrive<S> winding{};  ///< deg C
   PerDrive<S> housing{};
+  PerDrive<S> wound{};  ///< how far a gear that sticks is drawn, -1..1 of its breaking away
 };
 
 /// Torque that the drive makes of a wanted one: the line from stall to no-load speed, moved by the supply,
 /// steeper when the winding is hot. Braking is not limited by the line but by the peak.
 template <class S>
 inline S made_torque(const DriveFigures<Constant<S>>& drive, const S& wanted, const S& speed,
-                     const S& supply_ratio, const S& winding) noexcept {
+                     const S& supply_ratio, const S& winding, const S& cap) noexcept {
   using C = Constant<S>;
   const S relative = speed * (C(1) / drive.no_load_speed);
   const S warm = C(drive.peak_torque) * (C(1) / copper_ratio(winding));
-  const S cap(drive.peak_torque);
   const S up = max(min((supply_ratio - relative) * warm, cap), S(0));
   const S down = max(min((supply_ratio + relative) * warm, cap), S(0));
   return select(supply_ratio > S(C(0.25)), max(min(wanted, up), S(0) - down), S(0));
+}
+
+/// Its most torque is the peak.
+template <class S>
+inline S made_torque(const DriveFigures<Constant<S>>& drive, const S& wanted, const S& speed,
+                     const S& supply_ratio, const S& winding) noexcept {
+  return made_torque(drive, wanted, speed, supply_ratio, winding, S(drive.peak_torque));
+}
+
+/// Most torque that a drive's electronics let through: that of the current limit, falling linearly to nothing
+/// from the warm to the hot winding temperature (common practice of servo drives, no source).
+template <class S>
+inline S let_through(const DriveFigures<Constant<S>>& drive, const S& winding) noexcept {
+  const S cool = (S(drive.hot) - winding) * drive.per_derating;
+  return max(min(cool, S(Constant<S>(1))), S(0)) * drive.most_torque;
 }
 
 /// Gear friction as a viscosity: viscous and Coulomb, the latter regularised.
 template <class S>
 inline S gear_viscosity(const S& damping, const S& coulomb, const S& speed) noexcept {
   return damping + coulomb * (Constant<S>(1) / max(abs(speed), S(Constant<S>(kCoulombSpeed))));
+}
+
+// Gears that stick. Before it breaks away a gear yields like a spring that is at its end after kStickAngle:
+// an elastic-plastic element (Prandtl), so that a joint at rest holds and does not creep. What it takes to
+// break away fades with speed (Stribeck). The angle and speed are ours, of the size told of greased gears.
+inline constexpr double kStickAngle = 0.001;  ///< rad
+inline constexpr double kStickSpeed = 0.1;    ///< rad/s, half of the excess is gone
+inline constexpr double kStickDamping =
+    0.01;  ///< s, of the spring: damping over stiffness; no more than the friction
+
+/// Friction of a gear in a step: torque = -push - viscosity * speed at the end of the step.
+template <class S>
+struct GearGrip {
+  S push;
+  S viscosity;
+};
+
+template <class S>
+struct GearFriction {
+  S damping;  ///< N m s/rad
+  S sliding;  ///< N m, Coulomb and what the gear loses of the torque
+  S stick;    ///< N m, beyond that to break away
+};
+
+template <class S>
+inline GearGrip<S> gear_grip(const GearFriction<S>& gear, const S& speed, const S& wound,
+                             Constant<S> dt) noexcept {
+  using C = Constant<S>;
+  const S one(C(1));
+  const S fast = speed * C(1 / kStickSpeed);
+  const S level = gear.sliding + gear.stick * (one / (one + fast * fast));
+  const S drawn = wound + speed * (dt * C(1 / kStickAngle));
+  const auto holds = abs(drawn) < one;
+  const S calm = min(S(C(kStickDamping / kStickAngle)), one / max(abs(speed), S(C(1e-3))));
+  const S along = level * (dt * C(1 / kStickAngle) + calm);
+  const S slides = level * max(min(drawn, one), S(0) - one);
+  const auto sticks = gear.stick > S(0);
+  const S held = gear.damping + select(holds, along, S(0));
+  return {select(sticks, select(holds, level * wound, slides), S(0)),
+          select(sticks, held, gear_viscosity(gear.damping, gear.sliding, speed))};
+}
+
+/// How far it is drawn after a step that ended with `speed`.
+template <class S>
+inline S wound_after(const S& wound, const S& speed, Constant<S> dt) noexcept {
+  using C = Constant<S>;
+  const S one(C(1));
+  return max(min(wound + speed * (dt * C(1 / kStickAngle)), one), S(0) - one);
 }
 
 /// What couples a rotor to its joint in a step; kept to move the rotor afterwards.
@@ -142,10 +214,11 @@ inline void heat(const DriveFigures<Constant<S>>& drive, const S& loss, const S&
 
 template <class C>
 struct PackFigures {
-  C nominal{0};      ///< V
-  C capacity_as{0};  ///< A s
-  C resistance{0};   ///< ohm
-  C idle{0};         ///< W
+  C nominal{0};         ///< V
+  C capacity_as{0};     ///< A s
+  C resistance{0};      ///< ohm
+  C idle{0};            ///< W
+  C most_current{1e9};  ///< A, drives are held back beyond
 };
 
 template <class S>
@@ -159,6 +232,7 @@ struct PackState {
   S charge{};   ///< 0..1
   S voltage{};  ///< V at the terminals
   S current{};  ///< A, positive out of the pack
+  S share{1};   ///< of the wanted torque that the pack's current limit leaves to every drive
 };
 
 /// Relative open-circuit voltage over charge above 5 %: the polynomial of a lithium-ion cell (Chen and
@@ -188,6 +262,24 @@ inline void draw(const PackFigures<Constant<S>>& pack, const PackSite<S>& site, 
   state.current = (open - root) * (C(0.5) / site.resistance);
   state.voltage = open - state.current * site.resistance;
   state.charge = max(min(state.charge - state.current * (dt / pack.capacity_as), S(C(1))), S(0));
+}
+
+inline constexpr double kHoldBackSeconds = 0.005;  ///< of a pack's current limiter; ours
+
+/// The pack's current limit: all drives give the same lower share of what they are told until the current is
+/// within it (common practice, no source).
+template <class S>
+inline void hold_back(const PackFigures<Constant<S>>& pack, Constant<S> dt, PackState<S>& state) noexcept {
+  using C = Constant<S>;
+  const S current = max(state.current, S(C(1e-3)));
+  const S wanted = min(state.share * pack.most_current * (S(C(1)) / current), S(C(1)));
+  state.share = state.share + (wanted - state.share) * (dt * (C(1) / (dt + C(kHoldBackSeconds))));
+}
+
+/// Resistance of a pack at `celsius` over that at 25 deg C: a straight line of its logarithm through `ratio`
+/// at -20 deg C (3 to 5 is told of lithium-ion cells; weak source), not below 1.
+inline double cold_resistance(double ratio, double celsius) noexcept {
+  return ratio > 1 && celsius < 25 ? std::pow(ratio, (25 - celsius) / 45) : 1;
 }
 
 }  // namespace pastern::stub

@@ -90,9 +90,13 @@ inline void come_back_limb(const LegFigures<Constant<S>>& limb, LegWork<S>& work
 
 template <class S>
 inline void pass_limb(const LegFigures<Constant<S>>& limb, const PerChain<S>& angle, const PerChain<S>& speed,
-                      const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total) noexcept {
+                      const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total,
+                      const PerChain<S>* ratio) noexcept {
   std::array<Heap<S>, kMaxLimb> heap;
   go_out_limb(limb, angle, speed, trunk, work, heap);
+  for (std::size_t i = 0; ratio != nullptr && i < static_cast<std::size_t>(limb.joint_count); ++i) {
+    weigh((*ratio)[i], heap[i]);
+  }
   come_back_limb(limb, work, heap, total);
 }
 

@@ -33,6 +33,13 @@ inline const S& grip_of(const Grip<S>& grip, std::size_t l, std::size_t p) noexc
   return p < kPointsPerLeg ? grip.leg[l][p] : grip.more[l][p - kPointsPerLeg];
 }
 
+/// Where a load is that hangs from the trunk (hanging.h).
+template <class S>
+struct Swing {
+  Vec3<S> place{S(0), S(0), S(0)};     ///< from the trunk's origin, world axes, m
+  Vec3<S> velocity{S(0), S(0), S(0)};  ///< world axes, m/s
+};
+
 template <class S>
 struct BodyState {
   Quat<S> attitude{S(1), S(0), S(0), S(0)};  ///< trunk to world
@@ -42,6 +49,7 @@ struct BodyState {
   std::array<PerChain<S>, kMaxTreeLegs> angle{};
   std::array<PerChain<S>, kMaxTreeLegs> speed{};
   Grip<S> grip{};
+  Swing<S> swing{};
 };
 
 /// Of one leg in this step, trunk axes.
@@ -183,6 +191,17 @@ inline Heap<S> heap_of(const M& mass, const Vec3<S>& centre, const Sym3<S>& iner
   return heap;
 }
 
+/// A link `ratio` times as heavy, of the same shape.
+template <class S>
+inline void weigh(const S& ratio, Heap<S>& heap) noexcept {
+  heap.mass = heap.mass * ratio;
+  heap.moment = heap.moment * ratio;
+  heap.force = heap.force * ratio;
+  heap.torque = heap.torque * ratio;
+  auto& i = heap.inertia;
+  i = {i.xx * ratio, i.yy * ratio, i.zz * ratio, i.xy * ratio, i.xz * ratio, i.yz * ratio};
+}
+
 /// Motion of a frame along the chain, with the trunk's acceleration set to minus gravity.
 template <class S>
 struct Frame {
@@ -243,18 +262,24 @@ inline void come_back(LegWork<S>& work, std::array<Heap<S>, K>& heap, Heap<S>& t
   }
 }
 
-template <int K, class S>
+/// With kWeighed the links are `ratio` times as heavy as in their figures.
+template <int K, bool kWeighed = false, class S>
 inline void pass_leg(const LegFigures<Constant<S>>& leg, const PerChain<S>& angle, const PerChain<S>& speed,
-                     const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total) noexcept {
+                     const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total,
+                     const PerChain<S>* ratio = nullptr) noexcept {
   std::array<Heap<S>, K> heap{};
   go_out<K>(leg, angle, speed, trunk, work, heap);
+  if constexpr (kWeighed) {
+    for (std::size_t i = 0; i < K; ++i) weigh((*ratio)[i], heap[i]);
+  }
   come_back<K>(work, heap, total);
 }
 
 /// A limb of the general kind (limb.h).
 template <class S>
 inline void pass_limb(const LegFigures<Constant<S>>& limb, const PerChain<S>& angle, const PerChain<S>& speed,
-                      const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total) noexcept;
+                      const Frame<S>& trunk, LegWork<S>& work, Heap<S>& total,
+                      const PerChain<S>* ratio) noexcept;
 
 /// Runs `f.template operator()<K>()` for the number of joints of a leg: loops of known length.
 template <class F>
@@ -321,12 +346,14 @@ inline void spread_total(const Heap<S>& total, Work<S>& work) noexcept {
   work.force[5] = zero - total.force.z;
 }
 
-/// A trunk whose figures vary with the load it carries.
+/// A trunk whose figures vary with the load it carries, and links that are not as heavy as their figures.
 template <class S>
 struct TrunkFigures {
   S mass;
   Vec3<S> centre;
-  Sym3<S> inertia;  ///< about its centre of mass
+  Sym3<S> inertia;                                     ///< about its centre of mass
+  bool weighed{false};                                 ///< link_ratio holds
+  std::array<PerChain<S>, kMaxTreeLegs> link_ratio{};  ///< times mass and inertia of each limb's links
 };
 
 /// Fills `work` for this state: inertia, coupling, bias with gravity. Loads and contacts are added
@@ -350,8 +377,11 @@ inline void begin_step(const Tree<Constant<S>>& tree, const TrunkFigures<S>& tru
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
     for_limb(tree.leg[n], [&]<int K>() {
+      const PerChain<S>* ratio = trunk.weighed ? &trunk.link_ratio[n] : nullptr;
       if constexpr (K == 0) {
-        pass_limb(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total);
+        pass_limb(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total, ratio);
+      } else if (ratio != nullptr) {
+        pass_leg<K, true>(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total, ratio);
       } else {
         pass_leg<K>(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total);
       }

@@ -4,6 +4,7 @@
 #pragma once
 
 #include "hal_stub/dynamics/contact.h"
+#include "hal_stub/dynamics/hanging.h"
 #include "hal_stub/dynamics/solve.h"
 
 namespace pastern::stub {
@@ -14,6 +15,8 @@ struct Surroundings {
   Ground<S> ground;
   TrunkFigures<S> trunk{};
   Vec3<S> push{S(0), S(0), S(0)};  ///< force on the trunk's centre of mass, world axes, N
+  Hanging<S> hanging{};
+  bool hangs{false};  ///< a load does
 };
 
 /// Torques and end stops of a chain of hinges.
@@ -227,10 +230,12 @@ inline void step_body(const Tree<Constant<S>>& tree, const Surroundings<S>& arou
   begin_step(tree, around.trunk, state, work);
   add_loads(tree, state, loads, dt, work);
   add_push(around, work);
+  if (around.hangs) hang(around.hanging, dt, state, work);
   const Below<S> below = below_of(around.ground, work.body, state.position);
   touch_ground<true>(tree, around.ground, below, dt, state, work);
   solve(tree, work);
   touch_ground<false>(tree, around.ground, below, dt, state, work);
+  if (around.hangs) swing(around.hanging, dt, work, state);
   integrate(tree, dt, work, state);
 }
 

@@ -21,7 +21,7 @@ struct Stepper::Impl {
   using Step = void (*)(Impl&, const SiteFigures<double>&, const Told<double>&, double, RobotState<double>&,
                         RobotWork<double>&) noexcept;
   Step step{nullptr};
-  Step on_plain{nullptr};  ///< ground; the fast form of nearly all sites
+  Step on_plain{nullptr};  ///< sites; the fast form of nearly all
   Step on_any{nullptr};
 
   template <int K, bool kPlain>
@@ -77,7 +77,7 @@ Stepper& Stepper::operator=(Stepper&& other) noexcept = default;
 
 void Stepper::take_site(const SiteFigures<double>& site) noexcept {
   if (is_four_alike(impl_->robot.figures.tree)) pack_site(site, impl_->robot.four);
-  impl_->step = site.around.ground.plain ? impl_->on_plain : impl_->on_any;
+  impl_->step = is_plain(site) ? impl_->on_plain : impl_->on_any;
 }
 
 void Stepper::step(const SiteFigures<double>& site, const Told<double>& told, double dt,

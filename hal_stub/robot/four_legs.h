@@ -105,6 +105,9 @@ inline void pack_figures(const Figures<double>& from, FourLegs& to) noexcept {
     d.to_housing = quad_of([&](std::size_t l) { return drive(l).to_housing; });
     d.to_air = quad_of([&](std::size_t l) { return drive(l).to_air; });
     d.timeout_damping = quad_of([&](std::size_t l) { return drive(l).timeout_damping; });
+    d.most_torque = quad_of([&](std::size_t l) { return drive(l).most_torque; });
+    d.hot = quad_of([&](std::size_t l) { return drive(l).hot; });
+    d.per_derating = quad_of([&](std::size_t l) { return drive(l).per_derating; });
   }
 }
 
@@ -112,19 +115,27 @@ inline void pack_figures(const Figures<double>& from, FourLegs& to) noexcept {
 inline void pack_site(const SiteFigures<double>& from, FourLegs& to) noexcept {
   to.site.around.ground = spread_ground<Quad>(from.around.ground);
   to.site.drives.ambient = from.drives.ambient;
+  to.site.drives.plain = from.drives.plain;
+  to.site.around.trunk.weighed = from.around.trunk.weighed;
   for (std::size_t i = 0; i < static_cast<std::size_t>(to.figures.tree.leg[0].joint_count); ++i) {
     to.site.drives.strength[i] = gathered(from.drives.strength, to.order[i]);
     to.site.drives.damping[i] = gathered(from.drives.damping, to.order[i]);
     to.site.drives.coulomb[i] = gathered(from.drives.coulomb, to.order[i]);
     to.site.drives.half_gap[i] = gathered(from.drives.half_gap, to.order[i]);
+    to.site.drives.loss[i] = gathered(from.drives.loss, to.order[i]);
+    to.site.drives.stick[i] = gathered(from.drives.stick, to.order[i]);
+    to.site.around.trunk.link_ratio[0][i] =
+        quad_of([&](std::size_t l) { return from.around.trunk.link_ratio[l][i]; });
   }
 }
 
+template <bool kPlain>
 inline void take_in(const FourLegs& four, const Told<double>& told, const RobotState<double>& state,
                     FourWork& side) noexcept {
   auto& body = side.state.body;
   body.rate = spread<Quad>(state.body.rate);
   side.state.pack.voltage = state.pack.voltage;
+  if constexpr (!kPlain) side.state.pack.share = state.pack.share;
   side.told.on = told.on;
   side.told.damping = told.damping;
   for (std::size_t i = 0; i < static_cast<std::size_t>(four.figures.tree.leg[0].joint_count); ++i) {
@@ -136,6 +147,7 @@ inline void take_in(const FourLegs& four, const Told<double>& told, const RobotS
     d.rotor_speed[i] = gathered(state.drives.rotor_speed, order);
     d.winding[i] = gathered(state.drives.winding, order);
     d.housing[i] = gathered(state.drives.housing, order);
+    if constexpr (!kPlain) d.wound[i] = gathered(state.drives.wound, order);
     side.told.wanted[i] = gathered(told.wanted, order);
     side.told.forced[i] = gathered(told.forced, order);
   }
@@ -144,6 +156,7 @@ inline void take_in(const FourLegs& four, const Told<double>& told, const RobotS
   }
 }
 
+template <bool kPlain>
 inline void give_back(const FourLegs& four, const FourWork& side, RobotState<double>& state) noexcept {
   const auto& body = side.state.body;
   for (std::size_t i = 0; i < static_cast<std::size_t>(four.figures.tree.leg[0].joint_count); ++i) {
@@ -158,6 +171,7 @@ inline void give_back(const FourLegs& four, const FourWork& side, RobotState<dou
     spread_to(d.rotor_speed[i], order, state.drives.rotor_speed);
     spread_to(d.winding[i], order, state.drives.winding);
     spread_to(d.housing[i], order, state.drives.housing);
+    if constexpr (!kPlain) spread_to(d.wound[i], order, state.drives.wound);
   }
   for (std::size_t p = 0; p < kPointsPerLeg; ++p) {
     for (std::size_t l = 0; l < kFour; ++l) state.body.grip.leg[l][p] = body.grip.leg[0][p].v[l];
@@ -183,7 +197,7 @@ struct FourLegged {
 };
 
 /// Begins the step: the legs' blocks side by side, the trunk's in double.
-template <int K>
+template <int K, bool kPlain>
 inline void begin_four(FourLegged& robot, const SiteFigures<double>& site, const RobotState<double>& state,
                        Work<double>& work) noexcept {
   FourWork& side = robot.side;
@@ -204,8 +218,14 @@ inline void begin_four(FourLegged& robot, const SiteFigures<double>& site, const
   auto& legs = side.work.body;
   legs.velocity = spread<Quad>(work.velocity);
   Heap<Quad> beyond{};
-  pass_leg<K>(robot.four.figures.tree.leg[0], side.state.body.angle[0], side.state.body.speed[0], frame,
-              legs.leg[0], beyond);
+  const auto& tree = robot.four.figures.tree;
+  const auto& ratio = robot.four.site.around.trunk;
+  if (!kPlain && ratio.weighed) {
+    pass_leg<K, true>(tree.leg[0], side.state.body.angle[0], side.state.body.speed[0], frame, legs.leg[0],
+                      beyond, &ratio.link_ratio[0]);
+  } else {
+    pass_leg<K>(tree.leg[0], side.state.body.angle[0], side.state.body.speed[0], frame, legs.leg[0], beyond);
+  }
   add(total, summed(beyond));
   spread_total(total, work);
   for (int r = 0; r < 6; ++r) {
@@ -253,19 +273,25 @@ inline void touch_four(FourLegged& robot, const ShapedFooting<double>& on, Robot
   touch_trunk<kPress>(robot.figures.tree, on, state.body, work);
 }
 
-/// step_robot for four legs of K joints, on a ground that is plain or any.
+/// Whether the short form will do: plain ground and drives, links as they are made, nothing that hangs.
+inline bool is_plain(const SiteFigures<double>& site) noexcept {
+  return site.around.ground.plain && as_made(site);
+}
+
+/// step_robot for four legs of K joints, at a site that is plain or any.
 template <int K, bool kPlain>
 inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const Told<double>& told, double dt,
                       RobotState<double>& state, RobotWork<double>& work) noexcept {
   const FourLegs& four = robot.four;
   FourWork& side = robot.side;
   Work<Quad>& legs = side.work.body;
-  take_in(four, told, state, side);
-  drive_joints(four.figures, four.site, side.told, Quad(dt), side.state, side.work);
+  take_in<kPlain>(four, told, state, side);
+  drive_joints<kPlain>(four.figures, four.site, side.told, Quad(dt), side.state, side.work);
   const auto speed_before = side.state.body.speed;
-  begin_four<K>(robot, site, state, work.body);
+  begin_four<K, kPlain>(robot, site, state, work.body);
   load_leg(four.figures.tree, 0, side.state.body, side.work.loads, Quad(dt), legs.leg[0]);
   add_push(site.around, work.body);
+  if (!kPlain && site.around.hangs) hang(site.around.hanging, dt, state.body, work.body);
   const auto& ground = site.around.ground;
   const Below<double> below = below_of(ground, work.body.body, state.body.position);
   const auto on = [&] {
@@ -282,13 +308,15 @@ inline void step_four(FourLegged& robot, const SiteFigures<double>& site, const 
   for (int i = 0; i < 6; ++i) legs.acceleration[i] = work.body.acceleration[i];
   follow_leg<K>(legs.leg[0], legs.acceleration);
   touch_four<false, K>(robot, on, state, work.body);
+  if (!kPlain && site.around.hangs) swing(site.around.hanging, dt, work.body, state.body);
   integrate_four<K>(dt, side);
   integrate_trunk(dt, work.body, state.body);
-  move_rotors(four.figures, four.site, Quad(dt), speed_before, side.state, side.work);
-  give_back(four, side, state);
+  move_rotors<kPlain>(four.figures, four.site, Quad(dt), speed_before, side.state, side.work);
+  give_back<kPlain>(four, side, state);
   work.power = sum(side.work.power) + robot.figures.pack.idle;
   work.mechanical = sum(side.work.mechanical);
   draw(robot.figures.pack, site.pack, work.power, dt, state.pack);
+  if constexpr (!kPlain) hold_back(robot.figures.pack, dt, state.pack);
 }
 
 }  // namespace pastern::stub

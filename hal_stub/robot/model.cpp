@@ -33,6 +33,17 @@ void Model::take_drives(const v1::Robot& robot) {
     made.to_housing = 1 / d.winding_to_housing_k_per_w();
     made.to_air = 1 / d.housing_to_air_k_per_w();
     made.timeout_damping = robot.joints(j).guard().damping_nm_s_per_rad();
+    made.most_torque = d.peak_torque_nm();
+    if (d.has_current_limit_a()) {
+      made.most_torque = std::min(made.most_torque, d.current_limit_a() * d.torque_per_amp_nm());
+    }
+    if (d.has_derate_hot_c()) {
+      made.hot = d.derate_hot_c();
+      made.per_derating = 1 / (d.derate_hot_c() - d.derate_warm_c());
+    }
+    limited_ = limited_ || d.has_current_limit_a() || d.has_derate_hot_c();
+    gear_loss_.push_back(d.gear_loss());
+    stick_.push_back(d.stick_nm());
     damping_.push_back(d.damping_nm_s_per_rad());
     coulomb_.push_back(d.coulomb_nm());
     stance_.push_back(robot.joints(j).stance_rad());
@@ -43,6 +54,9 @@ void Model::take_drives(const v1::Robot& robot) {
   }
   const auto& p = robot.pack();
   figures_.pack = {p.nominal_voltage_v(), p.capacity_ah() * 3600, p.resistance_ohm(), p.idle_power_w()};
+  if (p.has_current_limit_a()) figures_.pack.most_current = p.current_limit_a();
+  limited_ = limited_ || p.has_current_limit_a();
+  cold_ratio_ = p.has_resistance_cold_ratio() ? p.resistance_cold_ratio() : 1;
 }
 
 std::shared_ptr<const Model> Model::make(const v1::Robot& robot, std::string& error, double longest_step_s) {
@@ -64,6 +78,7 @@ std::shared_ptr<const Model> Model::make(const v1::Robot& robot, std::string& er
   }
   model->mass_kg_ = robot.trunk().link().mass_kg();
   for (const auto& joint : robot.joints()) model->mass_kg_ += joint.link().mass_kg();
+  for (const auto& leg : robot.legs()) model->shanks_.push_back(model->joint_index(leg.knee()));
   model->sensors_ = robot.sensors();
   model->period_s_ = 1 / robot.cycle_hz();
   model->substeps_ = std::max(1, static_cast<int>(std::ceil(model->period_s_ / longest_step_s - 1e-9)));

@@ -33,7 +33,13 @@ class Model {
   [[nodiscard]] const v1::Sensors& sensors() const { return sensors_; }
   [[nodiscard]] const std::vector<double>& damping() const { return damping_; }  ///< of the drives, N m s/rad
   [[nodiscard]] const std::vector<double>& coulomb() const { return coulomb_; }  ///< N m
-  [[nodiscard]] double period_s() const { return period_s_; }                    ///< of the cycle
+  [[nodiscard]] const std::vector<double>& gear_loss() const { return gear_loss_; }
+  [[nodiscard]] const std::vector<double>& stick() const { return stick_; }  ///< N m, beyond Coulomb
+  /// Some drive's current or heat, or the pack's current, is limited.
+  [[nodiscard]] bool limited() const { return limited_; }
+  [[nodiscard]] double cold_ratio() const { return cold_ratio_; }  ///< pack's resistance, -20 over 25 deg C
+  [[nodiscard]] const std::vector<int>& shanks() const { return shanks_; }  ///< joints that move them
+  [[nodiscard]] double period_s() const { return period_s_; }               ///< of the cycle
   [[nodiscard]] int substeps() const { return substeps_; }  ///< steps of at most the longest in a period
   [[nodiscard]] double drive_timeout_s() const { return drive_timeout_s_; }
   [[nodiscard]] double rise_s() const { return rise_s_; }  ///< from lying until a walk may begin
@@ -56,6 +62,11 @@ class Model {
   std::vector<double> lying_;
   std::vector<double> damping_;
   std::vector<double> coulomb_;
+  std::vector<double> gear_loss_;
+  std::vector<double> stick_;
+  bool limited_{false};
+  double cold_ratio_{1};
+  std::vector<int> shanks_;
   std::vector<double> hold_stiffness_;
   std::vector<double> hold_damping_;
   std::vector<double> envelope_;

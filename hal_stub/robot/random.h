@@ -12,7 +12,15 @@
 namespace pastern::stub {
 
 /// Purposes, so that one set of coordinates never serves two.
-enum class Chance : std::uint32_t { robot = 0, place = 1, push = 2, jitter = 3, sensors = 4, site = 5 };
+enum class Chance : std::uint32_t {
+  robot = 0,
+  place = 1,
+  push = 2,
+  jitter = 3,
+  sensors = 4,
+  site = 5,
+  frames = 6
+};
 
 using Words = std::array<std::uint32_t, 4>;
 

@@ -34,6 +34,12 @@ struct SiteFigures {
   PackSite<S> pack{};
 };
 
+/// Drives are plain, links as heavy as their figures, and nothing hangs.
+template <class S>
+inline bool as_made(const SiteFigures<S>& site) noexcept {
+  return site.drives.plain && !site.around.trunk.weighed && !site.around.hangs;
+}
+
 /// What the drives are told in a step; `wanted` by joint order. The drive acts on the wanted torque times
 /// `on`, minus the damping that it does by itself times `damping`; a forced torque is one that ignores
 /// commands (a fault).
@@ -54,7 +60,8 @@ struct RobotWork {
   S mechanical;  ///< sum of |torque * joint speed|, W
 };
 
-template <class S>
+/// Drives and gears of all joints. kPlain: the site's drives are plain.
+template <bool kPlain, class S>
 inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, const Told<S>& told,
                          Constant<S> dt, RobotState<S>& state, RobotWork<S>& work) noexcept {
   using C = Constant<S>;
@@ -72,14 +79,33 @@ inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<
       const S rotor_speed = select(site.drives.half_gap[k] > S(0), d.rotor_speed[k], speed);
       const S wanted =
           told.wanted[k] * told.on + told.forced[k] - rotor_speed * told.damping * drive.timeout_damping;
-      const S torque = made_torque(drive, wanted, rotor_speed, supply, d.winding[k]);
+      const S torque = [&] {
+        if constexpr (kPlain) {
+          return made_torque(drive, wanted, rotor_speed, supply, d.winding[k]);
+        } else {
+          return made_torque(drive, S(wanted * state.pack.share), rotor_speed, supply, d.winding[k],
+                             let_through(drive, d.winding[k]));
+        }
+      }();
       const S real = torque * site.drives.strength[k];
       const S amps = torque * (C(1) / drive.per_amp);
       const S loss = amps * amps * drive.resistance * copper_ratio(d.winding[k]);
-      const S viscosity = gear_viscosity(site.drives.damping[k], site.drives.coulomb[k], rotor_speed);
+      const GearGrip<S> grip = [&]() -> GearGrip<S> {
+        const auto& at = site.drives;
+        if constexpr (kPlain) {
+          return {S(0), gear_viscosity(at.damping[k], at.coulomb[k], rotor_speed)};
+        } else {
+          const GearFriction<S> gear{at.damping[k], at.coulomb[k] + at.loss[k] * abs(real), at.stick[k]};
+          return gear_grip(gear, rotor_speed, d.wound[k], dt);
+        }
+      }();
+      const S acting = [&] {
+        if constexpr (kPlain) return real;
+        return S(real - grip.push);
+      }();
       const GearedJoint<S> geared{
-          real,       viscosity, site.drives.half_gap[k], state.body.angle[n][i], speed, d.rotor_angle[k],
-          rotor_speed};
+          acting,           grip.viscosity, site.drives.half_gap[k], state.body.angle[n][i], speed,
+          d.rotor_angle[k], rotor_speed};
       const auto& teeth = figures.teeth[static_cast<std::size_t>(leg.joint[i].slides)];
       work.loads[n][i] = load_of(drive, teeth, geared, dt, work.coupling[k]);
       work.power = work.power + real * rotor_speed + loss;
@@ -90,7 +116,7 @@ inline void drive_joints(const Figures<Constant<S>>& figures, const SiteFigures<
   }
 }
 
-template <class S>
+template <bool kPlain, class S>
 inline void move_rotors(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, Constant<S> dt,
                         const std::array<PerChain<S>, kMaxTreeLegs>& speed_before, RobotState<S>& state,
                         const RobotWork<S>& work) noexcept {
@@ -106,6 +132,7 @@ inline void move_rotors(const Figures<Constant<S>>& figures, const SiteFigures<S
       const auto loose = site.drives.half_gap[k] > S(0);
       d.rotor_speed[k] = select(loose, speed, state.body.speed[n][i]);
       d.rotor_angle[k] = select(loose, d.rotor_angle[k] + speed * dt, state.body.angle[n][i]);
+      if constexpr (!kPlain) d.wound[k] = wound_after(d.wound[k], d.rotor_speed[k], dt);
     }
   }
 }
@@ -114,11 +141,21 @@ inline void move_rotors(const Figures<Constant<S>>& figures, const SiteFigures<S
 template <class S>
 inline void step_robot(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, const Told<S>& told,
                        Constant<S> dt, RobotState<S>& state, RobotWork<S>& work) noexcept {
-  drive_joints(figures, site, told, dt, state, work);
+  const bool plain = site.drives.plain;
+  if (plain) {
+    drive_joints<true>(figures, site, told, dt, state, work);
+  } else {
+    drive_joints<false>(figures, site, told, dt, state, work);
+  }
   const auto speed_before = state.body.speed;
   step_body(figures.tree, site.around, work.loads, dt, state.body, work.body);
-  move_rotors(figures, site, dt, speed_before, state, work);
+  if (plain) {
+    move_rotors<true>(figures, site, dt, speed_before, state, work);
+  } else {
+    move_rotors<false>(figures, site, dt, speed_before, state, work);
+  }
   draw(figures.pack, site.pack, work.power, dt, state.pack);
+  if (!plain) hold_back(figures.pack, dt, state.pack);
 }
 
 }  // namespace pastern::stub

@@ -37,7 +37,10 @@ void SimulatedRobot::take_site() {
   command_rows_ = static_cast<std::size_t>(std::ceil(late)) + 3;
   if (commands_.size() < command_rows_) commands_.resize(command_rows_);
   if (command_ticks_.size() < command_rows_) command_ticks_.resize(command_rows_);
-  samples_.resize(sensor_delay_ticks(*model_, site_) + 1);
+  flaws_ = frame_flaws_of(*model_, site_);
+  encoder_lag_ = sensor_delay_ticks(*model_, site_);
+  imu_lag_ = imu_delay_ticks(*model_, site_);
+  samples_.resize(oldest_sample_ticks(*model_, site_) + 1);
 }
 
 void SimulatedRobot::switch_on() {
@@ -63,7 +66,7 @@ void SimulatedRobot::place_lying(std::uint64_t draw) {
 void SimulatedRobot::place(const std::vector<double>& pose, std::uint64_t draw) {
   clock_.placed = clock_.tick;
   clock_.draw = draw;
-  clock_.told = 0;
+  clock_.told = clock_.asked = 0;
   clock_.let_go = 0;
   told_.on = told_.damping = 0;
   clock_.sent = clock_.acting = clock_.arrived = -1;
@@ -206,7 +209,7 @@ Vec3<double> SimulatedRobot::push_now() const {
     const Fault& fault = site_.fault[i];
     if (fault.kind != v1::Fault::PUSH || !acts(fault)) continue;
     const double lasts = std::max(fault.ends_s - fault.begins_s, model_->period_s());
-    force.y += (model_->mass_kg() + site_.load_kg) * fault.size / lasts;  // to the left
+    force.y += mass_at(*model_, site_) * fault.size / lasts;  // to the left
   }
   return force;
 }

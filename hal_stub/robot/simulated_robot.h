@@ -21,6 +21,7 @@
 #include <vector>
 
 #include "hal_stub/robot/advance.h"
+#include "hal_stub/robot/frames.h"
 #include "hal_stub/robot/model.h"
 #include "hal_stub/robot/period.h"
 #include "hal_stub/robot/robot_state.h"
@@ -114,6 +115,7 @@ class SimulatedRobot {
     std::uint64_t placed{0};  ///< tick of the last placing
     std::uint64_t draw{0};
     std::uint64_t samples{0};
+    std::uint64_t asked{0};    ///< number of the newest sampling when read() was called last
     std::uint64_t told{0};     ///< number of the last frame that read() gave; 0: none since placed
     std::int64_t sent{-1};     ///< tick of the newest command; -1: none since placed
     std::int64_t acting{-1};   ///< tick of the command that the drives act on
@@ -152,6 +154,7 @@ class SimulatedRobot {
   void apply_drive_fault(const Fault& fault);
   [[nodiscard]] Vec3<double> push_now() const;
   void sample();
+  [[nodiscard]] const Sample& sampled(std::uint64_t lag) const;
   void add_noise(const Sample& from, safety::SensorFrame& frame) const;
   void spoil(safety::SensorFrame& frame);
   [[nodiscard]] bool faulty(v1::Fault::Kind kind) const;
@@ -170,6 +173,9 @@ class SimulatedRobot {
   Answered answered_;
   Vec3<double> rate_bias_{};
   Rotation<double> imu_axes_{};
+  FrameFlaws flaws_;
+  std::uint64_t encoder_lag_{0};  ///< ticks
+  std::uint64_t imu_lag_{0};
   Vec3<double> push_{};      ///< force of this walk's push, N
   double push_begins_s_{0};  ///< since placed
   std::size_t command_rows_{1};

@@ -1,5 +1,5 @@
 // Saving and restoring everything that varies in a simulated robot.
-//   "PSTB" 0x03, 3 zero bytes | 32 bytes digest of the robot | 8 bytes length of what follows | state, clock,
+//   "PSTB" 0x04, 3 zero bytes | 32 bytes digest of the robot | 8 bytes length of what follows | state, clock,
 //   kept, push, command rows, samples | 32 bytes SHA-256 of everything before. Numbers as this machine writes
 //   them: a saved state goes back into the same robot's journal folder, it is no exchange format.
 #include <cstring>
@@ -11,7 +11,7 @@
 namespace pastern::stub {
 namespace {
 
-constexpr char kMark[8] = {'P', 'S', 'T', 'B', 3, 0, 0, 0};
+constexpr char kMark[8] = {'P', 'S', 'T', 'B', 4, 0, 0, 0};
 constexpr std::size_t kHead = 8 + 32 + 8;
 constexpr std::size_t kTail = 32;
 

@@ -33,6 +33,8 @@ class Noise {
   Words words_{};
 };
 
+std::uint32_t low(std::uint64_t tick) { return static_cast<std::uint32_t>(tick); }
+
 }  // namespace
 
 void SimulatedRobot::sample() {
@@ -91,16 +93,32 @@ void SimulatedRobot::add_noise(const Sample& from, safety::SensorFrame& frame) c
   frame.acceleration.z = saturated(force.z + an * noise.next(), ar);
 }
 
+/// What was sampled `lag` samplings ago; just after placing, the oldest since then.
+const SimulatedRobot::Sample& SimulatedRobot::sampled(std::uint64_t lag) const {
+  const std::uint64_t number = clock_.samples > lag ? clock_.samples - lag : 1;
+  const Sample& found = samples_[static_cast<std::size_t>(number) % samples_.size()];
+  if (found.tick >= clock_.placed) return found;
+  return samples_[static_cast<std::size_t>(clock_.samples) % samples_.size()];
+}
+
 bool SimulatedRobot::read(safety::SensorFrame& frame) {
   if (!bus_sound() || faulty(v1::Fault::FRAMES_LOST)) return false;
-  // With a delay the newest frame that has arrived is older; just after placing, the oldest there is.
-  const auto rows = static_cast<std::uint64_t>(samples_.size());
-  const std::uint64_t number = clock_.samples >= rows ? clock_.samples - rows + 1 : 1;
-  if (clock_.samples == clock_.told) return false;
-  clock_.told = clock_.samples;
-  const Sample* from = &samples_[static_cast<std::size_t>(number) % samples_.size()];
-  if (from->tick < clock_.placed)
-    from = &samples_[static_cast<std::size_t>(clock_.samples) % samples_.size()];
+  if (clock_.samples == clock_.asked) return false;
+  clock_.asked = clock_.samples;
+  FrameNews news;
+  if (flaws_.any()) news = news_of(flaws_, seed_, clock_.draw, low(clock_.tick - clock_.placed));
+  const std::uint64_t newest = clock_.samples - news.age;
+  if (newest == clock_.told && !news.again) return false;
+  clock_.told = newest;
+  const Sample* from = &sampled(encoder_lag_ + news.age);
+  Sample mixed;
+  if (imu_lag_ != encoder_lag_) {
+    mixed = *from;
+    const Sample& felt = sampled(imu_lag_ + news.age);
+    mixed.rate = felt.rate;
+    mixed.acceleration = felt.acceleration;
+    from = &mixed;
+  }
   if (faulty(v1::Fault::FRAMES_FROZEN)) {
     if (kept_.is_frozen == 0) kept_.frozen = *from;
     kept_.is_frozen = 1;
@@ -110,8 +128,8 @@ bool SimulatedRobot::read(safety::SensorFrame& frame) {
   }
   answered_.angle = from->angle;
   answered_.speed = from->speed;
-  frame.counter = clock_.samples;
-  frame.time.value = std::llround(static_cast<double>(clock_.tick) * model_->period_s() * 1e9);
+  frame.counter = newest;
+  frame.time.value = std::llround(static_cast<double>(clock_.tick - news.age) * model_->period_s() * 1e9);
   frame.joint_count = model_->joint_count();
   add_noise(*from, frame);
   frame.has_attitude = false;

@@ -27,15 +27,23 @@ void take_wear(const v1::Scenario& scenario, const Model& model, Site& site) {
     take(wear.has_strength(), wear.strength(), site.strength[j]);
     take(wear.has_backlash_rad(), wear.backlash_rad(), site.backlash_rad[j]);
     take(wear.has_zero_offset_rad(), wear.zero_offset_rad(), site.zero_offset_rad[j]);
+    take(wear.has_link_mass_ratio(), wear.link_mass_ratio(), site.link_ratio[j]);
   }
 }
 
-void take_friction_of_joints(const v1::Scenario& scenario, const Model& model, Site& site) {
+void take_all_joints(const v1::Scenario& scenario, const Model& model, Site& site) {
   for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
     take(scenario.has_joint_damping_nm_s_per_rad(), scenario.joint_damping_nm_s_per_rad(),
          site.damping_nm_s_per_rad[j]);
     if (scenario.has_joint_damping_ratio()) site.damping_nm_s_per_rad[j] *= scenario.joint_damping_ratio();
     take(scenario.has_joint_coulomb_nm(), scenario.joint_coulomb_nm(), site.coulomb_nm[j]);
+    take(scenario.has_joint_backlash_rad(), scenario.joint_backlash_rad(), site.backlash_rad[j]);
+    take(scenario.has_joint_gear_loss(), scenario.joint_gear_loss(), site.gear_loss[j]);
+    take(scenario.has_joint_stick_nm(), scenario.joint_stick_nm(), site.stick_nm[j]);
+  }
+  for (const int shank : model.shanks()) {
+    take(scenario.has_shank_mass_ratio(), scenario.shank_mass_ratio(),
+         site.link_ratio[static_cast<std::size_t>(shank)]);
   }
 }
 
@@ -106,6 +114,9 @@ Site nominal_site(const Model& model) {
     site.strength[j] = 1;
     site.damping_nm_s_per_rad[j] = model.damping()[j];
     site.coulomb_nm[j] = model.coulomb()[j];
+    site.gear_loss[j] = model.gear_loss()[j];
+    site.stick_nm[j] = model.stick()[j];
+    site.link_ratio[j] = 1;
   }
   return site;
 }
@@ -122,6 +133,8 @@ Site site_of(const v1::Scenario& ranges, const Model& model, std::uint64_t seed)
   Site site = nominal_site(model);
   take(scenario.has_load_kg(), scenario.load_kg(), site.load_kg);
   take_xyz(scenario.has_load_at_m(), scenario.load_at_m(), site.load_at_m);
+  take(scenario.has_load_hangs_m(), scenario.load_hangs_m(), site.load_hangs_m);
+  take(scenario.has_load_swing_damping(), scenario.load_swing_damping(), site.load_swing_damping);
   take(scenario.has_pack_voltage_ratio(), scenario.pack_voltage_ratio(), site.pack_voltage_ratio);
   take(scenario.has_pack_resistance_ratio(), scenario.pack_resistance_ratio(), site.pack_resistance_ratio);
   take(scenario.has_friction(), scenario.friction(), site.friction);
@@ -129,6 +142,10 @@ Site site_of(const v1::Scenario& ranges, const Model& model, std::uint64_t seed)
   take(scenario.has_command_delay_s(), scenario.command_delay_s(), site.command_delay_s);
   take(scenario.has_command_jitter_s(), scenario.command_jitter_s(), site.command_jitter_s);
   take(scenario.has_sensor_delay_s(), scenario.sensor_delay_s(), site.sensor_delay_s);
+  take(scenario.has_imu_delay_s(), scenario.imu_delay_s(), site.imu_delay_s);
+  take(scenario.has_frames_late(), scenario.frames_late(), site.frames_late);
+  take(scenario.has_frames_late_s(), scenario.frames_late_s(), site.frames_late_s);
+  take(scenario.has_frames_repeated(), scenario.frames_repeated(), site.frames_repeated);
   take(scenario.has_ground_stiffness_n_per_m(), scenario.ground_stiffness_n_per_m(),
        site.ground_stiffness_n_per_m);
   take(scenario.has_ground_damping_n_s_per_m(), scenario.ground_damping_n_s_per_m(),
@@ -137,12 +154,14 @@ Site site_of(const v1::Scenario& ranges, const Model& model, std::uint64_t seed)
   take(scenario.has_push_m_per_s(), scenario.push_m_per_s(), site.push_m_per_s);
   take(scenario.has_start_scatter_rad(), scenario.start_scatter_rad(), site.start_scatter_rad);
   take(scenario.has_ambient_c(), scenario.ambient_c(), site.ambient_c);
+  site.pack_c = scenario.has_pack_c() ? scenario.pack_c() : site.ambient_c;
+  take(scenario.has_trunk_inertia_ratio(), scenario.trunk_inertia_ratio(), site.trunk_inertia_ratio);
   site.winding_start_c = scenario.has_ambient_c() ? scenario.ambient_c() : site.winding_start_c;
   take(scenario.has_winding_start_c(), scenario.winding_start_c(), site.winding_start_c);
   take_xyz(scenario.has_imu_tilt_rad(), scenario.imu_tilt_rad(), site.imu_tilt_rad);
   take(scenario.has_position_source(), scenario.position_source(), site.position_source);
   take(scenario.has_sensor_noise_ratio(), scenario.sensor_noise_ratio(), site.sensor_noise_ratio);
-  take_friction_of_joints(scenario, model, site);
+  take_all_joints(scenario, model, site);
   take_wear(scenario, model, site);
   take_faults(scenario, model, site);
   return site;

@@ -56,6 +56,8 @@ struct GroundShape {
 struct Site {
   double load_kg{0};
   std::array<double, 3> load_at_m{};  ///< trunk frame
+  double load_hangs_m{0};             ///< below that place, when at rest; 0: the load is fixed
+  double load_swing_damping{0.02};    ///< of critical; ours, of a strap in air
   double pack_voltage_ratio{1};       ///< of nominal, at rest, at the start
   double pack_resistance_ratio{1};
   double friction{0.8};
@@ -66,10 +68,16 @@ struct Site {
   double command_delay_s{0.002};
   double command_jitter_s{0};  ///< a command is late by delay + jitter * uniform(0, 1)
   double sensor_delay_s{0};
+  double imu_delay_s{-1};  ///< below 0: as the encoders
+  double frames_late{0};   ///< share of frames that come frames_late_s late
+  double frames_late_s{0.001};
+  double frames_repeated{0};  ///< share of frames in whose stead the bus tells the one before again
   double push_m_per_s{
       0};  ///< sd of one change of the trunk's speed, each walk, at a random time and direction
   double start_scatter_rad{0};
   double ambient_c{20};
+  double pack_c{20};
+  double trunk_inertia_ratio{1};
   double winding_start_c{25};
   std::array<double, 3> imu_tilt_rad{};  ///< mounting error about x, y, z
   bool position_source{false};
@@ -78,6 +86,9 @@ struct Site {
   std::array<double, safety::kMaxJoints> damping_nm_s_per_rad{};  ///< of the joint
   std::array<double, safety::kMaxJoints> coulomb_nm{};
   std::array<double, safety::kMaxJoints> backlash_rad{};     ///< full width of the gap
+  std::array<double, safety::kMaxJoints> gear_loss{};        ///< part of the drive's torque
+  std::array<double, safety::kMaxJoints> stick_nm{};         ///< to break away, beyond Coulomb
+  std::array<double, safety::kMaxJoints> link_ratio{};       ///< times mass and inertia of the joint's link
   std::array<double, safety::kMaxJoints> zero_offset_rad{};  ///< encoder reads this much too high
   int fault_count{0};
   std::array<Fault, kMaxFaults> fault{};

@@ -37,6 +37,45 @@ TrunkFigures<double> loaded_trunk(const LinkFigures<double>& trunk, double load,
        i.zz + m * (d.x * d.x + d.y * d.y), i.xy - m * d.x * d.y, i.xz - m * d.x * d.z, i.yz - m * d.y * d.z}};
 }
 
+bool hangs_at(const Site& site) { return site.load_hangs_m > 0 && site.load_kg > 0; }
+
+// The strap: stretched by a millimetre under the load at rest, and half critically damped along itself, so
+// that it is seen by nobody and calm at steps of a millisecond. Ours.
+constexpr double kStrapStretch = 0.001;  // m
+constexpr double kStrapDamping = 0.5;
+
+/// Swing damped as a pendulum of that length: 2 zeta m sqrt(g / l).
+Hanging<double> hanging_of(const Site& site, double gravity) {
+  const double mass = site.load_kg;
+  const double stiffness = mass * gravity / kStrapStretch;
+  return {{site.load_at_m[0], site.load_at_m[1], site.load_at_m[2]},
+          site.load_hangs_m - kStrapStretch,
+          stiffness,
+          2 * kStrapDamping * std::sqrt(stiffness * mass),
+          2 * site.load_swing_damping * mass * std::sqrt(gravity / site.load_hangs_m),
+          1 / mass};
+}
+
+LinkFigures<double> own_trunk(const LinkFigures<double>& trunk, const Site& site) {
+  LinkFigures<double> made = trunk;
+  const double k = site.trunk_inertia_ratio;
+  auto& i = made.inertia;
+  if (k != 1) i = {i.xx * k, i.yy * k, i.zz * k, i.xy * k, i.xz * k, i.yz * k};
+  return made;
+}
+
+void take_links(const Model& model, const Site& site, TrunkFigures<double>& trunk) {
+  const auto& tree = model.figures().tree;
+  for (auto& limb : trunk.link_ratio) limb.fill(1);
+  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
+    for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[l].joint_count); ++i) {
+      const double ratio = site.link_ratio[static_cast<std::size_t>(tree.leg[l].joint[i].order)];
+      trunk.link_ratio[l][i] = ratio;
+      trunk.weighed = trunk.weighed || ratio != 1;
+    }
+  }
+}
+
 constexpr double kShortestRiser = 0.004;  // m: a foot at 2 m/s is on it for two steps
 // m: no riser is more curved than this ball, so that a foot touches it in one place. At its ends 3 u^2 - 2
 // u^3 of a rise h over a length l has the curvature 6 h / l^2.
@@ -91,17 +130,26 @@ SiteFigures<double> figures_of(const Model& model, const Site& site) {
   const auto& base = model.figures();
   SiteFigures<double> made;
   auto& around = made.around;
-  around.trunk = loaded_trunk(base.tree.trunk, site.load_kg, site.load_at_m);
+  const bool hangs = hangs_at(site);
+  around.trunk = loaded_trunk(own_trunk(base.tree.trunk, site), hangs ? 0 : site.load_kg, site.load_at_m);
+  take_links(model, site, around.trunk);
+  around.hangs = hangs;
+  if (hangs) around.hanging = hanging_of(site, base.tree.gravity);
   around.ground = ground_of(site);
   for (std::size_t j = 0; j < static_cast<std::size_t>(model.joint_count()); ++j) {
     made.drives.strength[j] = site.strength[j];
     made.drives.damping[j] = site.damping_nm_s_per_rad[j];
     made.drives.coulomb[j] = site.coulomb_nm[j];
     made.drives.half_gap[j] = site.backlash_rad[j] / 2;
+    made.drives.loss[j] = site.gear_loss[j];
+    made.drives.stick[j] = site.stick_nm[j];
+    made.drives.plain = made.drives.plain && !(site.gear_loss[j] > 0) && !(site.stick_nm[j] > 0);
   }
+  made.drives.plain = made.drives.plain && !model.limited();
   made.drives.ambient = site.ambient_c;
   made.pack.open_scale = 0;
   made.pack.resistance = base.pack.resistance * site.pack_resistance_ratio;
+  made.pack.resistance *= cold_resistance(model.cold_ratio(), site.pack_c);
   return made;
 }
 
@@ -143,6 +191,7 @@ void place_in(const Model& model, const Site& site, const std::vector<double>& p
       state.drives.rotor_angle[j] = angle[j];
       state.drives.rotor_speed[j] = 0;
       state.drives.torque[j] = 0;
+      state.drives.wound[j] = 0;
     }
   }
   const Words w = random_words(seed, draw, 0, Chance::place, 0);
@@ -156,12 +205,16 @@ void place_in(const Model& model, const Site& site, const std::vector<double>& p
   const double reach = ground.plain ? reach_below(tree, angle.data(), {0, 0, -1})
                                     : rest_height(tree, angle.data(), state.body.attitude, ground);
   state.body.position = ground.normal * (reach - sink);
+  const Vec3<double> at{site.load_at_m[0], site.load_at_m[1], site.load_at_m[2]};
+  if (hangs_at(site)) {
+    state.body.swing.place = rotation_of(state.body.attitude) * at - Vec3<double>{0, 0, site.load_hangs_m};
+  }
 }
 
 Push push_of(const Model& model, const Site& site, std::uint64_t seed, std::uint64_t draw) {
   const Words p = random_words(seed, draw, 0, Chance::push, 0);
   const Words q = random_words(seed, draw, 0, Chance::push, 1);
-  const double mass = model.mass_kg() + site.load_kg;
+  const double mass = mass_at(model, site);
   const double size = site.push_m_per_s * normal_of(p[0], p[1]) * mass / kPushSeconds;
   const double way = 2 * std::numbers::pi * uniform_of(p[2]);
   return {{size * std::cos(way), size * std::sin(way), 0},
@@ -170,6 +223,33 @@ Push push_of(const Model& model, const Site& site, std::uint64_t seed, std::uint
 
 std::size_t sensor_delay_ticks(const Model& model, const Site& site) {
   return static_cast<std::size_t>(std::lround(site.sensor_delay_s / model.period_s()));
+}
+
+std::size_t imu_delay_ticks(const Model& model, const Site& site) {
+  if (site.imu_delay_s < 0) return sensor_delay_ticks(model, site);
+  return static_cast<std::size_t>(std::lround(site.imu_delay_s / model.period_s()));
+}
+
+FrameFlaws frame_flaws_of(const Model& model, const Site& site) {
+  const long late = std::lround(site.frames_late_s / model.period_s());
+  return {site.frames_late, site.frames_repeated, static_cast<std::uint32_t>(std::max(1L, late))};
+}
+
+std::size_t oldest_sample_ticks(const Model& model, const Site& site) {
+  return std::max(sensor_delay_ticks(model, site), imu_delay_ticks(model, site)) +
+         oldest_news(frame_flaws_of(model, site));
+}
+
+double mass_at(const Model& model, const Site& site) {
+  double mass = model.mass_kg() + site.load_kg;
+  const auto& tree = model.figures().tree;
+  for (std::size_t l = 0; l < static_cast<std::size_t>(tree.leg_count); ++l) {
+    for (std::size_t i = 0; i < static_cast<std::size_t>(tree.leg[l].joint_count); ++i) {
+      const auto& joint = tree.leg[l].joint[i];
+      mass += (site.link_ratio[static_cast<std::size_t>(joint.order)] - 1) * joint.link.mass;
+    }
+  }
+  return mass;
 }
 
 long command_delay_ticks(const Model& model, const Site& site, double chance) {

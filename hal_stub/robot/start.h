@@ -6,6 +6,7 @@
 #include <cstdint>
 #include <vector>
 
+#include "hal_stub/robot/frames.h"
 #include "hal_stub/robot/model.h"
 #include "hal_stub/robot/robot_state.h"
 #include "hal_stub/robot/site.h"
@@ -49,6 +50,18 @@ struct Push {
 
 /// Periods that a sampling takes to arrive.
 [[nodiscard]] std::size_t sensor_delay_ticks(const Model& model, const Site& site);
+
+/// The same of the IMU's part.
+[[nodiscard]] std::size_t imu_delay_ticks(const Model& model, const Site& site);
+
+/// How frames come late or twice at a site.
+[[nodiscard]] FrameFlaws frame_flaws_of(const Model& model, const Site& site);
+
+/// Oldest sampling that a frame may tell of, ticks.
+[[nodiscard]] std::size_t oldest_sample_ticks(const Model& model, const Site& site);
+
+/// Of robot and load, kg.
+[[nodiscard]] double mass_at(const Model& model, const Site& site);
 
 /// Periods that a command takes to arrive; `chance` in (0, 1) of the jitter.
 [[nodiscard]] long command_delay_ticks(const Model& model, const Site& site, double chance);

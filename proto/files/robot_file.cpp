@@ -115,6 +115,17 @@ class Judge {
     const v1::JointGuard& guard = joint.guard();
     require(drive.rated_torque_nm() <= drive.peak_torque_nm(), at + ".drive.rated_torque_nm",
             drive.rated_torque_nm(), "at most drive.peak_torque_nm");
+    require(drive.has_derate_warm_c() == drive.has_derate_hot_c(),
+            at + (drive.has_derate_warm_c() ? ".drive.derate_warm_c" : ".drive.derate_hot_c"),
+            "one without the other", "derate_warm_c and derate_hot_c");
+    require(!drive.has_derate_hot_c() || drive.derate_warm_c() < drive.derate_hot_c(),
+            at + ".drive.derate_hot_c", drive.derate_hot_c(),
+            "more than derate_warm_c, " + shown_number(drive.derate_warm_c()) + " (deg C)");
+    const double through = drive.current_limit_a() * drive.torque_per_amp_nm();
+    require(!drive.has_current_limit_a() || through >= drive.rated_torque_nm(), at + ".drive.current_limit_a",
+            drive.current_limit_a(),
+            "enough for rated_torque_nm, " +
+                shown_number(drive.rated_torque_nm() / drive.torque_per_amp_nm()) + " (A) or more");
     require(guard.peak_torque_nm() <= drive.peak_torque_nm(), at + ".guard.peak_torque_nm",
             guard.peak_torque_nm(), "at most drive.peak_torque_nm, " + shown_number(drive.peak_torque_nm()));
     require(guard.peak_torque_nm() <= guard.trip_torque_nm(), at + ".guard.trip_torque_nm",

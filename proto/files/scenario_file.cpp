@@ -37,6 +37,12 @@ class Judge {
   void site() {
     require(!scenario_.has_load_at_m() || scenario_.has_load_kg(), "load_at_m", "a place without a load",
             "load_kg beside it");
+    require(!scenario_.has_load_hangs_m() || scenario_.load_kg() > 0, "load_hangs_m",
+            shown_number(scenario_.load_hangs_m()), "a load_kg above 0 beside it");
+    require(!scenario_.has_load_swing_damping() || scenario_.has_load_hangs_m(), "load_swing_damping",
+            "a damping without a load that hangs", "load_hangs_m beside it");
+    require(!scenario_.has_frames_late_s() || scenario_.has_frames_late(), "frames_late_s",
+            "a lateness without frames_late", "frames_late beside it");
     require(!(scenario_.has_joint_damping_ratio() && scenario_.has_joint_damping_nm_s_per_rad()),
             "joint_damping_ratio", "joint_damping_nm_s_per_rad as well", "one of the two");
     require(scenario_.command_jitter_s() <= scenario_.command_delay_s(), "command_jitter_s",
@@ -163,9 +169,10 @@ class Judge {
   /// Judges the sites at the ends of the ranges: every end of every number, and of those numbers that are
   /// judged against one another every combination.
   void corners() {
-    static const std::set<std::string> kTogether = {"command_delay_s", "command_jitter_s",
-                                                    "ground_wave_height_m", "ground_wave_length_m"};
-    constexpr unsigned kCombinations = 16;
+    static const std::set<std::string> kTogether = {
+        "command_delay_s",      "command_jitter_s", "ground_wave_height_m",
+        "ground_wave_length_m", "load_kg",          "load_hangs_m"};
+    constexpr unsigned kCombinations = 64;
     Defects found;
     for (unsigned n = 0; n < kCombinations && found.empty(); ++n) {
       v1::Scenario site = scenario_;

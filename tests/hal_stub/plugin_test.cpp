@@ -134,7 +134,8 @@ TEST_F(Plugin, TellsAFrameBeforeTheFirstCommandAndNoneTwice) {
 }
 
 TEST_F(Plugin, RobotRisesFromWhereItLiesAtEverySite) {
-  for (const char* name : {"good_day", "cold_store", "worn_knee", "late_bus", "wet_ramp"}) {
+  for (const char* name :
+       {"good_day", "cold_store", "worn_knee", "late_bus", "wet_ramp", "half_wrong", "wholly_wrong"}) {
     void* handle = open(config(scenario(name)));
     ASSERT_NE(handle, nullptr) << error_;
     ASSERT_EQ(table_->carry_back(handle, 11), PASTERN_HAL_OK);

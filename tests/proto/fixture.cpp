@@ -40,6 +40,12 @@ void set_drive(v1::Drive& drive) {
   drive.set_housing_capacity_j_per_k(400);
   drive.set_winding_to_housing_k_per_w(0.4);
   drive.set_housing_to_air_k_per_w(1.2);
+  drive.set_gear_ratio(9);
+  drive.set_gear_loss(0.04);
+  drive.set_stick_nm(0.1);
+  drive.set_current_limit_a(32);
+  drive.set_derate_warm_c(90);
+  drive.set_derate_hot_c(130);
 }
 
 void set_guard(v1::JointGuard& guard) {
@@ -215,11 +221,24 @@ v1::Scenario scenario() {
   scenario.set_friction_fall(0.15);
   scenario.set_friction_stick_speed_m_per_s(0.04);
   scenario.set_ground_damping_rise_s_per_m(0.5);
+  scenario.set_load_hangs_m(0.2);
+  scenario.set_load_swing_damping(0.05);
+  scenario.set_joint_backlash_rad(0.006);
+  scenario.set_joint_gear_loss(0.06);
+  scenario.set_joint_stick_nm(0.2);
+  scenario.set_shank_mass_ratio(1.05);
+  scenario.set_trunk_inertia_ratio(1.15);
+  scenario.set_pack_c(-5);
+  scenario.set_imu_delay_s(0.006);
+  scenario.set_frames_late(0.02);
+  scenario.set_frames_late_s(0.002);
+  scenario.set_frames_repeated(0.01);
   v1::JointWear& wear = *scenario.add_wear();
   wear.set_joint("rear_left_knee");
   wear.set_strength(0.6);
   wear.set_backlash_rad(0.01);
   wear.set_zero_offset_rad(0.02);
+  wear.set_link_mass_ratio(1.1);
   v1::Drawn& drawn = *scenario.add_drawn();
   drawn.set_field("strength");
   drawn.set_joint("front_left_hip");

@@ -49,7 +49,13 @@ TEST(ScenarioFile, AFaultNamesAJointExactlyWhenItIsOneOfAJoint) {
 
 TEST(ScenarioFile, RefusesWhatContradictsItself) {
   EXPECT_EQ(why([](v1::Scenario& s) { s.clear_load_kg(); }),
-            "s: load_at_m: found a place without a load, expected load_kg beside it\n");
+            "s: load_at_m: found a place without a load, expected load_kg beside it\n"
+            "s: load_hangs_m: found 0.2, expected a load_kg above 0 beside it\n");
+  EXPECT_EQ(
+      why([](v1::Scenario& s) { s.clear_load_hangs_m(); }),
+      "s: load_swing_damping: found a damping without a load that hangs, expected load_hangs_m beside it\n");
+  EXPECT_EQ(why([](v1::Scenario& s) { s.clear_frames_late(); }),
+            "s: frames_late_s: found a lateness without frames_late, expected frames_late beside it\n");
   EXPECT_EQ(why([](v1::Scenario& s) { s.set_joint_damping_nm_s_per_rad(1); }),
             "s: joint_damping_ratio: found joint_damping_nm_s_per_rad as well, expected one of the two\n");
   EXPECT_EQ(why([](v1::Scenario& s) { s.set_command_jitter_s(0.02); }),
@@ -107,7 +113,8 @@ TEST(ScenarioFile, EveryEndOfARangeIsJudgedAsAValueWouldBe) {
       drawn.set_high(high);
     });
   };
-  EXPECT_EQ(judged("friction", 0.4, 2), "s: drawn: friction: found 2, expected a finite number at least 0.02 and at most 1.5\n");
+  EXPECT_EQ(judged("friction", 0.4, 2),
+            "s: drawn: friction: found 2, expected a finite number at least 0.02 and at most 1.5\n");
   EXPECT_NE(judged("friction", -1, 1).find("s: drawn: friction: found -1"), std::string::npos);
   EXPECT_EQ(judged("command_jitter_s", 0, 0.02),
             "s: drawn: command_jitter_s: found 0.02, expected at most command_delay_s, 0.01\n");

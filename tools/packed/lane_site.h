@@ -63,11 +63,17 @@ inline void each_number(const Tree& tree, stub::RobotState<C>& state, F&& f) {
   for (C& grip : body.grip.corner) f(grip);
   auto& drives = state.drives;
   for (std::size_t j = 0; j < static_cast<std::size_t>(tree.joint_count); ++j) {
-    for (auto* number :
-         {&drives.torque, &drives.rotor_angle, &drives.rotor_speed, &drives.winding, &drives.housing}) {
+    for (auto* number : {&drives.torque, &drives.rotor_angle, &drives.rotor_speed, &drives.winding,
+                         &drives.housing, &drives.wound}) {
       f((*number)[j]);
     }
   }
+  for (auto* at : {&body.swing.place, &body.swing.velocity}) {
+    f(at->x);
+    f(at->y);
+    f(at->z);
+  }
+  f(state.pack.share);
   f(state.pack.charge);
   f(state.pack.voltage);
   f(state.pack.current);
@@ -86,7 +92,26 @@ inline void put(int lane, std::size_t joints, const stub::SiteFigures<double>& f
     put(lane, from.drives.damping[j], to.drives.damping[j]);
     put(lane, from.drives.coulomb[j], to.drives.coulomb[j]);
     put(lane, from.drives.half_gap[j], to.drives.half_gap[j]);
+    put(lane, from.drives.loss[j], to.drives.loss[j]);
+    put(lane, from.drives.stick[j], to.drives.stick[j]);
   }
+  // What one lane has costs all of them, and is nothing to those that have it not.
+  to.drives.plain = to.drives.plain && from.drives.plain;
+  to.around.hangs = to.around.hangs || from.around.hangs;
+  auto& trunk = to.around.trunk;
+  trunk.weighed = trunk.weighed || from.around.trunk.weighed;
+  for (std::size_t l = 0; l < trunk.link_ratio.size(); ++l) {
+    for (std::size_t i = 0; i < trunk.link_ratio[l].size(); ++i) {
+      put(lane, from.around.trunk.link_ratio[l][i], trunk.link_ratio[l][i]);
+    }
+  }
+  const auto& load = from.around.hanging;
+  put(lane, load.at, to.around.hanging.at);
+  put(lane, load.length, to.around.hanging.length);
+  put(lane, load.stiffness, to.around.hanging.stiffness);
+  put(lane, load.along, to.around.hanging.along);
+  put(lane, load.across, to.around.hanging.across);
+  put(lane, load.inverse_mass, to.around.hanging.inverse_mass);
   put(lane, from.drives.ambient, to.drives.ambient);
   put(lane, from.pack.open_scale, to.pack.open_scale);
   put(lane, from.pack.resistance, to.pack.resistance);

@@ -46,7 +46,8 @@ stub::PointFigures<C> narrowed(const stub::PointFigures<double>& a) {
 template <class C>
 stub::DriveFigures<C> narrowed(const stub::DriveFigures<double>& a) {
   return {C(a.peak_torque),   C(a.no_load_speed), C(a.rotor_inertia), C(a.per_amp), C(a.resistance),
-          C(a.winding_per_j), C(a.housing_per_j), C(a.to_housing),    C(a.to_air),  C(a.timeout_damping)};
+          C(a.winding_per_j), C(a.housing_per_j), C(a.to_housing),    C(a.to_air),  C(a.timeout_damping),
+          C(a.most_torque),   C(a.hot),           C(a.per_derating)};
 }
 
 template <class C>
@@ -86,7 +87,8 @@ stub::Figures<C> narrowed(const stub::Figures<double>& a) {
   for (std::size_t i = 0; i < a.teeth.size(); ++i) {
     made.teeth[i] = {C(a.teeth[i].stiffness), C(a.teeth[i].damping)};
   }
-  made.pack = {C(a.pack.nominal), C(a.pack.capacity_as), C(a.pack.resistance), C(a.pack.idle)};
+  made.pack = {C(a.pack.nominal), C(a.pack.capacity_as), C(a.pack.resistance), C(a.pack.idle),
+               C(a.pack.most_current)};
   return made;
 }
 

@@ -296,13 +296,13 @@ inline void begin_plane_step(const stub::Tree<stub::Constant<S>>& tree, const st
   stub::spread_total(total, work);
 }
 
-/// step_robot() of hal_stub/robot/robot_state.h for such legs.
+/// step_robot() of hal_stub/robot/robot_state.h for such legs, at a site where robots are as made.
 template <class S>
 inline void step_plane_robot(const stub::Figures<stub::Constant<S>>& figures,
                              const stub::SiteFigures<S>& site, const stub::Told<S>& told,
                              stub::Constant<S> dt, stub::RobotState<S>& state,
                              stub::RobotWork<S>& work) noexcept {
-  stub::drive_joints(figures, site, told, dt, state, work);
+  stub::drive_joints<true>(figures, site, told, dt, state, work);
   const auto speed_before = state.body.speed;
   const auto& around = site.around;
   stub::Work<S>& body = work.body;
@@ -314,7 +314,7 @@ inline void step_plane_robot(const stub::Figures<stub::Constant<S>>& figures,
   stub::solve(figures.tree, body);
   stub::touch_ground<false>(figures.tree, around.ground, below, dt, state.body, body);
   stub::integrate(figures.tree, dt, body, state.body);
-  stub::move_rotors(figures, site, dt, speed_before, state, work);
+  stub::move_rotors<true>(figures, site, dt, speed_before, state, work);
   stub::draw(figures.pack, site.pack, work.power, dt, state.pack);
 }
 

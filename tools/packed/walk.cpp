@@ -121,6 +121,9 @@ OnMark on_mark(const WalkSettings& settings, const stub::Site& site, std::uint64
   robot.torque_noise = site.sensor_noise_ratio * sensors.torque_noise_nm();
   robot.rate_noise = site.sensor_noise_ratio * sensors.rate_noise_rad_per_s();
   robot.sensor_delay = static_cast<std::uint32_t>(stub::sensor_delay_ticks(model, site));
+  robot.imu_delay = static_cast<std::uint32_t>(stub::imu_delay_ticks(model, site));
+  robot.oldest_sample = static_cast<std::uint32_t>(stub::oldest_sample_ticks(model, site));
+  robot.flaws = stub::frame_flaws_of(model, site);
   robot.command_delay = static_cast<std::uint32_t>(stub::command_delay_ticks(model, site, 0));
   robot.longest_delay = static_cast<std::uint32_t>(stub::command_delay_ticks(model, site, 1));
   robot.command_delay_s = site.command_delay_s;

@@ -7,6 +7,7 @@
 #include <memory>
 #include <vector>
 
+#include "hal_stub/robot/frames.h"
 #include "hal_stub/robot/model.h"
 #include "hal_stub/robot/site.h"
 #include "runtime/episode/score.h"
@@ -79,6 +80,9 @@ struct OnMark {
   std::uint64_t seed{0};
   std::uint64_t draw{0};
   std::uint32_t sensor_delay{0};   ///< ticks
+  std::uint32_t imu_delay{0};      ///< ticks
+  std::uint32_t oldest_sample{0};  ///< ticks, that a frame may tell of
+  stub::FrameFlaws flaws;
   std::uint32_t command_delay{0};  ///< ticks, without jitter
   std::uint32_t longest_delay{0};  ///< ticks, with all the jitter there may be
   double command_delay_s{0}, command_jitter_s{0};

@@ -50,7 +50,8 @@ class LaneWalker final : public Walker {
   // walk_tick.h: one tick of all lanes; the lanes that are at their end.
   unsigned tick();
   void look();
-  void look_back(const W& late);
+  void look_back(const W& late, const W& imu_late);
+  [[nodiscard]] W age_of_news() const;
   void steer();
   void rise();
   void command();
@@ -96,11 +97,13 @@ class LaneWalker final : public Walker {
   std::vector<S> samples_;
   std::uint32_t sample_rows_{0};
   W sample_delay_{0};
+  W imu_delay_{0};
   stub::PerDrive<S> seen_angle_{};
   stub::PerDrive<S> seen_speed_{};
   stub::PerDrive<S> seen_torque_{};
   stub::Vec3<S> seen_rate_{};
   bool slow_bus_{false};
+  bool flawed_{false};  ///< frames come late or twice
   bool jitters_{false};
   // Rising.
   JointAngles<S> rise_from_{};

@@ -110,7 +110,8 @@ void LaneWalker<S>::finish(StandDesk& desk, unsigned over) {
         robot.state.drives.winding[j] = robot_.drives.winding[j][lane];
         robot.state.drives.housing[j] = robot_.drives.housing[j][lane];
       }
-      robot.state.pack = {robot_.pack.charge[lane], robot_.pack.voltage[lane], robot_.pack.current[lane]};
+      robot.state.pack = {robot_.pack.charge[lane], robot_.pack.voltage[lane], robot_.pack.current[lane],
+                          robot_.pack.share[lane]};
       desk.again(id_[n], robot);
       put(lane, robot);
       return set_end(lane, now_ + settings_->stand_ticks);
@@ -146,9 +147,11 @@ void LaneWalker<S>::put_site(int lane, const OnMark& robot) {
   chance_.put(lane, robot.seed, robot.draw);
   command_delay_.put(lane, robot.command_delay);
   sample_delay_.put(lane, robot.sensor_delay);
+  imu_delay_.put(lane, robot.imu_delay);
   jitters_ =
       std::any_of(mark_.begin(), mark_.end(), [](const auto& one) { return one.command_jitter_s > 0; });
-  slow_bus_ = std::any_of(mark_.begin(), mark_.end(), [](const auto& one) { return one.sensor_delay > 0; });
+  slow_bus_ = std::any_of(mark_.begin(), mark_.end(), [](const auto& one) { return one.oldest_sample > 0; });
+  flawed_ = std::any_of(mark_.begin(), mark_.end(), [](const auto& one) { return one.flaws.any(); });
   make_room(robot);
   for (std::size_t j = 0; j < joints(); ++j) told_.forced[j].put(lane, T(0));
   told_.damping.put(lane, T(0));
@@ -196,7 +199,7 @@ void LaneWalker<S>::each_on_bus(const OnMark& robot, F&& f) {
     for (std::size_t j = 0; j < joints(); ++j) f(row[j]);
   }
   const std::size_t width = 3 * joints() + 3;
-  for (std::uint32_t back = 1; back <= robot.sensor_delay; ++back) {
+  for (std::uint32_t back = 1; back <= robot.oldest_sample; ++back) {
     S* row = samples_.data() + ((now_ - back) & (sample_rows_ - 1)) * width;
     for (std::size_t n = 0; n < width; ++n) f(row[n]);
   }
@@ -247,7 +250,7 @@ void LaneWalker<S>::put(int lane, const Stood& stood) {
 template <class S>
 void LaneWalker<S>::make_room(const OnMark& robot) {
   make_room(commands_, command_rows_, robot.longest_delay + 2, joints());
-  if (slow_bus_) make_room(samples_, sample_rows_, robot.sensor_delay + 1, 3 * joints() + 3);
+  if (slow_bus_) make_room(samples_, sample_rows_, robot.oldest_sample + 1, 3 * joints() + 3);
 }
 
 template <class S>

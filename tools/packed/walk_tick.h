@@ -38,7 +38,7 @@ unsigned LaneWalker<S>::tick() {
   push();
   for (int n = 0; n < settings_->substeps; ++n) {
     correct();
-    if (plane_legs_) {
+    if (plane_legs_ && stub::as_made(site_)) {
       step_plane_robot(figs.robot, site_, told_, figs.step, robot_, work_);
     } else {
       stub::step_robot(figs.robot, site_, told_, figs.step, robot_, work_);
@@ -56,8 +56,9 @@ void LaneWalker<S>::look() {
   const W since = W(now_) - placed_;
   W late(0);
   if (slow_bus_) {
-    late = least(sample_delay_, since);
-    look_back(late);
+    const W age = flawed_ ? age_of_news() : W(0);
+    late = least(sample_delay_ + age, since);
+    look_back(late, least(imu_delay_ + age, since));
   }
   const bool steers = now_ % settings_->ticks_per_step == 0;
   const auto numbers = static_cast<unsigned>(3 * joints() + (steers ? 3 : 0));
@@ -78,9 +79,22 @@ void LaneWalker<S>::look() {
   power_ = power;
 }
 
+/// How old the newest frame is that the bus has told: one who waits sees the frame before, which is the same
+/// as an older sampling with its own noise.
+template <class S>
+auto LaneWalker<S>::age_of_news() const -> W {
+  W age(0);
+  for (int lane = 0; lane < kLanes; ++lane) {
+    const OnMark& mark = mark_[static_cast<std::size_t>(lane)];
+    if (!mark.flaws.any()) continue;
+    age.put(lane, stub::news_of(mark.flaws, mark.seed, mark.draw, now_ - placed_[lane]).age);
+  }
+  return age;
+}
+
 /// Keeps what is so now and finds what was so `late` ticks ago.
 template <class S>
-void LaneWalker<S>::look_back(const W& late) {
+void LaneWalker<S>::look_back(const W& late, const W& imu_late) {
   const std::size_t rate = 3 * joints();
   const std::size_t width = rate + 3;
   S* row = samples_.data() + (now_ & (sample_rows_ - 1)) * width;
@@ -100,7 +114,9 @@ void LaneWalker<S>::look_back(const W& late) {
     seen_speed_[j] = found(3 * j + 1);
     seen_torque_[j] = found(3 * j + 2);
   }
-  seen_rate_ = {found(rate), found(rate + 1), found(rate + 2)};
+  const W felt_at = place_in_ring(W(now_) - imu_late, sample_rows_, width);
+  const auto felt = [&](std::size_t n) { return gathered(from + n * kLanes, felt_at); };
+  seen_rate_ = {felt(rate), felt(rate + 1), felt(rate + 2)};
 }
 
 /// A step of the policy.
