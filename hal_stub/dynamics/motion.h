@@ -357,8 +357,8 @@ struct TrunkFigures {
 };
 
 /// Fills `work` for this state: inertia, coupling, bias with gravity. Loads and contacts are added
-/// afterwards.
-template <class S>
+/// afterwards. With kMade the links are as heavy as their figures.
+template <bool kMade = false, class S>
 inline void begin_step(const Tree<Constant<S>>& tree, const TrunkFigures<S>& trunk, const BodyState<S>& state,
                        Work<S>& work) noexcept {
   work.body = rotation_of(state.attitude);
@@ -377,10 +377,10 @@ inline void begin_step(const Tree<Constant<S>>& tree, const TrunkFigures<S>& tru
   for (int l = 0; l < tree.leg_count; ++l) {
     const auto n = static_cast<std::size_t>(l);
     for_limb(tree.leg[n], [&]<int K>() {
-      const PerChain<S>* ratio = trunk.weighed ? &trunk.link_ratio[n] : nullptr;
+      const PerChain<S>* ratio = !kMade && trunk.weighed ? &trunk.link_ratio[n] : nullptr;
       if constexpr (K == 0) {
         pass_limb(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total, ratio);
-      } else if (ratio != nullptr) {
+      } else if (!kMade && ratio != nullptr) {
         pass_leg<K, true>(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total, ratio);
       } else {
         pass_leg<K>(tree.leg[n], state.angle[n], state.speed[n], frame, work.leg[n], total);

@@ -224,18 +224,18 @@ inline void integrate(const Tree<Constant<S>>& tree, Constant<S> dt, const Work<
 
 /// One step of `dt` seconds. `work` holds this step's accelerations afterwards ([angular; linear] of the
 /// trunk's origin in trunk axes, gravity included), which is what an IMU feels.
-template <class S>
+template <bool kMade = false, class S>
 inline void step_body(const Tree<Constant<S>>& tree, const Surroundings<S>& around, const Loads<S>& loads,
                       Constant<S> dt, BodyState<S>& state, Work<S>& work) noexcept {
-  begin_step(tree, around.trunk, state, work);
+  begin_step<kMade>(tree, around.trunk, state, work);
   add_loads(tree, state, loads, dt, work);
   add_push(around, work);
-  if (around.hangs) hang(around.hanging, dt, state, work);
+  if (!kMade && around.hangs) hang(around.hanging, dt, state, work);
   const Below<S> below = below_of(around.ground, work.body, state.position);
   touch_ground<true>(tree, around.ground, below, dt, state, work);
   solve(tree, work);
   touch_ground<false>(tree, around.ground, below, dt, state, work);
-  if (around.hangs) swing(around.hanging, dt, work, state);
+  if (!kMade && around.hangs) swing(around.hanging, dt, work, state);
   integrate(tree, dt, work, state);
 }
 

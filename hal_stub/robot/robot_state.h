@@ -137,18 +137,18 @@ inline void move_rotors(const Figures<Constant<S>>& figures, const SiteFigures<S
   }
 }
 
-/// One step of everything that moves, warms or runs down.
-template <class S>
+/// One step of everything that moves, warms or runs down. kMade: known to be as_made().
+template <bool kMade = false, class S>
 inline void step_robot(const Figures<Constant<S>>& figures, const SiteFigures<S>& site, const Told<S>& told,
                        Constant<S> dt, RobotState<S>& state, RobotWork<S>& work) noexcept {
-  const bool plain = site.drives.plain;
+  const bool plain = kMade || site.drives.plain;
   if (plain) {
     drive_joints<true>(figures, site, told, dt, state, work);
   } else {
     drive_joints<false>(figures, site, told, dt, state, work);
   }
   const auto speed_before = state.body.speed;
-  step_body(figures.tree, site.around, work.loads, dt, state.body, work.body);
+  step_body<kMade>(figures.tree, site.around, work.loads, dt, state.body, work.body);
   if (plain) {
     move_rotors<true>(figures, site, dt, speed_before, state, work);
   } else {

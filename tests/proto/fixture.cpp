@@ -167,6 +167,8 @@ v1::Robot robot() {
   pack.set_resistance_ohm(0.08);
   pack.set_idle_power_w(40);
   pack.set_cells(13);
+  pack.set_current_limit_a(60);
+  pack.set_resistance_cold_ratio(4);
   set_sensors(*robot.mutable_sensors());
   set_guard(*robot.mutable_guard());
   robot.mutable_lane()->set_half_width_m(1.5);

@@ -49,6 +49,7 @@ class LaneWalker final : public Walker {
 
   // walk_tick.h: one tick of all lanes; the lanes that are at their end.
   unsigned tick();
+  void step_flawed();
   void look();
   void look_back(const W& late, const W& imu_late);
   [[nodiscard]] W age_of_news() const;
