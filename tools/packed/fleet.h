@@ -56,6 +56,7 @@ class Fleet {
   void check(std::span<const Trial> trials, std::span<tools::Score> scores) const;
   [[nodiscard]] Plan plan(std::span<const Trial> trials) const;
   void stand_up(const Plan& plan);
+  void stand_up(const std::vector<tools::Lot>& lots);
   void walk(const Plan& plan, std::span<const Trial> trials, std::span<tools::Score> scores);
   void share(const Plan& plan, std::span<tools::Score> scores) const;
 

@@ -66,6 +66,26 @@ TEST(Fleet, ScoresAreTheSameToTheBitInAnyOrderAndCompany) {
   }
 }
 
+// Some lose torque in the gear, some carry a load that swings, some walk over waves, some are as made.
+TEST(Fleet, ScoresAreTheSameToTheBitInTheCompanyOfRobotsThatAreNotAsMade) {
+  const tools::SiteChoice drawn = tools::drawn_sites(tools::wide_ranges());
+  const tools::SiteChoice mixed = [&](const stub::Model& model, const tools::Lot& lot) {
+    stub::Site site = drawn(model, lot);
+    if (lot.number % 4 == 1) site.gear_loss.fill(0.1);
+    if (lot.number % 4 == 2) site.load_hangs_m = 0.2;
+    if (lot.number % 4 == 3) site.ground.wave_height_m = 0.01;
+    if (lot.number % 4 == 3) site.ground.wave_length_m = 0.7;
+    return site;
+  };
+  const auto trials = field().trials(41);
+  Fleet fleet(field().settings, mixed, {2, widest_set(), Numbers::single});
+  const auto scores = scores_of(fleet, trials);
+  for (std::size_t i = 0; i < trials.size(); i += 3) {
+    Fleet alone(field().settings, mixed, {1, widest_set(), Numbers::single});
+    expect_all_same(scores_of(alone, {trials[i]}), {scores[i]});
+  }
+}
+
 TEST(Fleet, DoubleLanesDoNotDependOnThreadsEither) {
   const auto trials = field().trials(21);
   Fleet one = fleet_of(1, widest_set(), Numbers::full);
