@@ -5,6 +5,14 @@
 
 #include <cmath>
 
+/// Makes one function of all that a step calls. Not under a sanitizer: its checks would be multiplied, and
+/// one file would compile for many minutes.
+#if defined(__SANITIZE_ADDRESS__) || defined(__SANITIZE_THREAD__)
+#define PASTERN_FLATTEN
+#else
+#define PASTERN_FLATTEN __attribute__((flatten))
+#endif
+
 namespace pastern::stub {
 
 /// Which operations: + - * / with S and with its Constant, unary -, comparison < and > giving a mask, select,

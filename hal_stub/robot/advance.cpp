@@ -7,10 +7,11 @@
 #pragma GCC diagnostic ignored "-Wpsabi"
 #include "hal_stub/robot/four_legs.h"
 
-#if defined(__x86_64__)
-#define PASTERN_WIDE __attribute__((flatten, target("avx2,fma")))
+// Under a sanitizer nothing is flattened, so nothing may be wide either.
+#if defined(__x86_64__) && !defined(__SANITIZE_ADDRESS__) && !defined(__SANITIZE_THREAD__)
+#define PASTERN_WIDE PASTERN_FLATTEN __attribute__((target("avx2,fma")))
 #else
-#define PASTERN_WIDE __attribute__((flatten))
+#define PASTERN_WIDE PASTERN_FLATTEN
 #endif
 
 namespace pastern::stub {
@@ -25,10 +26,9 @@ struct Stepper::Impl {
   Step on_any{nullptr};
 
   template <int K, bool kPlain>
-  __attribute__((flatten)) static void four_plain(Impl& impl, const SiteFigures<double>& site,
-                                                  const Told<double>& told, double dt,
-                                                  RobotState<double>& state,
-                                                  RobotWork<double>& work) noexcept {
+  PASTERN_FLATTEN static void four_plain(Impl& impl, const SiteFigures<double>& site,
+                                         const Told<double>& told, double dt, RobotState<double>& state,
+                                         RobotWork<double>& work) noexcept {
     step_four<K, kPlain>(impl.robot, site, told, dt, state, work);
   }
   template <int K, bool kPlain>
@@ -36,10 +36,9 @@ struct Stepper::Impl {
                                      double dt, RobotState<double>& state, RobotWork<double>& work) noexcept {
     step_four<K, kPlain>(impl.robot, site, told, dt, state, work);
   }
-  __attribute__((flatten)) static void any_plain(Impl& impl, const SiteFigures<double>& site,
-                                                 const Told<double>& told, double dt,
-                                                 RobotState<double>& state,
-                                                 RobotWork<double>& work) noexcept {
+  PASTERN_FLATTEN static void any_plain(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,
+                                        double dt, RobotState<double>& state,
+                                        RobotWork<double>& work) noexcept {
     step_robot(impl.robot.figures, site, told, dt, state, work);
   }
   PASTERN_WIDE static void any_wide(Impl& impl, const SiteFigures<double>& site, const Told<double>& told,

@@ -54,7 +54,7 @@ unsigned LaneWalker<S>::tick() {
 /// The step where some robot is not as made. On its own, so that the others' step is compiled, and rounds, as
 /// if there were none.
 template <class S>
-[[gnu::noinline, gnu::flatten]] void LaneWalker<S>::step_flawed() {
+[[gnu::noinline]] PASTERN_FLATTEN void LaneWalker<S>::step_flawed() {
   stub::step_robot(figures().robot, site_, told_, figures().step, robot_, work_);
 }
 
