@@ -36,7 +36,8 @@ void measure(const std::string& robot_name, const std::string& scenario_name,
   std::string error;
   const auto setting = tools::WalkSetting::make(robot.robot(), policy, 5, error);
   if (!setting) throw std::runtime_error(error);
-  const tools::WalkCourse site(setting, tools::one_site(stub::site_of(scenario, setting->model(), settings.seed)));
+  const tools::WalkCourse site(setting,
+                               tools::one_site(stub::site_of(scenario, setting->model(), settings.seed)));
   const Parameters start(policy.parameters().begin(), policy.parameters().end());
   const tools::Gap gap = tools::find_gap(site, start, settings, threads);
   const std::string name = robot_name + " on " + scenario_name + ": oracle less start";
