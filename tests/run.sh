@@ -55,8 +55,8 @@ tsan() {
 fuzz() {
   step build-fuzz build build/fuzz fuzz_targets -DCMAKE_BUILD_TYPE=Sanitizer -DPASTERN_FUZZ=ON -DCMAKE_CXX_COMPILER=clang++ \
     -DCMAKE_C_COMPILER=clang
-  step fuzz sh -c "ls build/fuzz/corpus | xargs -P $jobs -I NAME build/fuzz/bin/fuzz_NAME -max_total_time=${PASTERN_FUZZ_SECONDS:-60} \
-    -timeout=20 -rss_limit_mb=2048 -verbosity=0 -artifact_prefix=build/logs/fuzz_NAME- build/fuzz/corpus/NAME"
+  step fuzz sh -c "ls build/fuzz/corpus | xargs -P $jobs -n 1 sh -c 'build/fuzz/bin/fuzz_\$1 -max_total_time=${PASTERN_FUZZ_SECONDS:-60} \
+    -timeout=20 -rss_limit_mb=2048 -verbosity=0 -artifact_prefix=build/logs/fuzz_\$1- build/fuzz/corpus/\$1' fuzz"
 }
 
 format() {
